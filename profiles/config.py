@@ -1,0 +1,381 @@
+"""The configuration file as typed, validated, frozen objects.
+
+One TOML file describes an array: its moorings, their deliveries and every threshold. A threshold's default, unit
+and source stand here, once; ``config/defaults.toml`` is this page as a file.
+"""
+
+from __future__ import annotations
+
+import difflib
+import tomllib
+from collections import Counter
+from collections.abc import Sequence
+from pathlib import Path
+from typing import Annotated, Any, Literal, Self, TypeVar
+
+from pydantic import BaseModel, ConfigDict, Field, ValidationError, model_validator
+
+from profiles.errors import ConfigError, RequestError
+
+Longitude = Annotated[float, Field(ge=0.0, lt=360.0, description="degrees east, 0-360")]
+Latitude = Annotated[float, Field(ge=-90.0, le=90.0, description="degrees north")]
+Positive = Annotated[float, Field(gt=0.0)]
+NotNegative = Annotated[float, Field(ge=0.0)]
+Share = Annotated[float, Field(ge=0.0, le=1.0)]
+Count = Annotated[int, Field(ge=1)]
+
+
+class Settings(BaseModel):
+    """Base of every table: frozen, and a key it does not know is an error."""
+
+    model_config = ConfigDict(frozen=True, extra="forbid", allow_inf_nan=False)
+
+
+# --------------------------------------------------------------------------------------------------------------
+# [qc]
+
+
+class GapSettings(Settings):
+    """Timing: QARTOD test 1."""
+
+    longest_interval: Positive = Field(
+        1.5, description="a longer time since the sensor's last value is a gap, in nominal sampling intervals (ours)"
+    )
+    flag_after_gap: Literal[1, 3, 4] = Field(
+        1, description="flag of the first value after a gap; the QARTOD manuals differ, 1 lets it stand"
+    )
+
+
+class GrossRangeSettings(Settings):
+    """Gross range: QARTOD test 4."""
+
+    sensor_min: float = Field(-2.5, description="°C; below is bad (EuroGOOS DATA-MEQ EG10.19, global range)")
+    sensor_max: float = Field(40.0, description="°C; above is bad (EuroGOOS DATA-MEQ EG10.19, global range)")
+    user_min: float = Field(3.0, description="°C; below is questionable (tropical Pacific above 800 m, from memory)")
+    user_max: float = Field(33.0, description="°C; above is questionable (tropical Pacific surface, from memory)")
+
+    @model_validator(mode="after")
+    def _nested(self) -> Self:
+        if not self.sensor_min <= self.user_min < self.user_max <= self.sensor_max:
+            raise ValueError("expected sensor_min <= user_min < user_max <= sensor_max")
+        return self
+
+
+class ClimatologySettings(Settings):
+    """Climatological range by depth: QARTOD test 5, never worse than questionable."""
+
+    deviations: Positive = Field(4.0, description="half-width of the window, in standard deviations (FACTS J: 3 to 4)")
+    displacement_sd: NotNegative = Field(
+        15.0, description="m; standard deviation of the vertical displacement of the atlas profile (ours)"
+    )
+    floor_shallow: Positive = Field(0.75, description="°C; standard deviation at the surface, displacement aside (ours)")
+    floor_deep: Positive = Field(0.3, description="°C; the same at 500 m and below, linear between (ours)")
+
+
+class SpikeSettings(Settings):
+    """Spike in time: QARTOD test 6, |V2 - (V1 + V3)/2|."""
+
+    threshold_low: Positive = Field(3.0, description="°C; above is questionable (QARTOD T/S example, from memory)")
+    threshold_high: Positive = Field(8.0, description="°C; above is bad (QARTOD T/S example, from memory)")
+
+    @model_validator(mode="after")
+    def _ordered(self) -> Self:
+        if self.threshold_low >= self.threshold_high:
+            raise ValueError("expected threshold_low < threshold_high")
+        return self
+
+
+class RateOfChangeSettings(Settings):
+    """Rate of change: QARTOD test 7 in its two-sided form, never worse than questionable."""
+
+    deviations: Positive = Field(
+        6.0,
+        description="limit on |V2-V1| + |V3-V2|, in twice the robust standard deviation of first differences of the "
+        "sensor's record (the QARTOD example is 3; 6 suits the heavy tails of thermocline records, ours)",
+    )
+    floor: Positive = Field(0.5, description="°C; the standard deviation is taken to be at least this (ours)")
+
+
+class FlatLineSettings(Settings):
+    """Flat line: QARTOD test 8."""
+
+    tolerance: Positive = Field(
+        0.0005, description="°C; values closer than this are the same; keep it below the stored resolution (ours)"
+    )
+    repeats_questionable: Count = Field(3, description="as many previous values the same: questionable (QARTOD example)")
+    repeats_bad: Count = Field(5, description="as many previous values the same: bad (QARTOD example)")
+
+    @model_validator(mode="after")
+    def _ordered(self) -> Self:
+        if self.repeats_questionable >= self.repeats_bad:
+            raise ValueError("expected repeats_questionable < repeats_bad")
+        return self
+
+
+class QualityControlSettings(Settings):
+    """[qc]: thresholds of the tests. Formulas: QARTOD temperature and salinity manual v2.1 (2020)."""
+
+    gap: GapSettings = GapSettings()
+    gross_range: GrossRangeSettings = GrossRangeSettings()
+    climatology: ClimatologySettings = ClimatologySettings()
+    spike: SpikeSettings = SpikeSettings()
+    rate_of_change: RateOfChangeSettings = RateOfChangeSettings()
+    flat_line: FlatLineSettings = FlatLineSettings()
+
+
+# --------------------------------------------------------------------------------------------------------------
+# [column], [section]
+
+
+class ColumnSettings(Settings):
+    """[column]: what is read off one profile."""
+
+    use_flags: tuple[Literal[1, 2, 3, 4], ...] = Field((1, 2), description="quality flags of the values that are used")
+    isotherm: float = Field(20.0, description="°C; the isotherm that stands for the thermocline (WWV definition)")
+    max_bracket: Positive = Field(
+        75.0, description="m; sensors further apart do not bracket the isotherm (common practice is 50 and less)"
+    )
+    crossing: Literal["shallowest", "deepest"] = Field(
+        "shallowest", description="which crossing is taken where there are several"
+    )
+    surface_reach: NotNegative = Field(5.0, description="m; a sensor no deeper than this stands for the surface")
+    mixed_layer_threshold: Positive = Field(0.2, description="°C (de Boyer Montegut et al. 2004)")
+    mixed_layer_reference: NotNegative = Field(10.0, description="m (de Boyer Montegut et al. 2004)")
+    mean_temperature_bottom: Positive = Field(300.0, description="m; bottom of the layer of the mean temperature (T300)")
+    sensor_accuracy: Positive = Field(
+        0.02, description="°C, one standard deviation where a mooring states none (Freitag et al. 2005: 0.018)"
+    )
+    sensor_noise: NotNegative = Field(0.005, description="°C; noise of one value, independent of the next (from memory)")
+    depth_accuracy: NotNegative = Field(1.0, description="m, one standard deviation of a nominal sensor depth (from memory)")
+
+
+class MeansSettings(Settings):
+    """[section.means]: when a mean is given."""
+
+    daily_share: Share = Field(0.5, description="least share of a day's nominal samples (ours)")
+    monthly_days: Count = Field(15, description="least number of daily means in a month (ours)")
+    censored_share: Share = Field(
+        0.2, description="largest share of days on which the isotherm lay above or below the chain (ours)"
+    )
+    questionable_share: Share = Field(0.5, description="a mean with a larger share of questionable inputs is questionable")
+
+
+class ClimatologyPriorSettings(Settings):
+    """[section.climatology]: harmonics of the record, shrunk towards the packaged atlas."""
+
+    mean_sd: Positive = Field(7.5, description="m; mean isotherm depth about the atlas (two atlases differ by 7.3 m rms)")
+    annual_sd: Positive = Field(5.0, description="m; each annual coefficient about the atlas (ours)")
+    semiannual_sd: Positive = Field(3.0, description="m; each semi-annual coefficient about the atlas (ours)")
+    length_longitude: Positive = Field(15.0, description="degrees; scale of the correction to the atlas (ours)")
+    length_latitude: Positive = Field(4.0, description="degrees; scale of the correction to the atlas (ours)")
+    decorrelation_months: Positive = Field(
+        4.0, description="months; e-folding time of interannual anomalies (Meyers et al. 1991: 2, without an event)"
+    )
+
+
+class SectionSettings(Settings):
+    """[section]: climatology, map, tilt and volume."""
+
+    means: MeansSettings = MeansSettings()
+    climatology: ClimatologyPriorSettings = ClimatologyPriorSettings()
+    signal_sd: Positive = Field(12.0, description="m; standard deviation of monthly isotherm-depth anomalies (FACTS C4)")
+    small_scale_sd: NotNegative = Field(
+        4.0, description="m; part of a monthly mean that the map's scales do not resolve (ours)"
+    )
+    length_longitude: Positive = Field(15.0, description="degrees (Meyers et al. 1991, median of the tropical Pacific)")
+    length_latitude: Positive = Field(3.0, description="degrees (Meyers et al. 1991, median of the tropical Pacific)")
+    tilt_window: tuple[Longitude, Longitude] = Field(
+        (165.0, 265.0), description="degrees east; ends of the line through the equatorial section"
+    )
+
+    @model_validator(mode="after")
+    def _eastward(self) -> Self:
+        west, east = self.tilt_window
+        if west >= east:
+            raise ValueError("tilt_window: expected the western end first")
+        return self
+
+
+# --------------------------------------------------------------------------------------------------------------
+# The array
+
+
+class Delivery(Settings):
+    """One file of a mooring and the layout it is written in; paths are relative to the configuration file."""
+
+    path: Path
+    layout: Path
+
+
+class Mooring(Settings):
+    """One site and what was delivered for it."""
+
+    id: Annotated[str, Field(pattern=r"^[A-Za-z0-9][A-Za-z0-9._-]*$", max_length=64)]
+    latitude: Latitude
+    longitude: Longitude
+    deliveries: tuple[Delivery, ...] = Field(min_length=1)
+    sensor_accuracy: Positive | None = Field(None, description="°C, one standard deviation")
+
+
+class Description(Settings):
+    """[array]: what the files say of their origin (ACDD-1.3)."""
+
+    name: Annotated[str, Field(min_length=1)]
+    summary: str = ""
+    institution: str = ""
+    creator_name: str = ""
+    creator_email: str = ""
+    creator_url: str = ""
+    project: str = ""
+    license: str = ""
+    acknowledgement: str = ""
+    naming_authority: str = ""
+
+
+class Config(Settings):
+    """A whole configuration file. ``file`` is where it was read from."""
+
+    file: Path
+    array: Description
+    moorings: tuple[Mooring, ...] = Field(min_length=1)
+    qc: QualityControlSettings = QualityControlSettings()
+    column: ColumnSettings = ColumnSettings()
+    section: SectionSettings = SectionSettings()
+
+    def resolve(self, path: Path) -> Path:
+        """Return ``path`` as seen from the configuration file's folder."""
+        return (self.file.parent / path).resolve()
+
+
+def load_config(file: str | Path) -> Config:
+    """Read and validate a configuration file.
+
+    Raises
+    ------
+    RequestError
+        Where the file is missing or no text.
+    ConfigError
+        With every problem in it.
+    """
+    path = Path(file)
+    content = read_toml(path)
+    if "file" in content:
+        raise ConfigError(str(path), [RequestError("this key is not known", where="file", advice="remove it")])
+    return validated(Config, content | {"file": path}, path, also=_repeated_ids(content))
+
+
+def _repeated_ids(content: dict[str, Any]) -> list[RequestError]:
+    tables = content.get("moorings")
+    ids = [str(table["id"]) for table in tables if "id" in table] if isinstance(tables, list) else []
+    counts = Counter(name.casefold() for name in ids)
+    twice = sorted({name for name in ids if counts[name.casefold()] > 1})
+    return [
+        RequestError(
+            "this id is given to more than one mooring",
+            where="moorings",
+            expected="each id once, upper and lower case alike",
+            found=name,
+            advice="rename one, or list its files under one mooring",
+        )
+        for name in twice
+    ]
+
+
+def read_toml(path: Path) -> dict[str, Any]:
+    """Read a TOML file; raise RequestError or ConfigError where that is not possible."""
+    try:
+        text = path.read_bytes().decode("utf-8-sig")
+    except FileNotFoundError:
+        raise RequestError("no such file", where=str(path), expected="a TOML file", advice=_neighbours(path)) from None
+    except IsADirectoryError:
+        raise RequestError("is a folder", where=str(path), expected="a TOML file", advice=_inside(path)) from None
+    except PermissionError:
+        raise RequestError("may not be read", where=str(path), advice="ask for the permission") from None
+    except UnicodeDecodeError as error:
+        raise RequestError(
+            "is no UTF-8 text", where=str(path), expected="a TOML file", found=f"byte {error.start} is not UTF-8"
+        ) from None
+    try:
+        return tomllib.loads(text.replace("\r\n", "\n"))
+    except tomllib.TOMLDecodeError as error:
+        raise ConfigError(str(path), [RequestError("not TOML", found=str(error))]) from None
+
+
+def _neighbours(path: Path) -> str:
+    folder = path.parent
+    names = [entry.name for entry in folder.glob("*.toml")] if folder.is_dir() else []
+    near = difflib.get_close_matches(path.name, names, n=1, cutoff=0.5)
+    return f"did you mean {folder / near[0]}?" if near else "check the path"
+
+
+def _inside(path: Path) -> str:
+    files = sorted(path.glob("*.toml"))
+    return f"did you mean {files[0]}?" if files else "name the file in it"
+
+
+Model = TypeVar("Model", bound=Settings)
+
+
+def validated(
+    model: type[Model], content: dict[str, Any], path: Path, *, also: Sequence[RequestError] = ()
+) -> Model:
+    """Build ``model`` from parsed TOML, or raise ConfigError with everything that is wrong, ``also`` included."""
+    problems = list(also)
+    try:
+        checked = model.model_validate(content)
+    except ValidationError as error:
+        details = error.errors()
+        problems += [_problem(model, detail) for detail in details if not _is_consequence(detail, details)]
+    if problems:
+        raise ConfigError(str(path), problems)
+    return checked
+
+
+def _is_consequence(detail: Any, details: Sequence[Any]) -> bool:
+    """Tell whether a list is called too short only because its items are wrong, which is reported for itself."""
+    place = detail["loc"]
+    return detail["type"] == "too_short" and any(
+        len(other["loc"]) > len(place) and other["loc"][: len(place)] == place for other in details
+    )
+
+
+def _problem(model: type[Settings], detail: Any) -> RequestError:
+    where = _place(detail["loc"])
+    if detail["type"] == "extra_forbidden":
+        known = _keys_beside(model, detail["loc"])
+        near = difflib.get_close_matches(str(detail["loc"][-1]), known, n=1, cutoff=0.5)
+        advice = f"did you mean {near[0]!r}?" if near else f"known here: {', '.join(known)}"
+        return RequestError("this key is not known", where=where, advice=advice)
+    if detail["type"] == "missing":
+        return RequestError("this key is missing", where=where, advice="add it")
+    if detail["type"] == "value_error":
+        return RequestError(detail["msg"].removeprefix("Value error, "), where=where or None)
+    return RequestError(detail["msg"], where=where, found=repr(detail["input"])[:80])
+
+
+def _place(location: tuple[str | int, ...]) -> str:
+    place = ""
+    for part in location:
+        place += f" #{part + 1}" if isinstance(part, int) else f".{part}" if place else str(part)
+    return place
+
+
+def _keys_beside(model: type[Settings], location: tuple[str | int, ...]) -> list[str]:
+    """Return the keys that the table at ``location`` knows, by walking the models along the path."""
+    here: Any = model
+    for part in location[:-1]:
+        if isinstance(part, int) or not hasattr(here, "model_fields"):
+            continue
+        annotation = here.model_fields[part].annotation if part in here.model_fields else None
+        here = _innermost_model(annotation)
+    return sorted(set(here.model_fields) - {"file"}) if hasattr(here, "model_fields") else []
+
+
+def _innermost_model(annotation: Any) -> Any:
+    if isinstance(annotation, type) and issubclass(annotation, BaseModel):
+        return annotation
+    for argument in getattr(annotation, "__args__", ()):
+        found = _innermost_model(argument)
+        if found is not None:
+            return found
+    return None
