@@ -7,7 +7,7 @@ import xarray as xr
 from numpy.typing import ArrayLike
 from scipy.spatial import cKDTree
 
-from profiles.atlas.fields import monthly_temperature
+from profiles.atlas.fields import annual_mean, monthly_temperature
 from profiles.errors import DataError
 from profiles.statistics import HARMONICS, harmonic_design
 
@@ -34,17 +34,41 @@ def seasonal_profile(latitude: ArrayLike, longitude: ArrayLike) -> xr.DataArray:
     DataError
         Where a position lies outside the atlas.
     """
+    return _at_positions(_coefficients().assign_coords(harmonic=list(HARMONICS)), latitude, longitude)
+
+
+def annual_profile(latitude: ArrayLike, longitude: ArrayLike) -> xr.DataArray:
+    """Return the annual-mean temperature of the 1-degree atlas at positions.
+
+    Parameters
+    ----------
+    latitude, longitude : array_like, shape (position,)
+        Degrees north and degrees east, 0-360.
+
+    Returns
+    -------
+    xarray.DataArray
+        Temperature, °C, dims (position, depth) at the atlas's depths, between and beyond the atlas's wet points
+        as in :func:`seasonal_profile`.
+
+    Raises
+    ------
+    DataError
+        Where a position lies outside the atlas.
+    """
+    field = annual_mean()["temperature"].astype(np.float64).expand_dims("harmonic")
+    return _at_positions(field, latitude, longitude).squeeze("harmonic")
+
+
+def _at_positions(field: xr.DataArray, latitude: ArrayLike, longitude: ArrayLike) -> xr.DataArray:
+    """Interpolate ``field`` (depth, latitude, longitude, harmonic) to positions, level by level."""
     latitude = np.atleast_1d(np.asarray(latitude, dtype=np.float64))
     longitude = np.atleast_1d(np.asarray(longitude, dtype=np.float64))
-    field = _coefficients()
     _check_inside(field, latitude, longitude)
     values = field.transpose("depth", "latitude", "longitude", "harmonic").values
     profiles = np.stack([_interpolate(level, field, latitude, longitude) for level in values], axis=-1)
-    return xr.DataArray(
-        profiles,
-        dims=("position", "harmonic", "depth"),
-        coords={"harmonic": list(HARMONICS), "depth": field["depth"].values.astype(np.float64)},
-    )
+    kept = {name: field[name].values for name in ("harmonic", "depth") if name in field.coords}
+    return xr.DataArray(profiles, dims=("position", "harmonic", "depth"), coords=kept)
 
 
 def _coefficients() -> xr.DataArray:
