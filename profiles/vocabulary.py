@@ -13,6 +13,9 @@ from typing import Any
 import numpy as np
 import xarray as xr
 
+#: Shown wherever a reader could lean on a number for a decision that matters.
+CAUTION = "For research use. Official outlooks come from the national services. Not for navigation."
+
 # --------------------------------------------------------------------------------------------------------------
 # Flags, tests, statuses
 
@@ -192,8 +195,6 @@ _COLUMN_VARIABLES = [
              extra=ON_SCALE | {"ancillary_variables": "mean_temperature_status"}),
     Variable("mean_temperature_status", ("time",), "why mean_temperature is or is not given", None, "status_flag", "int8",
              _QUALITY, _flag_attributes(LayerMeanStatus)),
-    Variable("surface_temperature", ("time",), "temperature of the shallowest good sensor near the surface", DEGREES,
-             "sea_water_temperature", extra=ON_SCALE),
     Variable("questionable_share", ("time",), "share of questionable values among the inputs", "1", None, "float32",
              _QUALITY),
     Variable("isotherm_mean_status", ("time",), "why the mean of isotherm_depth is or is not given", None, "status_flag",
@@ -246,10 +247,14 @@ _SECTION_VARIABLES = [
     Variable("site_noise", ("time", "site"),
              "standard deviation of the noise of the mapped value, NaN where there was none", "m", None, "float64",
              _QUALITY),
+    Variable("parameter_latitude", ("parameter_site",), "latitude of a site whose record made the climatology",
+             "degrees_north", "latitude", "float64", _REFERENCE),
+    Variable("parameter_longitude", ("parameter_site",), "longitude of a site whose record made the climatology",
+             "degrees_east", "longitude", "float64", _REFERENCE),
     Variable("climatology_prior_sd", ("harmonic",), "standard deviation of the climatology about the atlas", "m", None,
              "float64", _REFERENCE),
     Variable("climatology_information", ("parameter", "parameter_"),
-             "inverse covariance of the data from which the climatology was estimated", "m-2", None, "float64",
+             "inverse covariance of the sites' climatologies as the records alone give them, site by harmonic", "m-2", None, "float64",
              _REFERENCE),
 ]  # fmt: skip
 

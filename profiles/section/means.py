@@ -1,0 +1,167 @@
+"""Daily and monthly means of columns, given only where enough of the time is covered."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Any
+
+import numpy as np
+import pandas as pd
+import xarray as xr
+
+from profiles.config import MeansSettings
+from profiles.errors import DataError
+from profiles.vocabulary import IsothermStatus, MeanStatus, describe
+
+_CENSORED = (IsothermStatus.ABOVE_CHAIN, IsothermStatus.BELOW_CHAIN)
+_AVERAGED = ("isotherm_depth", "isotherm_depth_error_persistent", "mixed_layer_depth", "mean_temperature")
+
+
+def daily_means(columns: xr.Dataset, settings: MeansSettings | None = None) -> xr.Dataset:
+    """Return the means of each day, stamped at its middle.
+
+    Parameters
+    ----------
+    columns : xarray.Dataset
+        Columns of one mooring on ``time``, as :func:`profiles.column.columns_of` returns them.
+    settings : MeansSettings, optional
+        Default: the defaults.
+
+    Returns
+    -------
+    xarray.Dataset
+        On ``time``, every day from the first to the last. The isotherm's ``isotherm_mean_status`` says why a mean is
+        not given; ``isotherm_status`` is the commonest of the day.
+    """
+    settings = settings or MeansSettings()
+    table = _table(columns)
+    days = table.index.floor("D")
+    index = pd.date_range(days[0], days[-1], freq="D")
+    expected = max(1.0, round(pd.Timedelta("1D") / _nominal_interval(table.index)))
+    grouped = table.groupby(days)
+    least = settings.daily_share * expected
+    means = _means_where(grouped, least).reindex(index)
+    means["isotherm_depth_error_independent"] = _root_mean(grouped, "isotherm_depth_error_independent").reindex(index)
+    means["isotherm_status"] = grouped["isotherm_status"].agg(_commonest).reindex(index)
+    count = grouped["isotherm_depth"].count().reindex(index, fill_value=0)
+    censored = _censored(table).groupby(days).sum().reindex(index, fill_value=0)
+    means["isotherm_mean_status"] = _mean_status(count, censored, least, settings.censored_share)
+    return _labelled(means, index + pd.Timedelta("12h"), columns)
+
+
+def monthly_means(daily: xr.Dataset, settings: MeansSettings | None = None) -> xr.Dataset:
+    """Return the means of each month, stamped at its middle.
+
+    Parameters
+    ----------
+    daily : xarray.Dataset
+        As :func:`daily_means` returns it.
+    settings : MeansSettings, optional
+        Default: the defaults.
+
+    Returns
+    -------
+    xarray.Dataset
+        On ``time``, every month from the first to the last, with the number of days in ``isotherm_day_count`` and their
+        standard deviation in ``isotherm_day_spread``. A month in which the isotherm lay outside the chain on more than
+        the stated share of days has no mean: the days that are left would be a biased sample.
+    """
+    settings = settings or MeansSettings()
+    table = _table(daily)
+    months = table.index.to_period("M")
+    index = pd.period_range(months[0], months[-1], freq="M")
+    grouped = table.groupby(months)
+    least = settings.monthly_days
+    means = _means_where(grouped, least).reindex(index)
+    means["isotherm_depth_error_independent"] = _root_mean(grouped, "isotherm_depth_error_independent").reindex(index)
+    count = grouped["isotherm_depth"].count().reindex(index, fill_value=0)
+    censored = _censored(table).groupby(months).sum().reindex(index, fill_value=0)
+    means["isotherm_mean_status"] = _mean_status(count, censored, least, settings.censored_share)
+    means["isotherm_day_count"] = count
+    means["isotherm_day_spread"] = grouped["isotherm_depth"].std().reindex(index)
+    middle = index.start_time + (index.end_time.ceil("D") - index.start_time) / 2
+    return _labelled(means, middle, daily)
+
+
+def join_moorings(means: Mapping[str, xr.Dataset]) -> xr.Dataset:
+    """Join the means of several moorings on (mooring, time); times that a mooring lacks are missing.
+
+    Raises
+    ------
+    DataError
+        Where there is no mooring.
+    """
+    if not means:
+        raise DataError("there is no mooring to join", expected="one or more")
+    start = min(pd.Timestamp(part["time"].values[0]) for part in means.values())
+    stop = max(pd.Timestamp(part["time"].values[-1]) for part in means.values())
+    longest = np.unique(np.concatenate([part["time"].values for part in means.values()]))
+    times = longest[(longest >= start.to_datetime64()) & (longest <= stop.to_datetime64())]
+    aligned = [_aligned(part, times).assign_coords(mooring=name) for name, part in means.items()]
+    joined = xr.concat(
+        aligned, dim="mooring", join="exact", coords="different", compat="equals", combine_attrs="override"
+    )
+    return describe(joined)
+
+
+def _aligned(part: xr.Dataset, times: np.ndarray) -> xr.Dataset:
+    fill = {"isotherm_mean_status": int(MeanStatus.TOO_FEW_VALUES), "isotherm_day_count": 0, "deployment": 0}
+    fill |= {"isotherm_status": int(IsothermStatus.TOO_FEW_SENSORS)}
+    present = {name: value for name, value in fill.items() if name in part}
+    return part.reindex(time=times, fill_value=present | {name: np.nan for name in part.data_vars if name not in present})
+
+
+def _table(columns: xr.Dataset) -> pd.DataFrame:
+    series = {str(name): data for name, data in columns.data_vars.items() if data.dims == ("time",)}
+    return pd.DataFrame({name: data.values for name, data in series.items()}, index=pd.DatetimeIndex(columns["time"].values))
+
+
+def _nominal_interval(times: pd.DatetimeIndex) -> pd.Timedelta:
+    return pd.Timedelta(np.median(np.diff(times))) if times.size > 1 else pd.Timedelta("1D")
+
+
+def _means_where(grouped: Any, least: float) -> pd.DataFrame:
+    """Return the means of the columns that are averaged, where enough values are there."""
+    means = pd.DataFrame({name: grouped[name].mean().where(grouped[name].count() >= least) for name in _AVERAGED})
+    means["questionable_share"] = grouped["questionable_share"].mean()
+    means["deployment"] = grouped["deployment"].last()
+    return means
+
+
+def _root_mean(grouped: Any, name: str) -> pd.Series[float]:
+    """Return the standard error of a mean of values whose errors are independent."""
+    return grouped[name].agg(lambda values: np.sqrt(np.nansum(values**2)) / max(values.count(), 1) if values.count() else np.nan)
+
+
+def _commonest(values: pd.Series[int]) -> int:
+    return int(values.mode().iloc[0])
+
+
+def _censored(table: pd.DataFrame) -> pd.Series[bool]:
+    return table["isotherm_status"].isin([int(status) for status in _CENSORED])
+
+
+def _mean_status(
+    count: pd.Series[int], censored: pd.Series[int], least: float, censored_share: float
+) -> pd.Series[int]:
+    status = pd.Series(int(MeanStatus.GIVEN), index=count.index)
+    status[count < least] = int(MeanStatus.TOO_FEW_VALUES)
+    status[censored > censored_share * (count + censored)] = int(MeanStatus.CENSORED)
+    return status
+
+
+def _labelled(means: pd.DataFrame, times: pd.DatetimeIndex, source: xr.Dataset) -> xr.Dataset:
+    given = means["isotherm_mean_status"] == int(MeanStatus.GIVEN)
+    parts = [name for name in means.columns if name.startswith("isotherm_depth")]
+    means.loc[~given, parts] = np.nan
+    means["isotherm_depth_error"] = np.hypot(
+        means["isotherm_depth_error_independent"], means["isotherm_depth_error_persistent"]
+    )
+    whole = {"isotherm_status": int(IsothermStatus.TOO_FEW_SENSORS), "isotherm_mean_status": 0, "deployment": 0}
+    whole |= {"isotherm_day_count": 0}
+    dataset = xr.Dataset(coords={"time": times.to_numpy()})
+    for name in means.columns:
+        values = means[name].fillna(whole[name]).astype(np.int16) if name in whole else means[name].astype(np.float32)
+        dataset[name] = ("time", values.to_numpy())
+    scalars = {name: source[name] for name in ("mooring", "latitude", "longitude") if name in source.coords}
+    return describe(dataset.assign_coords(scalars))
