@@ -30,6 +30,28 @@ class Flag(IntEnum):
     MISSING = 9
 
 
+#: Our flag for each flag of an OceanSITES file, by the meanings in the Data Format Reference Manual 1.4 (2020), reference
+#: table 2 (choice ours): probably good is good; nominal is a target, not a fault; interpolated was not observed.
+OCEANSITES_TO_FLAG: Mapping[int, Flag] = {
+    0: Flag.NOT_EVALUATED,  # unknown
+    1: Flag.GOOD,  # good_data
+    2: Flag.GOOD,  # probably_good_data
+    3: Flag.QUESTIONABLE,  # potentially_correctable_bad_data
+    4: Flag.BAD,  # bad_data
+    7: Flag.GOOD,  # nominal_value
+    8: Flag.QUESTIONABLE,  # interpolated_value
+    9: Flag.MISSING,  # missing_value
+}
+
+#: The way back: of the flags that are read as one of ours, the one that is written for it.
+FLAG_TO_OCEANSITES: Mapping[Flag, int] = {
+    Flag.GOOD: 1,
+    Flag.NOT_EVALUATED: 0,
+    Flag.QUESTIONABLE: 3,
+    Flag.BAD: 4,
+    Flag.MISSING: 9,
+}
+
 #: Bit of each quality-control test in the masks ``temperature_qc_ran``, ``_questionable`` and ``_bad``.
 TEST_BITS: Mapping[str, int] = {
     "gap": 0,
