@@ -1,0 +1,47 @@
+"""The sample before and the sample after, where they are near enough in time to compare with."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from profiles.qc.check import Floats, Mask, Times
+
+
+def step_seconds(time: Times) -> Floats:
+    """Return the time from each sample to the next, s, one fewer than ``time``."""
+    return np.asarray(np.diff(time) / np.timedelta64(1, "s"), dtype=np.float64)
+
+
+def is_linked(time: Times, nominal_interval: float, longest_interval: float) -> Mask:
+    """Tell which samples follow the one before without a gap.
+
+    Parameters
+    ----------
+    time : ndarray of datetime64, shape (time,)
+    nominal_interval : float
+        s; NaN links nothing.
+    longest_interval : float
+        Longest step that is no gap, in nominal intervals.
+
+    Returns
+    -------
+    ndarray of bool, shape (time,)
+        False for the first sample.
+    """
+    linked = np.zeros(time.size, dtype=np.bool_)
+    linked[1:] = step_seconds(time) <= longest_interval * nominal_interval
+    return linked
+
+
+def before(values: Floats, linked: Mask) -> Floats:
+    """Return the value one sample earlier, shape as ``values``, NaN where there is none or after a gap."""
+    earlier = np.full_like(values, np.nan)
+    earlier[1:] = np.where(linked[1:, None], values[:-1], np.nan)
+    return earlier
+
+
+def after(values: Floats, linked: Mask) -> Floats:
+    """Return the value one sample later, shape as ``values``, NaN where there is none or before a gap."""
+    later = np.full_like(values, np.nan)
+    later[:-1] = np.where(linked[1:, None], values[1:], np.nan)
+    return later
