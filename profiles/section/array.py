@@ -185,9 +185,14 @@ def _assemble_volume(anomaly: xr.Dataset, whole: xr.Dataset) -> xr.Dataset:
     regions = []
     for region in REGIONS:
         volume, departure = warm_water_volume(whole, region=region), warm_water_volume(anomaly, region=region)
-        names = {name: name.replace("volume", "volume_anomaly") for name in ("warm_water_volume", "warm_water_volume_error")}
-        regions.append(volume.merge(departure.drop_vars("covered_share").rename(names)))
-    return describe(xr.concat(regions, dim="region", coords="minimal", compat="override").transpose("time", "region"))
+        regions.append(
+            volume.assign(
+                warm_water_volume_anomaly=departure["warm_water_volume"],
+                warm_water_volume_anomaly_error=departure["warm_water_volume_error"],
+            )
+        )
+    joined = xr.concat(regions, dim="region", coords="minimal", compat="override")
+    return describe(joined.transpose("time", "region"))
 
 
 def _leave_one_out(field: xr.Dataset, records: Records, climatology: Climatology) -> float:

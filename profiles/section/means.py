@@ -14,6 +14,7 @@ from profiles.errors import DataError
 from profiles.vocabulary import IsothermStatus, MeanStatus, describe
 
 _CENSORED = (IsothermStatus.ABOVE_CHAIN, IsothermStatus.BELOW_CHAIN)
+_INDEPENDENT = "isotherm_depth_error_independent"
 _AVERAGED = ("isotherm_depth", "isotherm_depth_error_persistent", "mixed_layer_depth", "mean_temperature")
 
 
@@ -41,8 +42,8 @@ def daily_means(columns: xr.Dataset, settings: MeansSettings | None = None) -> x
     grouped = table.groupby(days)
     least = settings.daily_share * expected
     means = _means_where(grouped, least).reindex(index)
-    means["isotherm_depth_error_independent"] = _root_mean(grouped, "isotherm_depth_error_independent").reindex(index)
-    means["isotherm_status"] = grouped["isotherm_status"].agg(_commonest).reindex(index)
+    means[_INDEPENDENT] = _error_of_mean(table[_INDEPENDENT], days).reindex(index)
+    means["isotherm_status"] = _commonest_status(table, days).reindex(index)
     count = grouped["isotherm_depth"].count().reindex(index, fill_value=0)
     censored = _censored(table).groupby(days).sum().reindex(index, fill_value=0)
     means["isotherm_mean_status"] = _mean_status(count, censored, least, settings.censored_share)
@@ -73,7 +74,7 @@ def monthly_means(daily: xr.Dataset, settings: MeansSettings | None = None) -> x
     grouped = table.groupby(months)
     least = settings.monthly_days
     means = _means_where(grouped, least).reindex(index)
-    means["isotherm_depth_error_independent"] = _root_mean(grouped, "isotherm_depth_error_independent").reindex(index)
+    means[_INDEPENDENT] = _error_of_mean(table[_INDEPENDENT], months).reindex(index)
     count = grouped["isotherm_depth"].count().reindex(index, fill_value=0)
     censored = _censored(table).groupby(months).sum().reindex(index, fill_value=0)
     means["isotherm_mean_status"] = _mean_status(count, censored, least, settings.censored_share)
@@ -93,10 +94,7 @@ def join_moorings(means: Mapping[str, xr.Dataset]) -> xr.Dataset:
     """
     if not means:
         raise DataError("there is no mooring to join", expected="one or more")
-    start = min(pd.Timestamp(part["time"].values[0]) for part in means.values())
-    stop = max(pd.Timestamp(part["time"].values[-1]) for part in means.values())
-    longest = np.unique(np.concatenate([part["time"].values for part in means.values()]))
-    times = longest[(longest >= start.to_datetime64()) & (longest <= stop.to_datetime64())]
+    times = np.unique(np.concatenate([part["time"].values for part in means.values()]))
     aligned = [_aligned(part, times).assign_coords(mooring=name) for name, part in means.items()]
     joined = xr.concat(
         aligned, dim="mooring", join="exact", coords="different", compat="equals", combine_attrs="override"
@@ -104,11 +102,18 @@ def join_moorings(means: Mapping[str, xr.Dataset]) -> xr.Dataset:
     return describe(joined)
 
 
+#: What stands where a mooring has no day or month, by the variables that hold whole numbers.
+_NOTHING = {
+    "isotherm_status": int(IsothermStatus.TOO_FEW_SENSORS),
+    "isotherm_mean_status": int(MeanStatus.TOO_FEW_VALUES),
+    "isotherm_day_count": 0,
+    "deployment": 0,
+}
+
+
 def _aligned(part: xr.Dataset, times: np.ndarray) -> xr.Dataset:
-    fill = {"isotherm_mean_status": int(MeanStatus.TOO_FEW_VALUES), "isotherm_day_count": 0, "deployment": 0}
-    fill |= {"isotherm_status": int(IsothermStatus.TOO_FEW_SENSORS)}
-    present = {name: value for name, value in fill.items() if name in part}
-    return part.reindex(time=times, fill_value=present | {name: np.nan for name in part.data_vars if name not in present})
+    fill = {str(name): _NOTHING.get(str(name), np.nan) for name in part.data_vars}
+    return part.reindex(time=times, fill_value=fill)
 
 
 def _table(columns: xr.Dataset) -> pd.DataFrame:
@@ -128,13 +133,17 @@ def _means_where(grouped: Any, least: float) -> pd.DataFrame:
     return means
 
 
-def _root_mean(grouped: Any, name: str) -> pd.Series[float]:
-    """Return the standard error of a mean of values whose errors are independent."""
-    return grouped[name].agg(lambda values: np.sqrt(np.nansum(values**2)) / max(values.count(), 1) if values.count() else np.nan)
+def _error_of_mean(errors: pd.Series[float], groups: pd.Index) -> pd.Series[float]:
+    """Return the standard error of the mean of each group of values whose errors are independent."""
+    squares = (errors**2).groupby(groups)
+    return np.sqrt(squares.sum(min_count=1)) / squares.count()
 
 
-def _commonest(values: pd.Series[int]) -> int:
-    return int(values.mode().iloc[0])
+def _commonest_status(table: pd.DataFrame, groups: pd.DatetimeIndex) -> pd.Series[int]:
+    """Return the commonest status of each group, the first in the vocabulary where two are equally common."""
+    codes = [int(status) for status in IsothermStatus]
+    counts = pd.DataFrame({code: table["isotherm_status"] == code for code in codes}).groupby(groups).sum()
+    return counts.idxmax(axis=1)
 
 
 def _censored(table: pd.DataFrame) -> pd.Series[bool]:
@@ -157,11 +166,10 @@ def _labelled(means: pd.DataFrame, times: pd.DatetimeIndex, source: xr.Dataset) 
     means["isotherm_depth_error"] = np.hypot(
         means["isotherm_depth_error_independent"], means["isotherm_depth_error_persistent"]
     )
-    whole = {"isotherm_status": int(IsothermStatus.TOO_FEW_SENSORS), "isotherm_mean_status": 0, "deployment": 0}
-    whole |= {"isotherm_day_count": 0}
     dataset = xr.Dataset(coords={"time": times.to_numpy()})
-    for name in means.columns:
-        values = means[name].fillna(whole[name]).astype(np.int16) if name in whole else means[name].astype(np.float32)
-        dataset[name] = ("time", values.to_numpy())
+    for name, values in means.items():
+        nothing = _NOTHING.get(str(name))
+        stored = values.astype(np.float32) if nothing is None else values.fillna(nothing).astype(np.int16)
+        dataset[str(name)] = ("time", stored.to_numpy())
     scalars = {name: source[name] for name in ("mooring", "latitude", "longitude") if name in source.coords}
     return describe(dataset.assign_coords(scalars))
