@@ -68,7 +68,9 @@ class ClimatologySettings(Settings):
     displacement_sd: NotNegative = Field(
         15.0, description="m; standard deviation of the vertical displacement of the atlas profile (ours)"
     )
-    floor_shallow: Positive = Field(0.75, description="°C; standard deviation at the surface, displacement aside (ours)")
+    floor_shallow: Positive = Field(
+        0.75, description="°C; standard deviation at the surface, displacement aside (ours)"
+    )
     floor_deep: Positive = Field(0.3, description="°C; the same at 500 m and below, linear between (ours)")
 
 
@@ -102,7 +104,9 @@ class FlatLineSettings(Settings):
     tolerance: Positive = Field(
         0.0005, description="°C; values closer than this are the same; keep it below the stored resolution (ours)"
     )
-    repeats_questionable: Count = Field(3, description="as many previous values the same: questionable (QARTOD example)")
+    repeats_questionable: Count = Field(
+        3, description="as many previous values the same: questionable (QARTOD example)"
+    )
     repeats_bad: Count = Field(5, description="as many previous values the same: bad (QARTOD example)")
 
     @model_validator(mode="after")
@@ -141,12 +145,18 @@ class ColumnSettings(Settings):
     surface_reach: NotNegative = Field(5.0, description="m; a sensor no deeper than this stands for the surface")
     mixed_layer_threshold: Positive = Field(0.2, description="°C (de Boyer Montegut et al. 2004)")
     mixed_layer_reference: NotNegative = Field(10.0, description="m (de Boyer Montegut et al. 2004)")
-    mean_temperature_bottom: Positive = Field(300.0, description="m; bottom of the layer of the mean temperature (T300)")
+    mean_temperature_bottom: Positive = Field(
+        300.0, description="m; bottom of the layer of the mean temperature (T300)"
+    )
     sensor_accuracy: Positive = Field(
         0.02, description="°C, one standard deviation where a mooring states none (Freitag et al. 2005: 0.018)"
     )
-    sensor_noise: NotNegative = Field(0.005, description="°C; noise of one value, independent of the next (from memory)")
-    depth_accuracy: NotNegative = Field(1.0, description="m, one standard deviation of a nominal sensor depth (from memory)")
+    sensor_noise: NotNegative = Field(
+        0.005, description="°C; noise of one value, independent of the next (from memory)"
+    )
+    depth_accuracy: NotNegative = Field(
+        1.0, description="m, one standard deviation of a nominal sensor depth (from memory)"
+    )
 
 
 class MeansSettings(Settings):
@@ -157,13 +167,17 @@ class MeansSettings(Settings):
     censored_share: Share = Field(
         0.2, description="largest share of days on which the isotherm lay above or below the chain (ours)"
     )
-    questionable_share: Share = Field(0.5, description="a mean with a larger share of questionable inputs is questionable")
+    questionable_share: Share = Field(
+        0.5, description="a mean with a larger share of questionable inputs is questionable"
+    )
 
 
 class ClimatologyPriorSettings(Settings):
     """[section.climatology]: harmonics of the record, shrunk towards the packaged atlas."""
 
-    mean_sd: Positive = Field(7.5, description="m; mean isotherm depth about the atlas (two atlases differ by 7.3 m rms)")
+    mean_sd: Positive = Field(
+        7.5, description="m; mean isotherm depth about the atlas (two atlases differ by 7.3 m rms)"
+    )
     annual_sd: Positive = Field(5.0, description="m; each annual coefficient about the atlas (ours)")
     semiannual_sd: Positive = Field(3.0, description="m; each semi-annual coefficient about the atlas (ours)")
     length_longitude: Positive = Field(15.0, description="degrees; scale of the correction to the atlas (ours)")
@@ -178,7 +192,9 @@ class SectionSettings(Settings):
 
     means: MeansSettings = MeansSettings()
     climatology: ClimatologyPriorSettings = ClimatologyPriorSettings()
-    signal_sd: Positive = Field(12.0, description="m; standard deviation of monthly isotherm-depth anomalies (FACTS C4)")
+    signal_sd: Positive = Field(
+        12.0, description="m; standard deviation of monthly isotherm-depth anomalies (FACTS C4)"
+    )
     small_scale_sd: NotNegative = Field(
         4.0, description="m; part of a monthly mean that the map's scales do not resolve (ours)"
     )
@@ -316,9 +332,7 @@ def _inside(path: Path) -> str:
 Model = TypeVar("Model", bound=Settings)
 
 
-def validated(
-    model: type[Model], content: dict[str, Any], path: Path, *, also: Sequence[RequestError] = ()
-) -> Model:
+def validated(model: type[Model], content: dict[str, Any], path: Path, *, also: Sequence[RequestError] = ()) -> Model:
     """Build ``model`` from parsed TOML, or raise ConfigError with everything that is wrong, ``also`` included."""
     problems = list(also)
     try:

@@ -76,7 +76,12 @@ class ThermotiltError(Exception):
 
 
 def _rebuild(
-    kind: type[ThermotiltError], what: str, where: str | None, expected: str | None, found: str | None, advice: str | None
+    kind: type[ThermotiltError],
+    what: str,
+    where: str | None,
+    expected: str | None,
+    found: str | None,
+    advice: str | None,
 ) -> ThermotiltError:
     return kind(what, where=where, expected=expected, found=found, advice=advice)
 

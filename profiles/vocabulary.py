@@ -281,8 +281,7 @@ _SECTION_VARIABLES = [
 ]  # fmt: skip
 
 VARIABLES: Mapping[str, Variable] = {
-    variable.name: variable
-    for variable in [*_COORDINATES, *_CHAIN_VARIABLES, *_COLUMN_VARIABLES, *_SECTION_VARIABLES]
+    variable.name: variable for variable in [*_COORDINATES, *_CHAIN_VARIABLES, *_COLUMN_VARIABLES, *_SECTION_VARIABLES]
 }
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from typing import Any
 
 import numpy as np
 import xarray as xr
@@ -44,7 +45,7 @@ def columns_of(chain: xr.Dataset, settings: ColumnSettings | None = None) -> xr.
     used = flags.isin(list(settings.use_flags))
     temperature = chain["temperature"].where(used)
     sensor_depth = chain.get("sensor_depth")
-    rule = {
+    rule: dict[str, Any] = {
         "isotherm": settings.isotherm,
         "sensor_depth": sensor_depth,
         "max_bracket": settings.max_bracket,

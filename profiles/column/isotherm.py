@@ -175,8 +175,8 @@ def isotherm_depth(
     method : {"linear"}
         Depth against temperature between the two sensors that bracket the isotherm.
     sensor_depth : xarray.DataArray, optional
-        Where the sensors really were, metres, dims a subset of the temperature's with ``depth`` among them; ascending in
-        every profile. NaN makes its sensor missing. Default: the coordinate.
+        Where the sensors really were, metres, dims a subset of the temperature's with ``depth`` among them; ascending
+        in every profile. NaN makes its sensor missing. Default: the coordinate.
     max_bracket : float, optional
         Metres; sensors further apart do not bracket the isotherm. Default: no limit.
     crossing : {"shallowest", "deepest"}
@@ -211,7 +211,7 @@ def isotherm_depth(
     def kernel(values: NDArray[Any], places: NDArray[Any]) -> tuple[NDArray[Any], ...]:
         results = isotherm_kernel(values, places, float(isotherm), reach, float(surface_reach), deepest)
         _check_order(results[1])
-        return results  # type: ignore[no-any-return]
+        return results
 
     dtype = temperature.dtype
     found = over_profiles(

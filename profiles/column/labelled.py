@@ -75,7 +75,9 @@ def over_profiles(
 
     def flat(temperature: np.ndarray, *others: np.ndarray) -> tuple[np.ndarray, ...]:
         sensors = temperature.shape[-1]
-        shared = [other.reshape(1, sensors) if other.size == sensors else _spread(other, temperature) for other in others]
+        shared = [
+            other.reshape(1, sensors) if other.size == sensors else _spread(other, temperature) for other in others
+        ]
         results = kernel(temperature.reshape(-1, sensors), *shared)
         return tuple(result.reshape(temperature.shape[:-1]) for result in results)
 

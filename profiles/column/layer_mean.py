@@ -106,7 +106,9 @@ def layer_mean_temperature(
     reach = np.inf if max_gap is None else float(max_gap)
 
     def kernel(values: NDArray[Any], places: NDArray[Any]) -> tuple[NDArray[Any], ...]:
-        results: tuple[NDArray[Any], ...] = layer_mean_kernel(values, places, float(bottom), float(surface_reach), reach)
+        results: tuple[NDArray[Any], ...] = layer_mean_kernel(
+            values, places, float(bottom), float(surface_reach), reach
+        )
         return results
 
     found = over_profiles(
@@ -116,4 +118,6 @@ def layer_mean_temperature(
         outputs=("mean_temperature", "mean_temperature_status"),
         dtypes=(temperature.dtype, np.int8),
     )
-    return describe(found, mean_temperature={"comment": f"of the layer 0 to {bottom:g} m", "cell_methods": "depth: mean"})
+    return describe(
+        found, mean_temperature={"comment": f"of the layer 0 to {bottom:g} m", "cell_methods": "depth: mean"}
+    )

@@ -68,7 +68,9 @@ def atlas_isotherm(latitude: Array, longitude: Array, isotherm: float) -> Array:
     """Return the harmonics of the isotherm's depth in the packaged atlas, m, (position, harmonic)."""
     design = harmonic_design((np.arange(_STEPS) + 0.5) / _STEPS)
     profile = seasonal_profile(latitude, longitude)
-    through_year = xr.dot(xr.DataArray(design, dims=("step", "harmonic")), profile.drop_vars("harmonic"), dim="harmonic")
+    through_year = xr.dot(
+        xr.DataArray(design, dims=("step", "harmonic")), profile.drop_vars("harmonic"), dim="harmonic"
+    )
     depth = isotherm_depth(through_year.astype(np.float64), isotherm=isotherm)["isotherm_depth"]
     return np.asarray(depth.transpose("position", "step").values @ np.linalg.pinv(design).T)
 
@@ -132,11 +134,13 @@ def _summaries(
     design = harmonic_design(year_fraction(records.time))
     present = np.isfinite(records.values[:, known])
     count = present.sum(axis=0)
-    projected = np.where(present.T[..., None], design, 0.0) / np.maximum(count, 1)[:, None, None]  # (site, time, harmonic)
+    projected = (
+        np.where(present.T[..., None], design, 0.0) / np.maximum(count, 1)[:, None, None]
+    )  # (site, time, harmonic)
     residual = np.where(present, records.values[:, known] - design @ atlas_sites[known].T, 0.0)
     departures = np.einsum("sth,ts->sh", projected, residual).ravel()
     blocks = np.einsum("sth,tk->shk", projected, design)
-    return departures, _block_diagonal(blocks), _record_error(records, known, projected, settings)
+    return np.asarray(departures), _block_diagonal(blocks), _record_error(records, known, projected, settings)
 
 
 def _record_error(records: Records, known: NDArray[np.intp], projected: Array, settings: SectionSettings) -> Array:

@@ -33,9 +33,7 @@ class Gaussian:
         """Return the correlation of every position with every other, (positions, positions_)."""
         return self.along(latitude, latitude_) * self.across(longitude, longitude_)
 
-    def with_functionals(
-        self, latitude: Array, longitude: Array, weights: Array, rows: Array, columns: Array
-    ) -> Array:
+    def with_functionals(self, latitude: Array, longitude: Array, weights: Array, rows: Array, columns: Array) -> Array:
         """Return the correlation of positions with weighted sums over a grid, (positions, functional).
 
         ``weights`` is (functional, rows, columns), 0 where a cell does not count.

@@ -95,7 +95,7 @@ class _ClimatologyError:
         return cls(field, weights, *QUANTITIES[field.attrs["quantity"]])
 
     def variance(self, times: NDArray[np.intp], sites: NDArray[np.intp], gains: Array) -> Array:
-        """Return the variance at ``times``, (time, functional), of a network with the map's ``gains`` (site, functional)."""
+        """Return the variance at ``times`` under a network's ``gains`` (site, functional), as (time, functional)."""
         at_sites = self.at_sites * gains
         spatial = (
             self.cells_cells

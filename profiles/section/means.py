@@ -36,9 +36,10 @@ def daily_means(columns: xr.Dataset, settings: MeansSettings | None = None) -> x
     """
     settings = settings or MeansSettings()
     table = _table(columns)
-    days = table.index.floor("D")
+    times = pd.DatetimeIndex(table.index)
+    days = times.floor("D")
     index = pd.date_range(days[0], days[-1], freq="D")
-    expected = max(1.0, round(pd.Timedelta("1D") / _nominal_interval(table.index)))
+    expected = max(1, round(24.0 / _nominal_hours(times)))
     grouped = table.groupby(days)
     least = settings.daily_share * expected
     means = _means_where(grouped, least).reindex(index)
@@ -69,7 +70,7 @@ def monthly_means(daily: xr.Dataset, settings: MeansSettings | None = None) -> x
     """
     settings = settings or MeansSettings()
     table = _table(daily)
-    months = table.index.to_period("M")
+    months = pd.DatetimeIndex(table.index).to_period("M")
     index = pd.period_range(months[0], months[-1], freq="M")
     grouped = table.groupby(months)
     least = settings.monthly_days
@@ -118,11 +119,15 @@ def _aligned(part: xr.Dataset, times: np.ndarray) -> xr.Dataset:
 
 def _table(columns: xr.Dataset) -> pd.DataFrame:
     series = {str(name): data for name, data in columns.data_vars.items() if data.dims == ("time",)}
-    return pd.DataFrame({name: data.values for name, data in series.items()}, index=pd.DatetimeIndex(columns["time"].values))
+    return pd.DataFrame(
+        {name: data.values for name, data in series.items()}, index=pd.DatetimeIndex(columns["time"].values)
+    )
 
 
-def _nominal_interval(times: pd.DatetimeIndex) -> pd.Timedelta:
-    return pd.Timedelta(np.median(np.diff(times))) if times.size > 1 else pd.Timedelta("1D")
+def _nominal_hours(times: pd.DatetimeIndex) -> float:
+    """Return the median time step in hours, a day where there is none."""
+    steps = np.diff(times.to_numpy()) / np.timedelta64(1, "h")
+    return float(np.median(steps)) if steps.size else 24.0
 
 
 def _means_where(grouped: Any, least: float) -> pd.DataFrame:
@@ -136,7 +141,7 @@ def _means_where(grouped: Any, least: float) -> pd.DataFrame:
 def _error_of_mean(errors: pd.Series[float], groups: pd.Index) -> pd.Series[float]:
     """Return the standard error of the mean of each group of values whose errors are independent."""
     squares = (errors**2).groupby(groups)
-    return np.sqrt(squares.sum(min_count=1)) / squares.count()
+    return squares.sum(min_count=1) ** 0.5 / squares.count()
 
 
 def _commonest_status(table: pd.DataFrame, groups: pd.DatetimeIndex) -> pd.Series[int]:
@@ -151,7 +156,7 @@ def _censored(table: pd.DataFrame) -> pd.Series[bool]:
 
 
 def _mean_status(
-    count: pd.Series[int], censored: pd.Series[int], least: float, censored_share: float
+    count: pd.Series[int], censored: pd.Series[Any], least: float, censored_share: float
 ) -> pd.Series[int]:
     status = pd.Series(int(MeanStatus.GIVEN), index=count.index)
     status[count < least] = int(MeanStatus.TOO_FEW_VALUES)

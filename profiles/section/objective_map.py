@@ -123,8 +123,8 @@ def objective_map(
     if mean not in ("known", "estimated"):
         raise RequestError("no such choice", where="mean", expected="'known' or 'estimated'", found=repr(mean))
     data = _labelled(values)
-    sites = {"site_latitude": _positions(latitude, data, "latitude"), "site_longitude": _positions(longitude, data, "longitude")}
-    check_longitude(sites["site_longitude"])
+    places = _positions(latitude, data, "latitude"), _positions(longitude, data, "longitude")
+    check_longitude(places[1])
     rows, columns = _axis(grid_latitude), _axis(grid_longitude)
     check_longitude(columns)
     noise = _noise(noise_sd, data)
@@ -133,8 +133,8 @@ def objective_map(
     mapped, error = map_kernel(
         data.values,
         noise,
-        correlation.between(*sites.values(), *sites.values()),
-        correlation.between(*sites.values(), points[0].ravel(), points[1].ravel()),
+        correlation.between(*places, *places),
+        correlation.between(*places, points[0].ravel(), points[1].ravel()),
         signal_sd=float(signal_sd),
         estimate_mean=mean == "estimated",
     )
@@ -145,7 +145,7 @@ def objective_map(
             "error": (("time", "latitude", "longitude"), error.reshape(shape)),
             "site_noise": (("time", "site"), noise),
         }
-        | {name: ("site", place) for name, place in sites.items()},
+        | {"site_latitude": ("site", places[0]), "site_longitude": ("site", places[1])},
         coords={"latitude": rows, "longitude": columns} | _time_of(data),
         attrs={
             "signal_sd": float(signal_sd),
@@ -164,7 +164,9 @@ def _check_scales(**scales: float) -> None:
 
 
 def _labelled(values: xr.DataArray | ArrayLike) -> xr.DataArray:
-    data = values if isinstance(values, xr.DataArray) else xr.DataArray(np.asarray(values), dims=("time", "site")[-np.ndim(values):])
+    data = values if isinstance(values, xr.DataArray) else xr.DataArray(np.asarray(values))
+    if not isinstance(values, xr.DataArray) and data.ndim == 2:
+        data = data.rename(dict(zip(data.dims, ("time", "site"), strict=True)))
     if set(data.dims) != {"time", "site"}:
         raise DataError("the values do not fit", where="values", expected="dims (time, site)", found=f"{data.dims}")
     return data.transpose("time", "site").astype(np.float64)

@@ -49,9 +49,7 @@ def section_weights(field: xr.Dataset | xr.DataArray) -> Array:
     return weights
 
 
-def thermocline_slope(
-    field: xr.Dataset | xr.DataArray, *, window: tuple[float, float] = TILT_WINDOW
-) -> xr.Dataset:
+def thermocline_slope(field: xr.Dataset | xr.DataArray, *, window: tuple[float, float] = TILT_WINDOW) -> xr.Dataset:
     """Return the slope of the thermocline along the equator.
 
     Parameters
@@ -84,7 +82,7 @@ def thermocline_slope(
     check_longitude(_longitude(field))
     if isinstance(field, xr.Dataset):
         band = band_weights(field["latitude"].values, field["longitude"].values)
-        sea = np.isfinite(band).all(axis=0)
+        sea = np.isfinite(band[0])
         weights = _on_sea(field["longitude"].values, sea, window)
         cells = np.nan_to_num(band) * weights
         slope = xr.dot(field["mean"], _like(cells, field), dim=("latitude", "longitude"))
@@ -104,7 +102,9 @@ def thermocline_slope(
 
 def _longitude(field: xr.Dataset | xr.DataArray) -> Array:
     if "longitude" not in field.coords or "longitude" not in field.dims:
-        raise DataError("the field has no longitude", expected="a dimension and coordinate 'longitude'", found=f"{field.dims}")
+        raise DataError(
+            "the field has no longitude", expected="a dimension and coordinate 'longitude'", found=f"{field.dims}"
+        )
     if isinstance(field, xr.DataArray) and "latitude" in field.dims:
         raise DataError(
             "the section still has latitudes",

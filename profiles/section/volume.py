@@ -11,7 +11,9 @@ from profiles.section.functional import functional_error
 from profiles.section.grid import REGIONS, check_longitude, sea_area
 from profiles.vocabulary import describe
 
-LEAST_COVERED = 0.95  # share of a region's sea that a bare field must cover (ours); the volume is then scaled to the whole
+LEAST_COVERED = (
+    0.95  # share of a region's sea that a bare field must cover (ours); the volume is then scaled to the whole
+)
 
 
 def warm_water_volume(field: xr.Dataset | xr.DataArray, *, region: str = "total") -> xr.Dataset:
@@ -28,11 +30,11 @@ def warm_water_volume(field: xr.Dataset | xr.DataArray, *, region: str = "total"
     Returns
     -------
     xarray.Dataset
-        ``warm_water_volume`` (m3), ``warm_water_volume_error`` (standard error, m3) and ``covered_share``, the share of the
-        region's sea on which the field has a value. Cells are cut at the region's edges and count by their area on the
-        sphere and their share of sea (ETOPO5). Where less than the whole is covered the volume is that of the covered
-        part, scaled; below a share of 0.95 it is NaN. The error follows from the covariance of the map; for a bare field
-        it is NaN, and the attribute ``reason`` says why.
+        ``warm_water_volume`` (m3), ``warm_water_volume_error`` (standard error, m3) and ``covered_share``, the share of
+        the region's sea on which the field has a value. Cells are cut at the region's edges and count by their area
+        on the sphere and their share of sea (ETOPO5). Where less than the whole is covered the volume is that of the
+        covered part, scaled; below a share of 0.95 it is NaN. The error follows from the covariance of the map; for a
+        bare field it is NaN, and the attribute ``reason`` says why.
 
     Raises
     ------
@@ -50,7 +52,7 @@ def warm_water_volume(field: xr.Dataset | xr.DataArray, *, region: str = "total"
     depth = field["mean"] if isinstance(field, xr.Dataset) else field
     area = _cell_areas(depth, region)
     present = depth.notnull()
-    covered = xr.where(present, area, 0.0).sum(("latitude", "longitude")) / area.sum()
+    covered = (present * area).sum(("latitude", "longitude")) / area.sum()
     volume = (depth.fillna(0.0) * area).sum(("latitude", "longitude")) / covered.where(covered >= LEAST_COVERED)
     if isinstance(field, xr.Dataset):
         error = volume.copy(data=functional_error(field, area.values[None])[:, 0])
@@ -66,9 +68,7 @@ def warm_water_volume(field: xr.Dataset | xr.DataArray, *, region: str = "total"
 def _cell_areas(depth: xr.DataArray, region: str) -> xr.DataArray:
     missing = {"latitude", "longitude"} - set(depth.dims)
     if missing:
-        raise DataError(
-            "the field is no map", expected="dims (time, latitude, longitude)", found=f"{depth.dims}"
-        )
+        raise DataError("the field is no map", expected="dims (time, latitude, longitude)", found=f"{depth.dims}")
     rows, columns = (_axis(depth, name) for name in ("latitude", "longitude"))
     check_longitude(columns)
     area = sea_area(rows, columns, west_east=REGIONS[region])

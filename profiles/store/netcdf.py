@@ -17,7 +17,10 @@ from profiles.vocabulary import VARIABLES
 TIME_BLOCK = 8192  # samples of one block: 14 sensors of float32 are half a megabyte
 TIME_UNITS = "seconds since 1970-01-01T00:00:00Z"
 CONVENTIONS = "CF-1.11, ACDD-1.3"
-_FILL = {"f": np.float32(9.96921e36), "d": np.float64(9.969209968386869e36)}  # the NetCDF default fill values
+_FILL: Mapping[str, Any] = {
+    "f": np.float32(9.96921e36),
+    "d": np.float64(9.969209968386869e36),
+}  # the NetCDF default fill values
 
 
 def open_dataset(path: Path) -> xr.Dataset:
@@ -79,7 +82,7 @@ def write_blocks(path: Path, blocks: Iterable[xr.Dataset], attributes: Mapping[s
 
 def _define(file: netCDF4.Dataset, block: xr.Dataset) -> None:
     for dim, size in block.sizes.items():
-        file.createDimension(dim, None if dim == "time" else size)
+        file.createDimension(str(dim), None if dim == "time" else size)
     scalars = [str(name) for name in block.coords if not block[name].dims]
     for name in [*block.coords, *block.data_vars]:
         _define_variable(file, block[name], scalars)
@@ -88,17 +91,17 @@ def _define(file: netCDF4.Dataset, block: xr.Dataset) -> None:
 def _define_variable(file: netCDF4.Dataset, data: xr.DataArray, scalars: list[str]) -> None:
     name = str(data.name)
     dtype = _storage_type(data)
-    chunks = [TIME_BLOCK if dim == "time" else size for dim, size in data.sizes.items()]
+    chunks: list[int] = [TIME_BLOCK if dim == "time" else size for dim, size in data.sizes.items()]
     compress = dtype is not str and bool(data.dims)
     variable = file.createVariable(
         name,
         dtype,
-        data.dims,
-        compression="zlib" if compress else None,
+        [str(dim) for dim in data.dims],
+        zlib=compress,
         complevel=4,
         shuffle=compress,
         chunksizes=[max(size, 1) for size in chunks] if data.dims else None,
-        fill_value=_FILL.get(np.dtype(dtype).char) if dtype is not str and name not in data.dims else None,
+        fill_value=None if dtype is str or name in data.dims else _FILL.get(np.dtype(dtype).char),
     )
     attributes = {key: value for key, value in data.attrs.items() if value is not None}
     if np.issubdtype(data.dtype, np.datetime64):

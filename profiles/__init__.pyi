@@ -1,0 +1,17 @@
+from .column import isotherm_depth as isotherm_depth
+from .column import mixed_layer_depth as mixed_layer_depth
+from .ingest import read_delivery as read_delivery
+from .qc import quality_control as quality_control
+from .section import objective_map as objective_map
+from .section import thermocline_slope as thermocline_slope
+from .section import warm_water_volume as warm_water_volume
+
+__all__ = [
+    "isotherm_depth",
+    "mixed_layer_depth",
+    "objective_map",
+    "quality_control",
+    "read_delivery",
+    "thermocline_slope",
+    "warm_water_volume",
+]
