@@ -21,9 +21,7 @@ from profiles.ingest.wide import read_wide
 from profiles.vocabulary import describe
 
 POSITION_TOLERANCE = 0.25  # degrees; a stated and a delivered position further apart are of two sites (ours)
-SENSOR_ACCURACY = (
-    0.02  # °C, one standard deviation; Freitag et al. (2005), NOAA TM PMEL-128: 0.018, drift included
-)
+SENSOR_ACCURACY = 0.02  # °C, one standard deviation; Freitag et al. (2005), NOAA TM PMEL-128: 0.018, drift included
 QUARANTINE_COLUMNS = ("file", "line", "reason", "text")
 
 
@@ -169,9 +167,7 @@ def accounted(
 
 def _check_arguments(latitude: float | None, longitude: float | None, sensor_accuracy: float) -> None:
     if latitude is not None and not -90.0 <= latitude <= 90.0:
-        raise RequestError(
-            "no latitude", where="latitude", expected="-90 to 90 degrees north", found=f"{latitude:g}"
-        )
+        raise RequestError("no latitude", where="latitude", expected="-90 to 90 degrees north", found=f"{latitude:g}")
     if longitude is not None and not -180.0 <= longitude <= 360.0:
         raise RequestError(
             "no longitude",
@@ -229,9 +225,7 @@ def _stem(path: Path) -> str:
     return path.name.removesuffix(".gz").rsplit(".", 1)[0]
 
 
-def _chain(
-    record: Record, mooring: str, position: Mapping[str, float | None], sensor_accuracy: float
-) -> xr.Dataset:
+def _chain(record: Record, mooring: str, position: Mapping[str, float | None], sensor_accuracy: float) -> xr.Dataset:
     grid = ("time", "depth")
     known = {role: value for role, value in position.items() if value is not None}
     data = {
@@ -251,15 +245,12 @@ def _quarantine(path: Path, layout: Layout, rejected: Sequence[Rejected]) -> pd.
     unknown = [row.line for row in rejected if row.text is None]
     texts = row_texts(path, layout, unknown, {}) if unknown else {}
     entries = [
-        (str(path), row.line, row.reason, row.text if row.text is not None else texts[row.line])
-        for row in rejected
+        (str(path), row.line, row.reason, row.text if row.text is not None else texts[row.line]) for row in rejected
     ]
     return pd.DataFrame(entries, columns=list(QUARANTINE_COLUMNS)).astype({"line": np.int64})
 
 
-def row_texts(
-    path: Path, layout: Layout, lines: Collection[int], times: Mapping[int, np.datetime64]
-) -> dict[int, str]:
+def row_texts(path: Path, layout: Layout, lines: Collection[int], times: Mapping[int, np.datetime64]) -> dict[int, str]:
     """Return what a quarantine entry shows of some lines; ``times`` by line serve for NetCDF files."""
     if isinstance(layout, NetcdfLayout):
         return {line: step_text(line, times[line]) for line in lines}

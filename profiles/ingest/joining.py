@@ -88,9 +88,7 @@ def _common_coords(deliveries: Sequence[Delivery]) -> dict[str, str | float]:
 
 
 def _common_position(role: str, deliveries: Sequence[Delivery]) -> float | None:
-    known = [
-        (delivery, float(delivery.chain[role])) for delivery in deliveries if role in delivery.chain.coords
-    ]
+    known = [(delivery, float(delivery.chain[role])) for delivery in deliveries if role in delivery.chain.coords]
     for delivery, value in known:
         first, common = known[0]
         if degrees_apart(value, common) > POSITION_TOLERANCE:
@@ -110,11 +108,7 @@ def _scales(chains: Sequence[xr.Dataset]) -> dict[str, str]:
     scales = [str(held.get("reference_scale") or held["comment"]) for held in attributes]
     if len(set(scales)) == 1:
         return {"reference_scale": scales[0]}
-    return {
-        "comment": "; ".join(
-            f"deployment {number} on {scale}" for number, scale in enumerate(scales, start=1)
-        )
-    }
+    return {"comment": "; ".join(f"deployment {number} on {scale}" for number, scale in enumerate(scales, start=1))}
 
 
 # ------------------------------------------------------------------------------------------------------------
@@ -138,7 +132,8 @@ def _divided(deliveries: Sequence[Delivery], winners: Sequence[Mask]) -> tuple[p
     kept, lost, first_source = [], [], 0
     for number, (delivery, wins) in enumerate(zip(deliveries, winners, strict=True), start=1):
         has_won = delivery.rows["time"].isin(delivery.chain["time"].values[wins])
-        kept.append(delivery.rows[has_won].assign(source=delivery.rows["source"] + first_source))
+        rows = delivery.rows[has_won]
+        kept.append(rows.assign(source=rows["source"] + first_source))
         lost += _lost_entries(delivery, delivery.rows[~has_won], number)
         first_source += len(delivery.sources)
     return pd.concat(kept, ignore_index=True), pd.DataFrame(lost, columns=list(QUARANTINE_COLUMNS))
@@ -160,9 +155,7 @@ def _lost_entries(delivery: Delivery, rows: pd.DataFrame, number: int) -> list[t
 
 
 def _joined(chains: Sequence[xr.Dataset], winners: Sequence[Mask]) -> xr.Dataset:
-    time = np.unique(
-        np.concatenate([chain["time"].values[wins] for chain, wins in zip(chains, winners, strict=True)])
-    )
+    time = np.unique(np.concatenate([chain["time"].values[wins] for chain, wins in zip(chains, winners, strict=True)]))
     depth = np.unique(np.concatenate([chain["depth"].values for chain in chains]))
     joined = xr.Dataset(coords={"time": time, "depth": depth})
     shape, grid = (time.size, depth.size), ("time", "depth")

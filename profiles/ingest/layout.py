@@ -55,12 +55,8 @@ class TimeColumns(Settings):
     """[time]: where the stamps are and how they are written."""
 
     column: str | None = Field(None, description="name of the column")
-    columns: tuple[str, ...] = Field(
-        (), description="or names of several, read as one text joined by a blank"
-    )
-    format: Annotated[str, AfterValidator(_whole_date)] = Field(
-        ISO_8601, description='strptime format or "iso8601"'
-    )
+    columns: tuple[str, ...] = Field((), description="or names of several, read as one text joined by a blank")
+    format: Annotated[str, AfterValidator(_whole_date)] = Field(ISO_8601, description='strptime format or "iso8601"')
     zone: Annotated[str, AfterValidator(_known_zone)] = Field(
         "UTC",
         description="UTC, an offset like +10:00 or an IANA name; an offset in the stamp itself comes first",
@@ -116,9 +112,7 @@ class LongDepth(Settings):
     column: str
     units: DepthUnits = "m"
     positive: Literal["down", "up"] = "down"
-    values: tuple[float, ...] = Field(
-        (), description="depths of the sensors; rows with another are quarantined"
-    )
+    values: tuple[float, ...] = Field((), description="depths of the sensors; rows with another are quarantined")
 
     @model_validator(mode="after")
     def _distinct(self) -> Self:
@@ -145,9 +139,7 @@ class TextLayout(Settings):
     names: tuple[str, ...] = Field((), description="column names where the file has none")
     encoding: Annotated[str, AfterValidator(_known_encoding)] = Field("utf-8", validate_default=True)
     decimal: Literal[".", ","] = "."
-    missing: tuple[str, ...] = Field(
-        ("",), description="cells without a reading, compared as text and as number"
-    )
+    missing: tuple[str, ...] = Field(("",), description="cells without a reading, compared as text and as number")
     time: TimeColumns
 
     @model_validator(mode="after")
@@ -192,9 +184,7 @@ class NetcdfVariables(Settings):
 class NetcdfTemperature(Settings):
     """[temperature] of a NetCDF file; units come from the file."""
 
-    scale: Scale | None = Field(
-        None, description="where the file has no reference_scale; ITS-90 where neither says"
-    )
+    scale: Scale | None = Field(None, description="where the file has no reference_scale; ITS-90 where neither says")
 
 
 class NetcdfTime(Settings):

@@ -50,9 +50,7 @@ def check_file(path: Path) -> bytes:
             "no such file", where=str(path), expected="a delivery", advice=f"check the path{near}"
         ) from None
     except IsADirectoryError:
-        raise RequestError(
-            "is a folder", where=str(path), expected="a file", advice="name the file in it"
-        ) from None
+        raise RequestError("is a folder", where=str(path), expected="a file", advice="name the file in it") from None
     except OSError as error:
         raise MachineError(
             "cannot be read", where=str(path), found=error.strerror, advice="check its permissions"
@@ -210,8 +208,4 @@ def texts_of(path: Path, layout: TextLayout, lines: Collection[int]) -> dict[int
     """Return some lines by number, fit to print, reading the file once more."""
     wanted = set(lines)
     with open_text(path, layout.encoding) as text:
-        return {
-            number: printable(line.rstrip("\n"))
-            for number, line in enumerate(text, start=1)
-            if number in wanted
-        }
+        return {number: printable(line.rstrip("\n")) for number, line in enumerate(text, start=1) if number in wanted}

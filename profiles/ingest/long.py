@@ -68,9 +68,7 @@ def _with_depth(rows: Rows, layout: LongLayout, tally: Tally) -> Rows:
     reasons = np.full(depth.size, None, dtype=object)
     if declared.size:
         reasons[~np.isin(depth, declared)] = "the depth is not among those that the layout declares"
-    reasons[~((depth >= 0.0) & (depth <= GREATEST_DEPTH))] = (
-        f"the depth is not between 0 and {GREATEST_DEPTH:g} m"
-    )
+    reasons[~((depth >= 0.0) & (depth <= GREATEST_DEPTH))] = f"the depth is not between 0 and {GREATEST_DEPTH:g} m"
     reasons[np.isnan(depth)] = "the depth is missing"
     return _without(rows, pd.notna(reasons), reasons, tally)
 

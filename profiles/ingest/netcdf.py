@@ -84,9 +84,7 @@ def _opened(path: Path) -> Iterator[xr.Dataset]:
     try:
         with warnings.catch_warnings():
             # Files with both _FillValue and missing_value are common; both are masked.
-            warnings.filterwarnings(
-                "ignore", message=".*multiple fill values", category=xr.SerializationWarning
-            )
+            warnings.filterwarnings("ignore", message=".*multiple fill values", category=xr.SerializationWarning)
             with xr.open_dataset(path, engine="netcdf4", decode_timedelta=False) as dataset:
                 yield dataset
     except (OSError, RuntimeError, ValueError, OverflowError) as error:
@@ -105,9 +103,7 @@ def _check_complete(path: Path, head: bytes) -> None:
     The library reads the lost part of a truncated classic file as zeros, without a word.
     """
     if head.startswith(GZIP_MAGIC):
-        raise DataError(
-            "is compressed", where=str(path), expected="a NetCDF file", found="gzip", advice="unpack it"
-        )
+        raise DataError("is compressed", where=str(path), expected="a NetCDF file", found="gzip", advice="unpack it")
     if head.startswith(_CLASSIC_64_BIT_DATA):
         raise DataError(
             "is of the classic format with 64-bit data, of which it cannot be told whether it is complete",
@@ -119,9 +115,7 @@ def _check_complete(path: Path, head: bytes) -> None:
         try:
             netcdf_file(path, mmap=False).close()
         except (ValueError, TypeError, IndexError, EOFError) as error:
-            raise DataError(
-                "is cut short", where=str(path), found=str(error), advice="fetch it again"
-            ) from error
+            raise DataError("is cut short", where=str(path), found=str(error), advice="fetch it again") from error
     elif not head.startswith(_HDF5_MAGIC):
         raise DataError(
             "is no NetCDF file",
@@ -204,9 +198,7 @@ class Source:
 # What it holds
 
 
-def _time_by_depth(
-    source: Source, variable: xr.DataArray, time: xr.DataArray, depth: xr.DataArray
-) -> xr.DataArray:
+def _time_by_depth(source: Source, variable: xr.DataArray, time: xr.DataArray, depth: xr.DataArray) -> xr.DataArray:
     """Return a variable as (time, depth); other dimensions must have one element."""
     dims = [str(coordinate.dims[0]) for coordinate in (time, depth) if coordinate.dims]
     others = {str(dim): size for dim, size in variable.sizes.items() if dim not in dims}
@@ -247,9 +239,7 @@ def _stamps(source: Source, time: xr.DataArray) -> NDArray[np.datetime64]:
             f"calendar {time.encoding.get('calendar', time.attrs.get('calendar'))!r}",
             advice="correct the attributes in the file",
         )
-    stamps: NDArray[np.datetime64] = (
-        pd.DatetimeIndex(time.values).round("ms").to_numpy().astype("datetime64[ns]")
-    )
+    stamps: NDArray[np.datetime64] = pd.DatetimeIndex(time.values).round("ms").to_numpy().astype("datetime64[ns]")
     return stamps + np.timedelta64(round(source.layout.time.offset_hours * 3_600e9), "ns")
 
 
@@ -323,9 +313,7 @@ def _record(source: Source, contents: Contents, **known: Any) -> Record:
     if flags is not None:
         ours, unknown = _in_our_flags(flags, np.isnan(temperature), source.layout.flags)
         for row in np.flatnonzero(unknown.any(axis=1)):
-            reasons[row] = (
-                f"the flag {flags[row][unknown[row]][0]:g} is in no table; say in [flags] what it means"
-            )
+            reasons[row] = f"the flag {flags[row][unknown[row]][0]:g} is in no table; say in [flags] what it means"
     reasons[np.isinf(temperature).any(axis=1)] = "a temperature is infinite"
     reasons[np.isnat(time)] = "the time is missing"
     _name_repeats(time, reasons)
@@ -351,9 +339,7 @@ def _name_repeats(time: NDArray[np.datetime64], reasons: NDArray[np.object_]) ->
     """Among the rows without a reason so far, name those that repeat the time of an earlier one."""
     sound = np.flatnonzero(~pd.notna(reasons))
     repeated, first = repeats(pd.DataFrame({"time": time[sound]}))
-    reasons[sound[repeated]] = [
-        f"the time is that of time step {step + 1}" for step in sound[first[repeated]]
-    ]
+    reasons[sound[repeated]] = [f"the time is that of time step {step + 1}" for step in sound[first[repeated]]]
 
 
 def step_text(step: int, time: np.datetime64) -> str:

@@ -70,14 +70,10 @@ class Tally:
     rows_read: int = 0
     rejected: list[Rejected] = field(default_factory=list)
 
-    def reject(
-        self, lines: Iterable[int], reasons: Iterable[str], texts: Iterable[str] | None = None
-    ) -> None:
+    def reject(self, lines: Iterable[int], reasons: Iterable[str], texts: Iterable[str] | None = None) -> None:
         """Add rows to the quarantine; without ``texts`` they are looked up later."""
         if texts is None:
-            self.rejected += [
-                Rejected(int(line), reason) for line, reason in zip(lines, reasons, strict=True)
-            ]
+            self.rejected += [Rejected(int(line), reason) for line, reason in zip(lines, reasons, strict=True)]
         else:
             self.rejected += [
                 Rejected(int(line), reason, printable(text))
@@ -97,9 +93,7 @@ class Tally:
         verify_count(self.rows_read, kept, len(self.rejected), where)
         ordered = tuple(sorted(self.rejected, key=lambda row: row.line))
         if self.rows_read == 0:
-            raise DataError(
-                "there are no data rows", where=where, expected="at least one", found="only a header"
-            )
+            raise DataError("there are no data rows", where=where, expected="at least one", found="only a header")
         if kept == 0:
             raise DataError(
                 "no row could be understood",

@@ -67,11 +67,7 @@ def _understand(
     cells = picked(block.cells, list(columns.values()))
     values, problems = parse_numbers(cells, decimal=layout.decimal, missing=layout.missing)
     _add_problems(reasons, cells, problems, list(columns))
-    label = (
-        picked(block.cells, [label_column])[:, 0]
-        if label_column is not None
-        else np.full(len(reasons), "", object)
-    )
+    label = picked(block.cells, [label_column])[:, 0] if label_column is not None else np.full(len(reasons), "", object)
     rows = Rows(np.array(block.lines, dtype=np.int64), time, values, label)
     is_bad = pd.notna(reasons)
     tally.reject(rows.line[is_bad], reasons[is_bad], [block.texts[place] for place in np.flatnonzero(is_bad)])
@@ -93,9 +89,7 @@ def _add_problems(
     for row in np.flatnonzero(problems.any(axis=1)):
         column = int(np.flatnonzero(problems[row])[0])
         if reasons[row] is None:
-            reasons[row] = (
-                f"column {names[column]!r}: {Problem(problems[row, column]).describe(cells[row, column])}"
-            )
+            reasons[row] = f"column {names[column]!r}: {Problem(problems[row, column]).describe(cells[row, column])}"
 
 
 def gathered(parts: Sequence[Rows], width: int) -> Rows:

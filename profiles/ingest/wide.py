@@ -38,9 +38,7 @@ def read_wide(path: Path, layout: WideLayout) -> Record:
         ]
     rows = gathered(parts, len(sensors))
     repeated, first = repeats(pd.DataFrame({"time": rows.time}))
-    tally.reject(
-        rows.line[repeated], [f"the time is that of line {line}" for line in rows.line[first[repeated]]]
-    )
+    tally.reject(rows.line[repeated], [f"the time is that of line {line}" for line in rows.line[first[repeated]]])
     kept = rows.where(~repeated)
     rejected = tally.settle(kept.line.size, str(path))
     by_time = np.argsort(kept.time, kind="stable")

@@ -1,0 +1,57 @@
+import numpy as np
+import pytest
+
+from profiles.ingest.numerals import Problem, parse_numbers
+
+
+def parsed(*cells, decimal=".", missing=("",)):
+    return parse_numbers(np.array(cells, dtype=object), decimal=decimal, missing=missing)
+
+
+@pytest.mark.parametrize("cell", ["1", "+1.", "1.0", "01.00", "10e-1", ".1E1"])
+def test_every_way_of_writing_one_is_read(cell):
+    values, problems = parsed(cell)
+    assert (values[0], problems[0]) == (1.0, Problem.NONE)
+
+
+@pytest.mark.parametrize("cell", ["nan", "inf", "1_0", "0x10", "1,5", "1.2.3", "--1", "1 2", "٣", "e5", ".", "True"])
+def test_what_is_no_number_is_told(cell):
+    values, problems = parsed(cell)
+    assert np.isnan(values[0])
+    assert problems[0] == Problem.NOT_A_NUMBER
+
+
+@pytest.mark.parametrize("cell", ["1e999", "-1e999", "1e39"])
+def test_numbers_beyond_float32_are_told(cell):
+    # the largest float32 is 3.4e38
+    values, problems = parsed(cell)
+    assert np.isnan(values[0])
+    assert problems[0] == Problem.NOT_FINITE
+
+
+def test_missing_tokens_are_compared_as_text_and_as_number():
+    values, problems = parsed("-9.999", "-9.9990", "-9999e-3", "NA", "-9.998", missing=("-9.999", "NA"))
+    np.testing.assert_array_equal(values, [np.nan, np.nan, np.nan, np.nan, -9.998])
+    assert not problems.any()
+
+
+def test_a_token_beyond_any_number_is_missing_all_the_same():
+    assert parsed("1e999", missing=("1e999",))[1][0] == Problem.NONE
+
+
+def test_an_empty_cell_is_missing_only_where_the_layout_says_so():
+    assert parsed("", missing=("",))[1][0] == Problem.NONE
+    assert parsed("", missing=("NA",))[1][0] == Problem.NOT_A_NUMBER
+
+
+def test_decimal_commas_are_read_with_decimal_commas_only():
+    values, problems = parsed("1,5", "1.5", "-9,9990", decimal=",", missing=("-9.999",))
+    np.testing.assert_array_equal(values, [1.5, np.nan, np.nan])
+    np.testing.assert_array_equal(problems, [Problem.NONE, Problem.NOT_A_NUMBER, Problem.NONE])
+
+
+def test_the_shape_is_kept():
+    cells = np.array([["1", "2", "x"], ["4", "", "6"]], dtype=object)
+    values, problems = parse_numbers(cells, decimal=".", missing=("",))
+    np.testing.assert_array_equal(values, [[1, 2, np.nan], [4, np.nan, 6]])
+    np.testing.assert_array_equal(problems, [[0, 0, Problem.NOT_A_NUMBER], [0, 0, 0]])
