@@ -46,7 +46,7 @@ def read_netcdf(path: Path, layout: NetcdfLayout) -> Record:
     """Read a NetCDF file.
 
     Variables are found by the names in the layout, else by standard name; units, sign and scale come from the
-    file. Times are rounded to the millisecond, since days since 1950 in float64 are good to a microsecond.
+    file. Times are rounded to the millisecond, since days in float64 are good to a microsecond.
 
     Raises
     ------

@@ -57,6 +57,15 @@ def test_different_sensors_of_the_same_times_complete_each_other(delivered):
     assert joined.rows_quarantined == 0
 
 
+def test_a_row_that_lost_takes_no_time_from_a_third_delivery(delivered):
+    # the second loses day 1 to the first by 10 m; the third shares 25 m with the second only, so its day 1 stands
+    parts = [delivered("a", (10,), (1,)), delivered("b", (10, 25), (1, 2)), delivered("c", (25,), (1, 2))]
+    joined = join(parts)
+    np.testing.assert_array_equal(joined.chain["temperature"], [[110, 125], [210, 225]])
+    np.testing.assert_array_equal(joined.chain["deployment"], [1, 2])
+    assert [(entry.file[-1], entry.line) for entry in joined.quarantine.itertuples()] == [("b", 2), ("c", 3)]
+
+
 def test_all_readings_of_a_lost_time_are_quarantined(delivered, write, long):
     path = write("time,depth,temp\n2031-01-01,1,7\n2031-01-01,2,8\n2031-01-05,1,9\n", "long.csv")
     joined = join([delivered("a", (1, 10), (1,)), read(path, long, mooring="TB-01")])

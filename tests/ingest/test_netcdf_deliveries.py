@@ -90,6 +90,14 @@ def test_ten_minute_stamps_in_days_come_out_on_the_minute(write_netcdf):
     np.testing.assert_array_equal(chain["time"], expected)
 
 
+def test_stamps_a_microsecond_off_come_out_on_the_second(write_netcdf):
+    # from 1800, 2031-01-01 is 84371 days: 231 years of 365 days and 56 leap days (57 from 1804 to 2028, less 1900)
+    seconds = 613 * np.arange(1000)
+    path = write_netcdf(attribute("TIME", "units", "days since 1800-01-01"), days=84371 + seconds / 86400)
+    expected = np.datetime64("2031-01-01", "ns") + seconds.astype("timedelta64[s]")
+    np.testing.assert_array_equal(read_delivery(path, PLAIN)["time"], expected)
+
+
 def test_units_sign_and_scale_come_from_the_file(write_netcdf):
     def change(file):
         file["TEMP"].units, file["TEMP"].reference_scale = "kelvin", "IPTS-68"

@@ -95,6 +95,12 @@ def test_names_may_stand_in_another_header_row(write, wide):
     assert chain.attrs["rows_read"] == 1
 
 
+def test_depths_in_names_may_have_decimal_commas(write, wide):
+    layout = wide.model_copy(update={"delimiter": ";", "decimal": ","})
+    chain = read_delivery(write("date;T_2,5m\n2031-01-01;29,5\n"), layout)
+    assert (chain["depth"].item(), chain["temperature"].item()) == (2.5, 29.5)
+
+
 def test_a_byte_order_mark_and_quotes_are_read_through(write, wide):
     chain = read_delivery(write(b'\xef\xbb\xbf"date","T_1m"\n"2031-01-01","29"\n'), wide)
     assert chain["temperature"].item() == 29.0
@@ -137,6 +143,7 @@ def test_rows_that_make_no_sense_are_quarantined_whole(write, wide):
         b"# a comment\n\n"
         b"2031-01-12,,2\n"  # 14
         b"2031-01-13,3,4\n"
+        b"not a time,x,y\n"
     )
     delivery = read(path, wide)
     assert reasons(delivery) == {
@@ -149,9 +156,10 @@ def test_rows_that_make_no_sense_are_quarantined_whole(write, wide):
         9: "the row holds bytes that are not utf-8-sig",
         10: "the quotes do not pair",
         11: "the time is that of line 2",
+        16: "the time cannot be read",
         14: "column 'T_1m': '' is neither a number nor a missing token",
     }
-    assert (delivery.rows_read, delivery.rows_kept, delivery.rows_quarantined) == (12, 2, 10)
+    assert (delivery.rows_read, delivery.rows_kept, delivery.rows_quarantined) == (13, 2, 11)
     np.testing.assert_array_equal(delivery.chain["temperature"], [[1, 2], [3, 4]])
     assert set(delivery.quarantine["file"]) == {str(path)}
     texts = dict(zip(delivery.quarantine["line"], delivery.quarantine["text"], strict=True))
