@@ -97,9 +97,7 @@ class Check:
     survey: Callable[[Segment, float, QualityControlSettings], Floats] | None = None
 
 
-def outcomes(
-    present: Mask, judged: Mask | np.bool_, questionable: Mask | np.bool_, bad: Mask | np.bool_
-) -> Outcomes:
+def outcomes(present: Mask, judged: Mask | np.bool_, questionable: Mask | np.bool_, bad: Mask | np.bool_) -> Outcomes:
     """Turn what a test found into flags: 9 where missing, 2 where not judged, else 4 over 3 over 1.
 
     Parameters

@@ -64,9 +64,7 @@ def quality_control(chain: xr.Dataset, settings: QualityControlSettings | None =
     check_chain(chain)
     inputs = chain[[name for name in _INPUTS if name in chain]]
     parts = [flags for _, flags in _flagged_pieces(inputs, settings, TIME_BLOCK)]
-    return _label(
-        chain, {name: np.concatenate([part[name] for part in parts]) for name in parts[0]}, settings
-    )
+    return _label(chain, {name: np.concatenate([part[name] for part in parts]) for name in parts[0]}, settings)
 
 
 def flag_blocks(
@@ -101,9 +99,7 @@ def flag_blocks(
     return (_label(piece, flags, settings) for piece, flags in _flagged_pieces(chain, settings, block_length))
 
 
-def survey_record(
-    chain: xr.Dataset, settings: QualityControlSettings, *, block_length: int = TIME_BLOCK
-) -> Survey:
+def survey_record(chain: xr.Dataset, settings: QualityControlSettings, *, block_length: int = TIME_BLOCK) -> Survey:
     """Gather what the tests need to know of the whole record, block by block.
 
     Parameters
@@ -118,7 +114,7 @@ def survey_record(
     surveys = {check: SpreadSurvey(chain.sizes["depth"]) for check in CHECKS if check.survey is not None}
     unknown = _no_value_yet(chain)
     for block in padded_blocks(chain.sizes["time"], block_length, halo=1):
-        segment = _segment(chain.isel(time=block.padded).compute(), unknown)
+        segment = segment_of(chain.isel(time=block.padded).compute(), unknown)
         for check, spread in surveys.items():
             if check.survey is not None:
                 spread.add(check.survey(segment, interval, settings)[block.inner])
@@ -133,14 +129,10 @@ def nominal_interval(time: Times) -> float:
 def check_chain(chain: xr.Dataset) -> None:
     """Raise DataError where ``chain`` is not fit to be flagged, RequestError where it is no dataset."""
     if not isinstance(chain, xr.Dataset):
-        raise RequestError(
-            "not a chain", where="chain", expected="an xarray.Dataset", found=type(chain).__name__
-        )
+        raise RequestError("not a chain", where="chain", expected="an xarray.Dataset", found=type(chain).__name__)
     if "temperature" not in chain:
         found = ", ".join(sorted(str(name) for name in chain.data_vars)) or "no variable"
-        raise DataError(
-            "the chain has no temperature", where="chain", expected="temperature(time, depth)", found=found
-        )
+        raise DataError("the chain has no temperature", where="chain", expected="temperature(time, depth)", found=found)
     for name in _INPUTS:
         if name in chain:
             _check_dims(chain[name])
@@ -177,13 +169,9 @@ def _check_time(chain: xr.Dataset) -> None:
     time = chain["time"].values if "time" in chain.coords else np.empty(0)
     if not np.issubdtype(time.dtype, np.datetime64):
         found = str(time.dtype) if time.size else "no coordinate"
-        raise DataError(
-            "time is not a coordinate of times", where="time", expected="datetime64, UTC", found=found
-        )
+        raise DataError("time is not a coordinate of times", where="time", expected="datetime64, UTC", found=found)
     if np.isnat(time).any():
-        raise DataError(
-            "a time is missing", where="time", found=f"NaT at sample {int(np.argmax(np.isnat(time)))}"
-        )
+        raise DataError("a time is missing", where="time", found=f"NaT at sample {int(np.argmax(np.isnat(time)))}")
     backwards = np.diff(time) <= np.timedelta64(0)
     if backwards.any():
         at = int(np.argmax(backwards))
@@ -200,9 +188,7 @@ def _check_depth(chain: xr.Dataset) -> None:
     depth = chain["depth"].values if "depth" in chain.coords else np.empty(0)
     if depth.size == 0 or depth.dtype.kind not in "fiu":
         found = str(depth.dtype) if depth.size else "no coordinate"
-        raise DataError(
-            "depth is not a coordinate of depths", where="depth", expected="m, positive down", found=found
-        )
+        raise DataError("depth is not a coordinate of depths", where="depth", expected="m, positive down", found=found)
     if not (np.isfinite(depth).all() and (np.diff(depth) > 0).all()):
         raise DataError(
             "depth does not increase",
@@ -246,15 +232,13 @@ def _checked_settings(settings: QualityControlSettings | None) -> QualityControl
 def _flagged_pieces(
     chain: xr.Dataset, settings: QualityControlSettings, block_length: int
 ) -> Iterator[tuple[xr.Dataset, dict[str, NDArray[Any]]]]:
-    survey = survey_record(
-        chain[[name for name in _INPUTS if name in chain]], settings, block_length=block_length
-    )
+    survey = survey_record(chain[[name for name in _INPUTS if name in chain]], settings, block_length=block_length)
     halo = max(check.halo(settings) for check in CHECKS)
     blocks = list(padded_blocks(chain.sizes["time"], block_length, halo))
     previous = _no_value_yet(chain)
     for block, following in zip_longest(blocks, blocks[1:]):
         piece = chain.isel(time=block.padded).compute()
-        segment = _segment(piece, previous)
+        segment = segment_of(piece, previous)
         found = {check.name: check.outcome(segment, survey, settings)[block.inner] for check in CHECKS}
         yield piece.isel(time=block.inner), roll_up(found)
         if following is not None:
@@ -266,7 +250,8 @@ def _no_value_yet(chain: xr.Dataset) -> Times:
     return np.full(chain.sizes["depth"], np.datetime64("NaT", "ns"))
 
 
-def _segment(piece: xr.Dataset, previous: Times) -> Segment:
+def segment_of(piece: xr.Dataset, previous: Times) -> Segment:
+    """Return a piece of a chain as plain arrays; ``previous`` as in :class:`profiles.qc.check.Segment`."""
     nominal = piece["depth"].values.astype(np.float64)[None, :]
     depth = nominal
     if "sensor_depth" in piece:

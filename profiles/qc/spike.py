@@ -28,17 +28,13 @@ def spike_height(temperature: Floats, linked: Mask) -> Floats:
         return np.abs(temperature - (before(temperature, linked) + after(temperature, linked)) / 2)
 
 
-def spike_outcome(
-    temperature: Floats, linked: Mask, *, threshold_low: float, threshold_high: float
-) -> Outcomes:
+def spike_outcome(temperature: Floats, linked: Mask, *, threshold_low: float, threshold_high: float) -> Outcomes:
     """Flag spikes above ``threshold_low`` as questionable and above ``threshold_high`` as bad, both in °C.
 
     Arguments as in :func:`spike_height`. A missing value gives 9; a value without both neighbours gives 2.
     """
     height = spike_height(temperature, linked)
-    return outcomes(
-        ~np.isnan(temperature), ~np.isnan(height), height > threshold_low, height > threshold_high
-    )
+    return outcomes(~np.isnan(temperature), ~np.isnan(height), height > threshold_low, height > threshold_high)
 
 
 def _outcome(segment: Segment, survey: Survey, settings: QualityControlSettings) -> Outcomes:

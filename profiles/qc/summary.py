@@ -198,15 +198,11 @@ def _kind(tally: dict[str, int]) -> str:
     return KINDS[leading] if tally[leading] else NO_TEST
 
 
-def _silent_spans(
-    time: Times, present: Mask, longest_silence: float
-) -> Iterator[tuple[np.datetime64, np.datetime64]]:
+def _silent_spans(time: Times, present: Mask, longest_silence: float) -> Iterator[tuple[np.datetime64, np.datetime64]]:
     """Find the spans between values, or between them and the ends of the record, that are too long."""
     heard = present.copy()
     heard[[0, -1]] = True
     stamps = time[heard].astype("datetime64[ns]")
-    waits = silence(
-        stamps, np.ones((stamps.size, 1), dtype=np.bool_), np.full(1, np.datetime64("NaT", "ns"))
-    )[:, 0]
+    waits = silence(stamps, np.ones((stamps.size, 1), dtype=np.bool_), np.full(1, np.datetime64("NaT", "ns")))[:, 0]
     for late in np.flatnonzero(waits > longest_silence):
         yield stamps[late - 1], stamps[late]

@@ -18,9 +18,7 @@ def _chain(temperature, *, depth=None, step=86400, **coords) -> xr.Dataset:
     place = {"mooring": "TB-01", "latitude": 0.0, "longitude": 180.0}
     return xr.Dataset(
         {"temperature": (("time", "depth"), values)},
-        coords={"time": time, "depth": np.asarray(depth or DEPTHS[: values.shape[1]], np.float32)}
-        | place
-        | coords,
+        coords={"time": time, "depth": np.asarray(depth or DEPTHS[: values.shape[1]], np.float32)} | place | coords,
     )
 
 

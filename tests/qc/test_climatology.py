@@ -98,12 +98,8 @@ def test_the_published_climatology_passes_at_its_own_points(make_chain, place):
     published = published.sel(depth=published["depth"] <= 500)
     depth = [float(value) for value in published["depth"]]
     months = published.transpose("month", "depth").values
-    chain = make_chain(
-        months, depth=depth, step=2628000, latitude=latitude, longitude=longitude
-    )  # 365 d / 12
-    chain = chain.assign_coords(
-        time=chain["time"] + np.timedelta64(2628000 // 2, "s")
-    )  # the middle of each month
+    chain = make_chain(months, depth=depth, step=2628000, latitude=latitude, longitude=longitude)  # 365 d / 12
+    chain = chain.assign_coords(time=chain["time"] + np.timedelta64(2628000 // 2, "s"))  # the middle of each month
     flagged = quality_control(chain)
     assert (flagged["temperature_qc_ran"].values & BIT).all()
     assert not (flagged["temperature_qc_questionable"].values & BIT).any()
@@ -118,9 +114,7 @@ def test_the_same_temperature_is_judged_by_where_the_sensor_was(make_chain):
     np.testing.assert_array_equal(questionable != 0, [False, True, True])
 
 
-@pytest.mark.parametrize(
-    "place", [{"longitude": 10.0}, {"latitude": 60.0}, {"latitude": None}, {"longitude": None}]
-)
+@pytest.mark.parametrize("place", [{"longitude": 10.0}, {"latitude": 60.0}, {"latitude": None}, {"longitude": None}])
 def test_climatology_does_not_judge_without_an_atlas(make_chain, place):
     chain = make_chain([[28.0, 27.0]] * 4)
     known = {name: value for name, value in place.items() if value is not None}

@@ -28,9 +28,7 @@ def test_the_test_runs_where_the_sender_judged(make_chain):
     chain["temperature_delivered_qc"] = (("time", "depth"), np.array([[1], [2], [3], [4]], dtype=np.int8))
     flagged = quality_control(chain)
     np.testing.assert_array_equal(flagged["temperature_qc"].values[:, 0], [1, 1, 3, 4])
-    np.testing.assert_array_equal(
-        (flagged["temperature_qc_ran"].values[:, 0] & BIT) != 0, [True, False, True, True]
-    )
+    np.testing.assert_array_equal((flagged["temperature_qc_ran"].values[:, 0] & BIT) != 0, [True, False, True, True])
 
 
 def test_codes_of_another_scheme_are_refused(make_chain):

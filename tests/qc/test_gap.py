@@ -36,9 +36,7 @@ def test_silence_is_the_time_since_the_sensors_own_last_value():
 
 @pytest.mark.parametrize("flag", [1, 3, 4])
 def test_the_first_value_after_a_gap_takes_the_flag_set_for_it(flag):
-    outcome = gap_outcome(
-        silence(TIME, PRESENT, NEVER), PRESENT, longest_silence=5 * 3600.0, flag_after_gap=flag
-    )
+    outcome = gap_outcome(silence(TIME, PRESENT, NEVER), PRESENT, longest_silence=5 * 3600.0, flag_after_gap=flag)
     # Only column 2 was silent for more than 5 h. A sensor's first value follows no gap.
     expected = [[1, 9, 1, 9], [1, 1, 9, 9], [1, 1, 9, 9], [1, 1, flag, 9]]
     np.testing.assert_array_equal(outcome, expected)

@@ -45,9 +45,7 @@ def busy_chain(samples: int = 120, seed: int = 3) -> xr.Dataset:
         "temperature_delivered_qc": (("time", "depth"), draw.choice([1, 2, 3], (samples, 4)).astype(np.int8)),
     }
     chain = xr.Dataset(variables, coords={"time": time, "depth": DEPTHS} | place)
-    kept = np.setdiff1d(
-        np.arange(samples), [10, 11, 12, 33, 70, 71]
-    )  # absent samples, one of them in the flat run
+    kept = np.setdiff1d(np.arange(samples), [10, 11, 12, 33, 70, 71])  # absent samples, one of them in the flat run
     return describe(chain.isel(time=kept))
 
 
@@ -78,9 +76,7 @@ def test_each_kind_of_trouble_is_flagged_by_its_test():
 
 
 def test_quiet_values_are_good_and_missing_ones_missing():
-    chain = (
-        busy_chain().drop_vars("temperature_delivered_qc").isel(time=slice(30, 45))
-    )  # a stretch without trouble
+    chain = busy_chain().drop_vars("temperature_delivered_qc").isel(time=slice(30, 45))  # a stretch without trouble
     flagged = quality_control(chain)
     missing = np.isnan(chain["temperature"].values)
     assert missing.any()
@@ -91,9 +87,7 @@ def test_quiet_values_are_good_and_missing_ones_missing():
 @settings(max_examples=20, deadline=None)
 @given(length=st.integers(1, 130), repeats_bad=st.integers(4, 30), seed=st.integers(0, 5))
 def test_flags_do_not_depend_on_the_blocks(length, repeats_bad, seed):
-    strict = STRICT.model_copy(
-        update={"flat_line": STRICT.flat_line.model_copy(update={"repeats_bad": repeats_bad})}
-    )
+    strict = STRICT.model_copy(update={"flat_line": STRICT.flat_line.model_copy(update={"repeats_bad": repeats_bad})})
     chain = busy_chain(seed=seed)
     whole = quality_control(chain, strict)
     blocks = joined(flag_blocks(chain, strict, block_length=length))
@@ -138,9 +132,7 @@ def test_a_sensors_flags_do_not_depend_on_the_others():
     whole = quality_control(chain)
     for sensor in range(4):
         alone = quality_control(chain.isel(depth=[sensor]))
-        np.testing.assert_array_equal(
-            alone["temperature_qc"].values[:, 0], whole["temperature_qc"].values[:, sensor]
-        )
+        np.testing.assert_array_equal(alone["temperature_qc"].values[:, 0], whole["temperature_qc"].values[:, sensor])
 
 
 def test_all_missing_is_all_missing(make_chain):
@@ -152,9 +144,7 @@ def test_all_missing_is_all_missing(make_chain):
 def test_a_single_sample_is_judged_by_what_needs_no_neighbour(make_chain):
     flagged = quality_control(make_chain([[28.5, np.nan, 99.0]]))
     np.testing.assert_array_equal(flagged["temperature_qc"].values, [[1, 9, 4]])
-    ran = {
-        name for name, bit in TEST_BITS.items() if int(flagged["temperature_qc_ran"].values[0, 0]) >> bit & 1
-    }
+    ran = {name for name, bit in TEST_BITS.items() if int(flagged["temperature_qc_ran"].values[0, 0]) >> bit & 1}
     assert ran == {"gap", "gross_range", "climatology"}
 
 

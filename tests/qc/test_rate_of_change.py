@@ -55,9 +55,7 @@ def test_the_survey_measures_first_differences_and_not_values(make_chain):
     samples = np.arange(1001)
     chain = make_chain(15 + 0.1 * (-1.0) ** samples + 0.01 * samples)
     spread = survey_record(chain, QualityControlSettings()).spread["rate_of_change"]
-    np.testing.assert_allclose(
-        spread, 1.4826 * 0.2, rtol=0.08
-    )  # the rise moves half of them to 0.21, half to 0.19
+    np.testing.assert_allclose(spread, 1.4826 * 0.2, rtol=0.08)  # the rise moves half of them to 0.21, half to 0.19
 
 
 records = arrays(

@@ -27,9 +27,7 @@ def test_the_roll_up_takes_4_over_3_over_1_over_2(pair, flag):
 def test_the_roll_up_of_three_tests_does_not_depend_on_their_order():
     for triple in product((1, 2, 3, 4), repeat=3):
         flags = {
-            roll_up(dict(zip(names, np.array(triple, dtype=np.int8)[:, None], strict=True)))[
-                "temperature_qc"
-            ].item()
+            roll_up(dict(zip(names, np.array(triple, dtype=np.int8)[:, None], strict=True)))["temperature_qc"].item()
             for names in (("gap", "spike", "flat_line"), ("flat_line", "gap", "spike"))
         }
         # 1 outranks 2, so the greatest of what is not 2, or 2.

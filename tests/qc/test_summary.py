@@ -19,14 +19,12 @@ def with_flags(chain, flags, **masks):
     flags = np.asarray(flags, dtype=np.int8).reshape(chain["temperature"].shape)
     bits = {
         kind: sum(
-            (np.asarray(masks.get(f"{kind}_{name}", 0)) != 0) * np.uint32(1 << bit)
-            for name, bit in TEST_BITS.items()
+            (np.asarray(masks.get(f"{kind}_{name}", 0)) != 0) * np.uint32(1 << bit) for name, bit in TEST_BITS.items()
         )
         for kind in ("questionable", "bad")
     }
     fields = {"temperature_qc": flags} | {
-        f"temperature_qc_{kind}": np.zeros(flags.shape, np.uint32)
-        + np.reshape(mask, (-1, 1)).astype(np.uint32)
+        f"temperature_qc_{kind}": np.zeros(flags.shape, np.uint32) + np.reshape(mask, (-1, 1)).astype(np.uint32)
         for kind, mask in bits.items()
     }
     return chain.assign({name: (("time", "depth"), values) for name, values in fields.items()})
@@ -164,9 +162,7 @@ def test_a_late_start_and_an_early_end_are_gaps(make_chain):
 
 def test_samples_that_never_came_are_a_gap_of_all_sensors(make_chain):
     chain = make_chain(np.full((10, 2), 20.0)).isel(time=[0, 1, 2, 3, 7, 8, 9])
-    assert gap_list(chain)[["depths", "sensors", "start", "end"]].values.tolist() == [
-        ["1, 60", 2, day(3), day(7)]
-    ]
+    assert gap_list(chain)[["depths", "sensors", "start", "end"]].values.tolist() == [["1, 60", 2, day(3), day(7)]]
 
 
 def test_the_longest_interval_decides_what_is_a_gap(make_chain):
@@ -178,7 +174,5 @@ def test_the_longest_interval_decides_what_is_a_gap(make_chain):
 
 @pytest.mark.parametrize("summary", [data_return, fault_list])
 def test_a_chain_without_flags_is_refused(make_chain, summary):
-    with pytest.raises(
-        DataError, match=r"carries no flags; expected temperature_qc, .*run quality_control first"
-    ):
+    with pytest.raises(DataError, match=r"carries no flags; expected temperature_qc, .*run quality_control first"):
         summary(make_chain([20.0, 20.1]))
