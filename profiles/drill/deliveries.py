@@ -1,0 +1,228 @@
+"""Records as three invented institutes deliver them: wide text, long text, OceanSITES-like NetCDF."""
+
+from __future__ import annotations
+
+import gzip
+from collections.abc import Callable, Mapping
+from pathlib import Path
+
+import netCDF4
+import numpy as np
+import pandas as pd
+import xarray as xr
+
+from profiles.drill.array import Site
+from profiles.store import replacing
+
+UTC, LOCAL = pd.Timedelta(0), pd.Timedelta(hours=10)  # of the wide and the long delivery
+TIME_ORIGIN = np.datetime64("1950-01-01", "ns")  # OceanSITES 1.4
+FILL = np.float32(99999.0)  # OceanSITES 1.4
+
+# ----------------------------------------------------------------------------------------------------
+# Text
+
+
+def wide_lines(site: Site, chain: xr.Dataset) -> tuple[list[str], list[str]]:
+    """Return the head and the rows of a wide delivery: a row a day, a column a sensor, no empty days."""
+    head = [
+        "# Halcyon Marine Survey (invented)",
+        f"# mooring {site.id}, {site.latitude:g} N, {site.longitude:g} E",
+        "# daily mean temperature, degrees Celsius (ITS-90), days in UTC",
+        ",".join(["date", *(f"T_{depth:g}m" for depth in site.depths)]),
+    ]
+    rows = [
+        ",".join([day.strftime("%Y-%m-%d"), *(_number(value, "-9.999") for value in values)])
+        for day, values in _days_with_data(chain, UTC)
+    ]
+    return head, rows
+
+
+def long_lines(site: Site, chain: xr.Dataset) -> tuple[list[str], list[str]]:
+    """Return the head and the rows of a long delivery: a row a reading, days without data left out."""
+    rows = [
+        f"{site.id};{day.strftime('%d.%m.%Y %H:%M')};{depth:g};{_number(value, 'NA').replace('.', ',')}"
+        for day, values in _days_with_data(chain, LOCAL)
+        for depth, value in zip(site.depths, values, strict=True)
+    ]
+    return ["station;time_local;depth_m;temp_c"], rows
+
+
+def _days_with_data(chain: xr.Dataset, offset: pd.Timedelta) -> list[tuple[pd.Timestamp, np.ndarray]]:
+    values = chain["temperature"].transpose("time", "depth").values
+    days = pd.DatetimeIndex(chain["time"].values) + offset
+    return [(day, row) for day, row in zip(days, values, strict=True) if np.isfinite(row).any()]
+
+
+def _number(value: float, absent: str) -> str:
+    return absent if np.isnan(value) else f"{value:.3f}"
+
+
+def write_text_delivery(path: Path, head: list[str], rows: list[str]) -> None:
+    """Write lines as gzip without a name or a time in its head: the same lines give the same bytes."""
+    with (
+        replacing(path) as temporary,
+        temporary.open("wb") as stream,
+        gzip.GzipFile(filename="", mode="wb", fileobj=stream, mtime=0) as packed,
+    ):
+        packed.write("".join(f"{line}\n" for line in [*head, *rows]).encode())
+
+
+# ----------------------------------------------------------------------------------------------------
+# Damage
+
+
+def _truncated(row: str) -> list[str]:
+    return [row[: len(row) // 2]]
+
+
+def _letter(row: str) -> list[str]:
+    return [f"{row[:-1]}x"]
+
+
+def _duplicated(row: str) -> list[str]:
+    return [row, row]
+
+
+def _no_such_day(row: str) -> list[str]:
+    return [row, row.replace("-02-28", "-02-30").replace("28.02.", "30.02.")]
+
+
+#: How a row is damaged: what stands instead of it. The last line of that is the damaged one.
+DAMAGES: Mapping[str, Callable[[str], list[str]]] = {
+    "truncated line": _truncated,
+    "letter in a number": _letter,
+    "duplicated row": _duplicated,
+    "no such day": _no_such_day,
+}
+
+
+def damage(rows: list[str], random: np.random.Generator) -> tuple[list[str], list[tuple[int, str]]]:
+    """Damage one row of each kind.
+
+    Parameters
+    ----------
+    rows : list of str
+        A delivery without its head.
+    random : numpy.random.Generator
+        Decides which.
+
+    Returns
+    -------
+    tuple
+        The rows, and of each damaged one its index among them and the kind.
+    """
+    february = [index for index, row in enumerate(rows) if "-02-28" in row or "28.02." in row]
+    ordinary = [index for index, row in enumerate(rows) if index not in set(february) and row[-1].isdigit()]
+    chosen = {int(index): kind for index, kind in zip(random.choice(ordinary, 3, replace=False), DAMAGES, strict=False)}
+    chosen[int(random.choice(february))] = "no such day"
+    damaged: list[str] = []
+    places = []
+    for index, row in enumerate(rows):
+        kind = chosen.get(index)
+        damaged += [row] if kind is None else DAMAGES[kind](row)
+        if kind is not None:
+            places.append((len(damaged) - 1, kind))
+    return damaged, places
+
+
+# ----------------------------------------------------------------------------------------------------
+# NetCDF
+
+_FLAG_MEANINGS = (
+    "unknown good_data probably_good_data potentially_correctable_bad_data bad_data nominal_value "
+    "interpolated_value missing_value"
+)  # OceanSITES 1.4
+_NO_QUALITY_CONTROL, _MISSING = 0, 9
+
+
+def write_netcdf_delivery(path: Path, site: Site, chain: xr.Dataset) -> None:
+    """Write an OceanSITES-like file: every day there, missing values flagged 9, all others 0."""
+    values = chain["temperature"].transpose("time", "depth").values
+    with replacing(path) as temporary, netCDF4.Dataset(temporary, "w", format="NETCDF4") as file:
+        file.setncatts(_global_attributes(site, chain))
+        _define_coordinates(file, site, chain["time"].values)
+        temperature = file.createVariable(
+            "TEMP",
+            "f4",
+            ("TIME", "DEPTH"),
+            fill_value=FILL,
+            compression="zlib",
+            shuffle=True,
+            chunksizes=values.shape,
+        )
+        temperature.setncatts(
+            {
+                "standard_name": "sea_water_temperature",
+                "long_name": "sea water temperature",
+                "units": "degree_Celsius",
+                "reference_scale": "ITS-90",
+                "cell_methods": "TIME: mean DEPTH: point LATITUDE: point LONGITUDE: point",
+                "ancillary_variables": "TEMP_QC",
+                "coordinates": "TIME DEPTH LATITUDE LONGITUDE",
+            }
+        )
+        temperature[...] = np.where(np.isfinite(values), values, FILL)
+        quality = file.createVariable(
+            "TEMP_QC", "i1", ("TIME", "DEPTH"), fill_value=-128, compression="zlib", chunksizes=values.shape
+        )
+        quality.setncatts(
+            {
+                "long_name": "quality flag of sea water temperature",
+                "flag_values": np.array([0, 1, 2, 3, 4, 7, 8, 9], dtype=np.int8),
+                "flag_meanings": _FLAG_MEANINGS,
+            }
+        )
+        quality[...] = np.where(np.isfinite(values), _NO_QUALITY_CONTROL, _MISSING)
+
+
+def _define_coordinates(file: netCDF4.Dataset, site: Site, time: np.ndarray) -> None:
+    coordinates = {
+        "TIME": (
+            "f8",
+            (time - TIME_ORIGIN) / np.timedelta64(1, "D"),
+            "time",
+            "days since 1950-01-01T00:00:00Z",
+            "T",
+        ),
+        "DEPTH": ("f4", np.asarray(site.depths), "depth", "meters", "Z"),
+        "LATITUDE": ("f4", np.array([site.latitude]), "latitude", "degrees_north", "Y"),
+        "LONGITUDE": (
+            "f4",
+            np.array([(site.longitude + 180.0) % 360.0 - 180.0]),
+            "longitude",
+            "degrees_east",
+            "X",
+        ),
+    }
+    for name, (dtype, values, standard_name, units, axis) in coordinates.items():
+        file.createDimension(name, None if name == "TIME" else values.size)
+        variable = file.createVariable(name, dtype, (name,), chunksizes=(values.size,))
+        variable.setncatts({"standard_name": standard_name, "units": units, "axis": axis})
+        variable[...] = values
+    file["TIME"].calendar = "standard"
+    file["DEPTH"].setncatts({"positive": "down", "reference": "sea_level"})
+
+
+def _global_attributes(site: Site, chain: xr.Dataset) -> dict[str, object]:
+    start, end = (pd.Timestamp(chain["time"].values[place]).strftime("%Y-%m-%dT%H:%M:%SZ") for place in (0, -1))
+    return {
+        "Conventions": "CF-1.11, OceanSITES-1.4, ACDD-1.3",
+        "title": f"Daily mean temperature of mooring {site.id}",
+        "summary": "Invented data of an invented array: no such mooring has been at sea.",
+        "site_code": site.id,
+        "platform_code": site.id,
+        "data_mode": "D",
+        "data_type": "OceanSITES time-series data",
+        "format_version": "1.4",
+        "update_interval": "void",
+        "institution": "Frigate Marine Institute (invented)",
+        "geospatial_lat_min": site.latitude,
+        "geospatial_lat_max": site.latitude,
+        "geospatial_lon_min": site.longitude,
+        "geospatial_lon_max": site.longitude,
+        "geospatial_vertical_min": site.depths[0],
+        "geospatial_vertical_max": site.depths[-1],
+        "time_coverage_start": start,
+        "time_coverage_end": end,
+        "processing_level": "Raw instrument data",
+    }

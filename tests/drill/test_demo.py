@@ -1,0 +1,227 @@
+"""The demo data: deliveries read back without the package, truth, and the same bytes from the same seed."""
+
+from __future__ import annotations
+
+import csv
+import gzip
+import hashlib
+from datetime import datetime, timedelta
+from pathlib import Path
+
+import netCDF4
+import numpy as np
+import pandas as pd
+import pytest
+import xarray as xr
+
+from profiles.drill.__main__ import main
+from profiles.drill.array import SITES, Site
+from profiles.drill.demo import days, delivery_path, make_demo, plant_over_array, simulated_chains, write_deliveries
+from profiles.drill.ocean import Ocean
+from profiles.drill.truth import site_columns
+
+ROOT = Path(__file__).parents[2]
+SEED = 3
+TIME = days("2031-01-01", "2031-12-31")
+SMALL = tuple(site for site in SITES if site.id in ("TB-02", "TB-18", "TB-37", "TB-38"))
+FAULTS = {"spike": 3, "stuck value": 2, "fill value": 2, "offset": 1}
+WIDE, LONG, _, NETCDF = SMALL
+
+
+@pytest.fixture(scope="module")
+def folder(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    made = tmp_path_factory.mktemp("demo")
+    make_demo(made, seed=SEED, time=TIME, sites=SMALL, faults=FAULTS)
+    return made
+
+
+@pytest.fixture(scope="module")
+def simulated() -> dict[str, xr.Dataset]:
+    ocean = Ocean.simulate(TIME, SEED)
+    _, whole = site_columns(ocean, SMALL, SEED)
+    chains, _ = plant_over_array(list(simulated_chains(ocean, SMALL, whole, SEED)), SMALL, FAULTS, SEED)
+    return {site.id: chain for site, chain in zip(SMALL, chains, strict=True)}
+
+
+def rows_of(folder: Path, site: Site, delimiter: str, header: int) -> list[list[str]]:
+    """Rows below the head that the truth does not name as damaged, by csv."""
+    damaged = pd.read_csv(folder / "truth" / "damaged_rows.csv")
+    bad = set(damaged["line"][damaged["file"] == delivery_path(site)])
+    with gzip.open(folder / delivery_path(site), "rt", encoding="utf-8") as stream:
+        lines = list(csv.reader(stream, delimiter=delimiter))
+    return [row for number, row in enumerate(lines, start=1) if number > header and number not in bad]
+
+
+def test_same_seed_gives_the_same_bytes(tmp_path: Path) -> None:
+    first, again = tmp_path / "first", tmp_path / "again"
+    for folder in (first, again):
+        make_demo(folder, seed=SEED, time=TIME[:90], sites=SMALL, faults={"spike": 3, "stuck value": 2})
+    files = sorted(path.relative_to(first) for path in first.rglob("*") if path.is_file())
+    assert len(files) == len(SMALL) + 4
+    for name in files:
+        digests = [hashlib.sha256((folder / name).read_bytes()).hexdigest() for folder in (first, again)]
+        assert digests[0] == digests[1], name
+
+
+def test_another_seed_gives_other_deliveries(tmp_path: Path) -> None:
+    sites = SMALL[:1]
+    for seed in (1, 2):
+        ocean = Ocean.simulate(TIME[:90], seed)
+        _, whole = site_columns(ocean, sites, seed)
+        write_deliveries(tmp_path / str(seed), sites, list(simulated_chains(ocean, sites, whole, seed)), seed)
+    assert (tmp_path / "1" / delivery_path(WIDE)).read_bytes() != (tmp_path / "2" / delivery_path(WIDE)).read_bytes()
+
+
+def test_wide_delivery_holds_what_was_simulated(folder: Path, simulated: dict[str, xr.Dataset]) -> None:
+    values = simulated[WIDE.id]["temperature"]
+    rows = rows_of(folder, WIDE, ",", header=4)
+    assert len(rows) > 200
+    for day, *fields in rows:
+        expected = values.sel(time=np.datetime64(day) + np.timedelta64(12, "h")).values
+        read = np.array([np.nan if field == "-9.999" else float(field) for field in fields])
+        np.testing.assert_allclose(read, expected, rtol=0, atol=1e-9)
+
+
+def test_long_delivery_holds_what_was_simulated(folder: Path, simulated: dict[str, xr.Dataset]) -> None:
+    values = simulated[LONG.id]["temperature"]
+    rows = rows_of(folder, LONG, ";", header=1)
+    read = np.full(values.shape, np.nan)
+    for station, stamp, depth, temperature in rows:
+        utc = datetime.strptime(stamp, "%d.%m.%Y %H:%M") - timedelta(hours=10)
+        place = (utc - datetime(2031, 1, 1)).days, LONG.depths.index(float(depth))
+        assert (station, utc.hour) == ("TB-18", 12)
+        read[place] = np.nan if temperature == "NA" else float(temperature.replace(",", "."))
+    lost = np.isnan(read) & np.isfinite(values.values)
+    # Only readings whose row was damaged are lost: the truncated one and the one with a letter.
+    assert lost.sum() == 2
+    np.testing.assert_allclose(read[~lost], values.values[~lost], rtol=0, atol=1e-9)
+
+
+def test_netcdf_delivery_holds_what_was_simulated(folder: Path, simulated: dict[str, xr.Dataset]) -> None:
+    expected = simulated[NETCDF.id]["temperature"].values
+    with netCDF4.Dataset(folder / delivery_path(NETCDF)) as file:
+        read = np.ma.filled(file["TEMP"][...].astype(float), np.nan)
+        quality = file["TEMP_QC"][...].filled()
+        time = netCDF4.num2date(file["TIME"][...], file["TIME"].units)
+        assert (file["LATITUDE"][0], file["LONGITUDE"][0]) == (0.0, -94.0)
+        np.testing.assert_array_equal(file["DEPTH"][...], NETCDF.depths)
+    np.testing.assert_allclose(read, expected, rtol=0, atol=1e-5)
+    np.testing.assert_array_equal(quality == 9, np.isnan(expected))
+    assert (time[0].isoformat(), time[-1].isoformat()) == ("2031-01-01T12:00:00", "2031-12-31T12:00:00")
+
+
+def test_packed_text_names_neither_file_nor_time(folder: Path) -> None:
+    # RFC 1952, section 2.3: byte 3 holds the flags (8 is a file name), bytes 4 to 7 the time.
+    head = (folder / delivery_path(WIDE)).read_bytes()[:8]
+    assert head[:2] == b"\x1f\x8b"
+    assert head[3] == 0
+    assert head[4:8] == b"\x00\x00\x00\x00"
+
+
+def test_each_text_delivery_with_damage_has_each_kind_once(folder: Path) -> None:
+    damaged = pd.read_csv(folder / "truth" / "damaged_rows.csv")
+    for site in (WIDE, LONG):
+        kinds = list(damaged["kind"][damaged["file"] == delivery_path(site)])
+        assert sorted(kinds) == ["duplicated row", "letter in a number", "no such day", "truncated line"]
+
+
+def test_damaged_rows_are_what_the_truth_calls_them(folder: Path) -> None:
+    damaged = pd.read_csv(folder / "truth" / "damaged_rows.csv")
+    for file, line, kind in damaged.itertuples(index=False):
+        with gzip.open(folder / file, "rt", encoding="utf-8") as stream:
+            lines = stream.read().splitlines()
+        row, before = lines[line - 1], lines[line - 2]
+        separators = {",", ";"} & set(row)
+        assert {
+            "duplicated row": row == before,
+            "letter in a number": row[-1].isalpha() and row.count("x") == 1,
+            "no such day": "-02-30" in row or "30.02." in row,
+            "truncated line": bool(separators) and len(row) < 0.7 * len(before),
+        }[kind], (file, line, kind)
+
+
+def test_no_fault_looks_like_the_missing_value_of_its_delivery() -> None:
+    ocean = Ocean.simulate(TIME, SEED)
+    _, whole = site_columns(ocean, SMALL[:1], SEED)
+    chains = list(simulated_chains(ocean, SMALL[:1], whole, SEED))
+    planted, events = plant_over_array(chains, SMALL[:1], {"fill value": 12}, SEED)
+    assert {event.size for event in events} == {99.99}
+    assert not (planted[0]["temperature"] == -9.999).any()
+
+
+def test_truth_at_a_site_is_the_isotherm_between_its_sensors(folder: Path, simulated: dict[str, xr.Dataset]) -> None:
+    with xr.open_dataset(folder / "truth" / "sites.nc") as truth:
+        depth = truth["isotherm_depth"].sel(mooring=WIDE.id).values
+    values, sensors = simulated[WIDE.id]["temperature"].values, np.array(WIDE.depths)
+    errors = []
+    for day, profile in enumerate(values):
+        below = int(np.searchsorted(sensors, depth[day]))
+        pair = profile[below - 1 : below + 1]
+        if np.isfinite(pair).all() and pair[0] > 20.0 > pair[1]:
+            errors.append(np.interp(20.0, pair[::-1], sensors[below - 1 : below + 1][::-1]) - depth[day])
+    # 20 m between sensors, calibration 0.02 °C at about 0.08 °C/m, nominal depths 1 m: a metre or two.
+    assert len(errors) > 150
+    assert np.median(np.abs(errors)) < 2.0
+
+
+def test_truth_of_a_site_differs_by_its_small_scales_alone(folder: Path) -> None:
+    with xr.open_dataset(folder / "truth" / "sites.nc") as truth:
+        small = (truth["isotherm_depth"] - truth["isotherm_depth_large_scale"]).sel(mooring=[WIDE.id, LONG.id])
+        outcropped = truth["outcropped"].sel(mooring="TB-37").values == 1
+        np.testing.assert_array_equal(truth["isotherm_depth"].sel(mooring="TB-37").values == 0.0, outcropped)
+        assert small.std("time").values == pytest.approx(3.0, rel=0.15)
+    assert 0 < outcropped.sum() < 120
+
+
+def test_truth_of_the_array_agrees_with_that_of_its_sites(folder: Path) -> None:
+    with (
+        xr.open_dataset(folder / "truth" / "sites.nc") as sites,
+        xr.open_dataset(folder / "truth" / "array.nc") as array,
+    ):
+        site = sites["isotherm_depth_large_scale"].sel(mooring=LONG.id).resample(time="MS").mean().values
+        cells = array["isotherm_depth"].sel(latitude=[-0.5, 0.5], longitude=[200.5, 201.5])
+        around = cells.mean(("latitude", "longitude")).values
+    # The site is the corner of the four cells; half a degree of curvature is less than a metre or two.
+    np.testing.assert_allclose(site, around, rtol=0, atol=2.5)
+
+
+def test_truth_of_the_array_is_an_ordinary_pacific(folder: Path) -> None:
+    with xr.open_dataset(folder / "truth" / "array.nc") as array:
+        # Common practice, no source: deep in the west, shallow in the east. About 23e14 m3 (FACTS C2, from memory).
+        assert array.sizes == {"time": 12, "latitude": 10, "longitude": 160, "region": 3}
+        assert (array["thermocline_slope"] < -5.0).all()
+        assert array["warm_water_volume"].sel(region="total").mean() == pytest.approx(23e14, rel=0.15)
+        assert np.isnan(array["isotherm_depth"].sel(latitude=-4.5, longitude=142.5)).all()
+
+
+def test_flat_tilt_goes_with_the_warm_phase(folder: Path) -> None:
+    # Common practice, no source. The committed demo, 72 months: departures from the calendar month's mean.
+    time = days()
+    warmth = pd.Series(Ocean.simulate(time, 2033).oscillator.warmth, index=pd.DatetimeIndex(time)).resample("MS").mean()
+    with xr.open_dataset(ROOT / "data_demo" / "truth" / "array.nc") as array:
+        slopes = array["thermocline_slope"]
+        anomaly = (slopes.groupby("time.month") - slopes.groupby("time.month").mean()).values
+    assert np.corrcoef(anomaly, warmth)[0, 1] > 0.8
+
+
+def test_committed_demo_is_small() -> None:
+    sizes = [path.stat().st_size for path in (ROOT / "data_demo").rglob("*") if path.is_file()]
+    assert sum(sizes) < 15e6
+    assert max(sizes) < 2e6
+
+
+@pytest.mark.parametrize("site", [SITES[0], SITES[20], SITES[39]], ids=lambda site: site.id)
+def test_committed_demo_is_the_one_that_the_code_makes(site: Site) -> None:
+    committed = pd.read_csv(ROOT / "data_demo" / "truth" / "faults.csv")
+    with xr.open_dataset(ROOT / "data_demo" / "truth" / "sites.nc") as truth:
+        ours = Ocean.simulate(days(), 2033).columns([site.latitude], [site.longitude]).isotherm_depth()[0]
+        stated = truth["isotherm_depth_large_scale"].sel(mooring=site.id).values
+    np.testing.assert_allclose(stated, ours, rtol=0, atol=0.006)
+    assert len(committed) == 55
+
+
+def test_command_refuses_a_folder_that_is_a_file(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    target = tmp_path / "file"
+    target.write_text("")
+    assert main([str(target)]) == 4
+    assert "cannot be used as a folder" in capsys.readouterr().err
