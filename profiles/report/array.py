@@ -19,7 +19,7 @@ from numpy.typing import NDArray
 
 from profiles.atlas import relief
 from profiles.report import style
-from profiles.report.summary import mooring_return
+from profiles.report.summary import VOLUME_UNIT, mooring_return, tilt_window, window_label
 from profiles.section.grid import BAND, BOX_LATITUDE, REGIONS, cell_edges
 from profiles.section.tilt import TILT_WINDOW
 
@@ -28,8 +28,7 @@ Floats = NDArray[np.float64]
 ON_EQUATOR = 0.5  # degrees; a mooring no further off is one of the equator's
 LATEST = 12  # months that stand for the present in the section
 WEAK_SHARE = 0.7  # of the signal's standard deviation; where the error is larger the array says little (ours)
-VOLUME_UNIT = 1e14  # m3
-_WORDS = "10$^{14}$ m$^{3}$"
+_VOLUME_UNIT_LABEL = "10$^{14}$ m$^{3}$"
 
 _REGION_LOOKS = {
     "total": (style.BLACK, "-", "whole"),
@@ -90,9 +89,8 @@ def _draw_box(axis: Axes, window: tuple[float, float]) -> None:
     axis.add_patch(
         Rectangle((window[0], BAND[0]), window[1] - window[0], BAND[1] - BAND[0], facecolor=style.SKY, alpha=0.25)
     )
-    ends = " to ".join(style.longitude_label(end) for end in window)
-    words = f"Outlined: the volume, in halves meeting at 155°W.  Blue: the tilt, {ends}, 2.5°S-2.5°N."
-    axis.text(0.5 * (west + east), south - 0.4, words, ha="center", va="top", fontsize=9)
+    words = f"Outlined: the volume, in halves meeting at 155°W.  Blue: the tilt, {window_label(window)}, 2.5°S-2.5°N."
+    axis.text(east, south - 0.4, words, ha="right", va="top", fontsize=9)
 
 
 @style.styled
@@ -144,17 +142,11 @@ def _months(count: int) -> str:
     return f"{count} month{'s' if count > 1 else ''}"
 
 
-def tilt_window(section: xr.Dataset) -> tuple[float, float]:
-    """Return the ends of the line whose slope is the tilt, degrees east, as the section states them."""
-    west, _, east, *_ = str(section["thermocline_slope"].attrs["window"]).split()
-    return float(west), float(east)
-
-
 def _draw_window(axis: Axes, section: xr.Dataset) -> None:
     west, east = tilt_window(section)
     across = axis.get_xaxis_transform()
     axis.plot([west, east], [0.04, 0.04], "|-", color=style.INK, linewidth=1.0, markersize=9, transform=across)
-    words = f"tilt: line from {style.longitude_label(west)} to {style.longitude_label(east)}"
+    words = f"tilt: line from {window_label((west, east))}"
     axis.text(0.5 * (west + east), 0.06, words, transform=across, ha="center", va="bottom", fontsize=9)
 
 
@@ -163,7 +155,9 @@ def time_longitude(section: xr.Dataset, *, isotherm: float = 20.0) -> Figure:
     """Draw the depth of the isotherm along the equator against time."""
     depth = section["equatorial_isotherm_depth"]
     low, high = style.round_limits(depth.values)
-    figure, axis = _over_time(section, depth.values, style.DEPTH, (low, high), f"depth of the {isotherm:g} °C isotherm (m)")
+    figure, axis = _over_time(
+        section, depth.values, style.DEPTH, (low, high), f"depth of the {isotherm:g} °C isotherm (m)"
+    )
     axis.figure.axes[1].invert_yaxis()
     axis.set_title(f"Depth of the {isotherm:g} °C isotherm, 2.5°S-2.5°N", pad=14)
     return figure
@@ -174,7 +168,9 @@ def time_longitude_anomaly(section: xr.Dataset, *, isotherm: float = 20.0) -> Fi
     """Draw the anomaly of the isotherm's depth along the equator against time, hatched where the error is large."""
     anomaly = section["equatorial_isotherm_depth_anomaly"].values
     reach = max(abs(limit) for limit in style.round_limits(anomaly))
-    figure, axis = _over_time(section, anomaly, style.ANOMALY, (-reach, reach), "anomaly (m), positive: deeper than usual")
+    figure, axis = _over_time(
+        section, anomaly, style.ANOMALY, (-reach, reach), "anomaly (m), positive: deeper than usual"
+    )
     weak = section["equatorial_isotherm_depth_anomaly_error"].values > WEAK_SHARE * section.attrs["signal_sd"]
     _hatch(axis, weak, _time_edges(section), cell_edges(section["longitude"].values, "longitude"))
     axis.set_title(f"Anomaly of the {isotherm:g} °C isotherm's depth, 2.5°S-2.5°N", pad=14)
@@ -193,7 +189,6 @@ def _over_time(
         cmap=colours,
         vmin=limits[0],
         vmax=limits[1],
-        rasterized=True,
     )
     axis.set_facecolor(style.MISSING)
     style.longitude_axis(axis, *REGIONS["total"])
@@ -211,7 +206,7 @@ def _time_edges(section: xr.Dataset) -> NDArray[np.datetime64]:
 
 def _hatch(axis: Axes, where: NDArray[np.bool_], rows: NDArray[np.datetime64], columns: Floats) -> None:
     """Hatch the cells of ``where``, one rectangle for each run of cells in a row."""
-    places = axis.convert_yunits(rows)
+    places = axis.convert_yunits(rows)  # type: ignore[no-untyped-call]
     rectangles = []
     for row, cells in enumerate(where):
         edges = np.flatnonzero(np.diff(cells, prepend=False, append=False))
@@ -219,7 +214,8 @@ def _hatch(axis: Axes, where: NDArray[np.bool_], rows: NDArray[np.datetime64], c
             low, high = places[row], places[row + 1]
             rectangles.append([(west, low), (east, low), (east, high), (west, high)])
     axis.add_collection(
-        PolyCollection(rectangles, facecolors="none", edgecolors=style.LACKING, linewidths=0.0, hatch="////"), autolim=False
+        PolyCollection(rectangles, facecolors="none", edgecolors=style.LACKING, linewidths=0.0, hatch="////"),
+        autolim=False,
     )
 
 
@@ -227,14 +223,15 @@ def _hatch(axis: Axes, where: NDArray[np.bool_], rows: NDArray[np.datetime64], c
 def tilt_and_anomaly(section: xr.Dataset) -> Figure:
     """Draw the tilt of the thermocline and its anomaly with their 95 % intervals."""
     figure, (above, below) = _two_panels(right=0.98)
-    west, east = (style.longitude_label(end) for end in tilt_window(section))
     for axis, name in ((above, "thermocline_slope"), (below, "thermocline_slope_anomaly")):
         half = style.HALF_WIDTH_95 * section[f"{name}_error"].values
         _line_with_band(axis, section["time"].values, section[name].values, half, color=style.BLACK)
     below.axhline(0.0, color=style.LACKING, linewidth=0.8)
     above.set_ylabel("tilt\n(m per 1000 km)")
     below.set_ylabel("anomaly\n(m per 1000 km)")
-    above.set_title(f"Tilt of the thermocline, {west} to {east}, with 95 % intervals; more negative: steeper")
+    above.set_title(
+        f"Tilt of the thermocline, {window_label(tilt_window(section))}, with 95 % intervals; more negative: steeper"
+    )
     return figure
 
 
@@ -257,8 +254,8 @@ def volume_and_anomaly(volume: xr.Dataset) -> Figure:
             )
     below.axhline(0.0, color=style.LACKING, linewidth=0.8)
     above.set_ylim(0.0, None)
-    above.set_ylabel(f"volume\n({_WORDS})")
-    below.set_ylabel(f"anomaly\n({_WORDS})")
+    above.set_ylabel(f"volume\n({_VOLUME_UNIT_LABEL})")
+    below.set_ylabel(f"anomaly\n({_VOLUME_UNIT_LABEL})")
     above.set_title("Volume of warm water, 5°S-5°N, 120°E-80°W, with 95 % intervals")
     above.legend(loc="center left", bbox_to_anchor=(1.01, 0.5))
     return figure

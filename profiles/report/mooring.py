@@ -153,9 +153,7 @@ def mooring_figure(chain: xr.Dataset, columns: xr.Dataset, settings: ColumnSetti
     panel.set_title(_title(chain))
     statuses = _draw_status(strip, columns, bins)
     figure.legend(handles=handles, loc="upper right", bbox_to_anchor=(0.995, 0.93), labelspacing=0.9)
-    figure.legend(
-        handles=statuses, loc="lower right", bbox_to_anchor=(0.995, 0.06), title="isotherm", alignment="left"
-    )
+    figure.legend(handles=statuses, loc="lower right", bbox_to_anchor=(0.995, 0.06), title="isotherm", alignment="left")
     return figure
 
 
@@ -189,7 +187,7 @@ def _draw_temperature(panel: Axes, scale: Axes, chain: xr.Dataset, bins: Bins, s
     depth = _depths(chain, bins)
     deepest = style.depth_scale(np.asarray(depth.max()))
     edges = np.linspace(0.0, float(deepest), int(deepest / DEPTH_STEP) + 2)
-    levels = style.scaled_depth(0.5 * (edges[1:] + edges[:-1]))
+    levels = style.scaled_depth(0.5 * (edges[1:] + edges[:-1])).astype(np.float64)
     low, high = style.round_limits(means)
     mesh = panel.pcolormesh(
         bins.edges,
@@ -198,7 +196,6 @@ def _draw_temperature(panel: Axes, scale: Axes, chain: xr.Dataset, bins: Bins, s
         cmap=style.TEMPERATURE,
         vmin=low,
         vmax=high,
-        rasterized=True,
     )
     panel.set_facecolor(style.MISSING)
     if not np.isfinite(means).any():
@@ -215,7 +212,7 @@ def _depths(chain: xr.Dataset, bins: Bins) -> Floats:
     if "sensor_depth" not in chain:
         return nominal
     measured = binned_mean(chain["sensor_depth"].values.astype(np.float64), bins)
-    return np.sort(np.where(np.isfinite(measured), measured, nominal), axis=1)
+    return np.maximum.accumulate(np.where(np.isfinite(measured), measured, nominal), axis=1)
 
 
 def _draw_columns(panel: Axes, columns: xr.Dataset, bins: Bins, settings: ColumnSettings) -> list[Any]:
@@ -294,7 +291,14 @@ def _draw_sensors(panel: Axes, chain: xr.Dataset) -> Line2D:
     depth = chain["depth"].values
     side = panel.get_yaxis_transform()
     (ticks,) = panel.plot(
-        np.full(depth.size, 1.006), depth, "<", color=style.INK, markersize=4, transform=side, clip_on=False, label="sensor"
+        np.full(depth.size, 1.006),
+        depth,
+        "<",
+        color=style.INK,
+        markersize=4,
+        transform=side,
+        clip_on=False,
+        label="sensor",
     )
     return ticks
 
@@ -302,9 +306,7 @@ def _draw_sensors(panel: Axes, chain: xr.Dataset) -> Line2D:
 def _draw_status(strip: Axes, columns: xr.Dataset, bins: Bins) -> list[Patch]:
     status = commonest(columns["isotherm_status"].values.astype(np.int64), bins)
     colours = ListedColormap([style.MISSING, *(colour for _, colour in STATUSES.values())])
-    strip.pcolormesh(
-        bins.edges, [0.0, 1.0], status[None], cmap=colours, vmin=-0.5, vmax=colours.N - 0.5, rasterized=True
-    )
+    strip.pcolormesh(bins.edges, [0.0, 1.0], status[None], cmap=colours, vmin=-0.5, vmax=colours.N - 0.5)
     strip.set_yticks([])
     style.time_axis(strip)
     strip.set_xlim(bins.edges[0], bins.edges[-1])
