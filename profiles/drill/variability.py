@@ -171,8 +171,8 @@ def _modes(place: Floats, period: float, scale: float, waves: int) -> Floats:
     power = np.concatenate([[0.5], np.exp(-((number * scale / 2.0) ** 2))])
     weight = np.sqrt(power / power.sum())
     angle = place[:, None] * number
-    waves_ = np.concatenate([weight[1:] * np.cos(angle), weight[1:] * np.sin(angle)], axis=1)
-    return np.concatenate([np.full((place.size, 1), weight[0]), waves_], axis=1)
+    terms = np.concatenate([weight[1:] * np.cos(angle), weight[1:] * np.sin(angle)], axis=1)
+    return np.concatenate([np.full((place.size, 1), weight[0]), terms], axis=1)
 
 
 # ----------------------------------------------------------------------------------------------------

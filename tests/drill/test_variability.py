@@ -14,7 +14,7 @@ from profiles.drill.variability import (
     small_scale_displacement,
 )
 
-YEARS = 365
+YEAR = 365
 
 
 def over_seeds(part: type, latitude: np.ndarray, longitude: np.ndarray, days: int, seeds: int) -> np.ndarray:
@@ -53,7 +53,7 @@ def test_recharge_leads_warmth_by_a_quarter_of_the_period() -> None:
 
 def test_warm_phase_is_flat_and_cold_phase_steep() -> None:
     # Common practice, no source: a steep tilt, deep in the west and shallow in the east, goes with the cold phase.
-    run = Oscillator.draw(20 * YEARS, 3)
+    run = Oscillator.draw(20 * YEAR, 3)
     west, east = run.displacement(np.zeros(2), np.array([150.0, 262.0]))
     warm_surface = run.surface_anomaly(np.zeros(1), np.array([262.0]))[0]
     assert np.corrcoef(east - west, run.warmth)[0, 1] > 0.99
