@@ -1,0 +1,78 @@
+"""Where everything lies in a run's folder."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from pathlib import Path
+
+from profiles.pipeline.task import HIDDEN
+
+
+@dataclass(frozen=True)
+class Folder:
+    """A run's folder."""
+
+    out: Path
+
+    def delivered(self, mooring: str) -> Path:
+        """The chain as ingested, before flags."""
+        return self.out / HIDDEN / "ingest" / f"{mooring}.nc"
+
+    def part(self, table: str, mooring: str) -> Path:
+        """One mooring's rows of a table."""
+        return self.out / HIDDEN / "tables" / f"{table}.{mooring}.csv"
+
+    def means(self, mooring: str, step: str) -> Path:
+        """One mooring's daily or monthly means."""
+        return self.out / HIDDEN / "means" / f"{mooring}.{step}.nc"
+
+    def chain(self, mooring: str) -> Path:
+        """The flagged chain."""
+        return self.out / "chains" / f"{mooring}.nc"
+
+    def columns(self, mooring: str) -> Path:
+        """One mooring's columns at its own times."""
+        return self.out / "columns" / f"{mooring}.nc"
+
+    def table(self, name: str) -> Path:
+        """A table of the whole array."""
+        return self.out / "tables" / f"{name}.csv"
+
+    def figure(self, name: str) -> Path:
+        """A figure."""
+        return self.out / "figures" / f"{name}.png"
+
+    @property
+    def daily(self) -> Path:
+        """Daily means of all moorings."""
+        return self.out / "columns.nc"
+
+    @property
+    def monthly(self) -> Path:
+        """Monthly means of all moorings."""
+        return self.out / "columns_monthly.nc"
+
+    @property
+    def section(self) -> Path:
+        """The map, the equatorial section and the tilt."""
+        return self.out / "section.nc"
+
+    @property
+    def volume(self) -> Path:
+        """The warm water volume."""
+        return self.out / "volume.nc"
+
+    @property
+    def page(self) -> Path:
+        """The report."""
+        return self.out / "report.html"
+
+    @property
+    def account(self) -> Path:
+        """What was run, from what, and how long it took."""
+        return self.out / "run.json"
+
+    def folders(self) -> list[Path]:
+        """Return every folder that a run writes to."""
+        hidden = [self.out / HIDDEN / name for name in ("ingest", "tables", "means", "records")]
+        return [self.out, *hidden, *(self.out / name for name in ("chains", "columns", "tables", "figures"))]

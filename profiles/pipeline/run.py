@@ -1,0 +1,274 @@
+"""The whole job, stage by stage; what is done already is kept."""
+
+from __future__ import annotations
+
+import os
+import time
+from collections.abc import Callable, Iterable, Sequence
+from dataclasses import dataclass, field
+from datetime import UTC, datetime
+from pathlib import Path
+from typing import Any
+
+from profiles import store
+from profiles.config import Config, Mooring
+from profiles.errors import EXIT_DONE, EXIT_PARTIAL, DataError, RequestError, ThermotiltError
+from profiles.pipeline import stages
+from profiles.pipeline.paths import Folder
+from profiles.pipeline.task import (
+    STAGES,
+    Checksums,
+    Event,
+    Report,
+    Task,
+    forget,
+    keep_report,
+    kept_report,
+    recorded,
+)
+from profiles.pipeline.workers import Workers
+
+Progress = Callable[[Event], None]
+
+
+@dataclass(frozen=True)
+class Problem:
+    """A delivery or a mooring that could not be used, and why."""
+
+    mooring: str
+    stage: str
+    message: str
+
+
+@dataclass(frozen=True)
+class Outcome:
+    """What a run did: ``rows`` and ``latest`` are what the closing lines of the command say."""
+
+    out: Path
+    stages: tuple[str, ...]
+    moorings: tuple[str, ...]
+    rows: dict[str, int]
+    problems: tuple[Problem, ...]
+    seconds: dict[str, float]
+    computed: int
+    kept: int
+    latest: dict[str, Any] | None
+
+    @property
+    def exit_code(self) -> int:
+        """0, or 5 where some deliveries could not be used."""
+        return EXIT_PARTIAL if self.problems else EXIT_DONE
+
+
+def run(
+    config: Config,
+    out: Path,
+    *,
+    until: str = STAGES[-1],
+    workers: int | None = None,
+    progress: Progress | None = None,
+) -> Outcome:
+    """Run the stages up to ``until`` into a folder.
+
+    Parameters
+    ----------
+    config : Config
+        What to run.
+    out : Path
+        The folder; it is made where there is none. What an earlier run finished there is kept where its inputs and
+        settings are the same.
+    until : str
+        The last stage, one of :data:`profiles.pipeline.STAGES`.
+    workers : int, optional
+        Processes; default as many as there are processors.
+    progress : callable, optional
+        Called with an :class:`Event` when a task ends.
+
+    Raises
+    ------
+    RequestError
+        Where the stage is unknown, or another run holds the folder.
+    DataError
+        Where no delivery can be used.
+    MachineError
+        Where the folder cannot be written.
+    """
+    _check_request(until, workers)
+    folder = Folder(out)
+    for path in folder.folders():
+        store.make_folder(path)
+    with store.folder_lock(folder.folders()[1]), Workers(workers or os.cpu_count() or 1) as pool:
+        store.clear_leftovers(out)
+        outcome = _Run(config, folder, pool, progress or (lambda event: None)).through(until)
+    return outcome
+
+
+def _check_request(until: str, workers: int | None) -> None:
+    if until not in STAGES:
+        raise RequestError("no such stage", where="--until", expected=", ".join(STAGES), found=repr(until))
+    if workers is not None and workers < 1:
+        raise RequestError("no such number of workers", where="--workers", expected="1 or more", found=str(workers))
+
+
+@dataclass
+class _Run:
+    """One run under way."""
+
+    config: Config
+    folder: Folder
+    workers: Workers
+    progress: Progress
+    checksums: Checksums = field(default_factory=Checksums)
+    planned: set[tuple[str, str]] = field(default_factory=set)
+    problems: list[Problem] = field(default_factory=list)
+    seconds: dict[str, float] = field(default_factory=dict)
+    computed: int = 0
+    kept: int = 0
+
+    def through(self, until: str) -> Outcome:
+        """Run the stages up to ``until`` and write the account."""
+        started = datetime.now(tz=UTC)
+        done = STAGES[: STAGES.index(until) + 1]
+        work = {
+            "ingest": self._ingest,
+            "qc": self._qc,
+            "column": self._column,
+            "section": self._section,
+            "report": self._report,
+        }
+        self.moorings: Sequence[Mooring] = self.config.moorings
+        self.rows: dict[str, int] = {}
+        self.latest: dict[str, Any] | None = None
+        for stage in done:
+            before = time.perf_counter()
+            work[stage]()
+            self.seconds[stage] = round(time.perf_counter() - before, 3)
+        self._forget_stale(done)
+        outcome = Outcome(
+            out=self.folder.out,
+            stages=done,
+            moorings=tuple(mooring.id for mooring in self.moorings),
+            rows=self.rows,
+            problems=tuple(self.problems),
+            seconds=self.seconds,
+            computed=self.computed,
+            kept=self.kept,
+            latest=self.latest,
+        )
+        store.write_record(self.folder.account, _account(self.config, outcome, started, self.checksums))
+        return outcome
+
+    def _ingest(self) -> None:
+        reports = self._do("ingest", [stages.ingest_task(self.config, m, self.folder) for m in self.moorings])
+        for name, report in reports.items():
+            self.problems += [Problem(name, "ingest", row["problem"]) for row in report["deliveries"] if row["problem"]]
+        stages.check_usable(reports)
+        self.rows = _count_rows(reports.values())
+        self._do("ingest", [stages.gather_task("ingest", self.moorings, self.folder)])
+        self._go_on_with(name for name, report in reports.items() if report["usable"])
+
+    def _qc(self) -> None:
+        self._go_on_with(self._do("qc", [stages.qc_task(self.config, m, self.folder) for m in self.moorings]))
+        self._do("qc", [stages.gather_task("qc", self.moorings, self.folder)])
+
+    def _column(self) -> None:
+        self._go_on_with(self._do("column", [stages.column_task(self.config, m, self.folder) for m in self.moorings]))
+
+    def _section(self) -> None:
+        reports = self._do("section", [stages.section_task(self.config, self.moorings, self.folder)])
+        self.latest = reports["array"]["latest"]
+
+    def _report(self) -> None:
+        for tasks in stages.report_tasks(self.config, self.moorings, self.folder):
+            self._do("report", tasks)
+
+    def _do(self, stage: str, tasks: Sequence[Task]) -> dict[str, Report]:
+        """Do what has to be done of tasks that do not need one another; return the reports by name."""
+        keys = {task.name: task.key(self.checksums) for task in tasks}
+        reports: dict[str, Report] = {}
+        ended = 0
+        waiting: list[Task] = []
+        for task in tasks:
+            self.planned.add((stage, task.name))
+            report = kept_report(task, self.folder.out, keys[task.name], self.checksums)
+            if report is None:
+                waiting.append(task)
+                continue
+            ended += 1
+            self.kept += 1
+            reports[task.name] = report
+            self.progress(Event(stage, task.name, ended, len(tasks), _outcome(report, "kept")))
+        for task, result in self.workers.run(waiting):
+            ended += 1
+            self.computed += 1
+            if isinstance(result, ThermotiltError):
+                self._note_failure(task, result, tasks)
+                self.progress(Event(stage, task.name, ended, len(tasks), "failed"))
+                continue
+            keep_report(task, self.folder.out, keys[task.name], result, self.checksums)
+            reports[task.name] = result
+            self.progress(Event(stage, task.name, ended, len(tasks), _outcome(result, "computed")))
+        return {task.name: reports[task.name] for task in tasks if task.name in reports}
+
+    def _note_failure(self, task: Task, error: ThermotiltError, tasks: Sequence[Task]) -> None:
+        """Go on without a mooring whose data is unfit; end where it is the only task."""
+        if len(tasks) == 1:
+            raise error
+        self.problems.append(Problem(task.name, task.stage, str(error)))
+
+    def _go_on_with(self, names: Iterable[str]) -> None:
+        chosen = set(names)
+        self.moorings = [mooring for mooring in self.moorings if mooring.id in chosen]
+        if not self.moorings:
+            raise DataError("no mooring is left", found="\n".join(problem.message for problem in self.problems))
+
+    def _forget_stale(self, done: Sequence[str]) -> None:
+        """Remove what earlier runs left that this one no longer stands for.
+
+        That is what tasks wrote that are no longer planned; and, where this run ended early and anything changed, all
+        that later stages wrote.
+        """
+        for stage, name in recorded(self.folder.out):
+            later = stage not in done
+            if (later and self.computed) or (not later and (stage, name) not in self.planned):
+                forget(self.folder.out, stage, name)
+
+
+def _outcome(report: Report, usual: Any) -> Any:
+    return usual if report.get("usable", True) else "failed"
+
+
+def _count_rows(reports: Iterable[Report]) -> dict[str, int]:
+    """Add up the rows of all deliveries; a fault of ours where they do not add up."""
+    names = ("rows_read", "rows_kept", "rows_quarantined")
+    rows = [row for report in reports for row in report["deliveries"]]
+    total = {name: sum(row[name] for row in rows) for name in names}
+    if total["rows_read"] != total["rows_kept"] + total["rows_quarantined"]:
+        raise ThermotiltError(
+            "rows were lost",
+            expected=f"{total['rows_read']} rows kept or quarantined",
+            found=f"{total['rows_kept']} kept and {total['rows_quarantined']} quarantined",
+            advice="please report this",
+        )
+    return total
+
+
+def _account(config: Config, outcome: Outcome, started: datetime, checksums: Checksums) -> dict[str, Any]:
+    return {
+        "command": "thermotilt run",
+        "started": started.isoformat(timespec="seconds"),
+        "ended": datetime.now(tz=UTC).isoformat(timespec="seconds"),
+        "seconds": outcome.seconds,
+        "tasks": {"computed": outcome.computed, "kept": outcome.kept},
+        "rows": outcome.rows,
+        "moorings": list(outcome.moorings),
+        "problems": [vars(problem) for problem in outcome.problems],
+        "latest": outcome.latest,
+        "versions": stages.versions(),
+        "inputs": {
+            delivery.path.as_posix(): checksums.of(config.resolve(delivery.path))
+            for mooring in config.moorings
+            for delivery in mooring.deliveries
+        },
+        "configuration": config.model_dump(mode="json", exclude={"file"}),
+    }

@@ -1,0 +1,92 @@
+"""Tasks in this process or in spawned workers, alike."""
+
+from __future__ import annotations
+
+import multiprocessing
+import os
+import signal
+import threading
+from collections.abc import Iterator, Sequence
+from concurrent.futures import Future, ProcessPoolExecutor, as_completed
+from concurrent.futures.process import BrokenProcessPool
+from types import TracebackType
+from typing import Self
+
+from threadpoolctl import threadpool_limits
+
+from profiles.errors import MachineError, ThermotiltError
+from profiles.pipeline.task import Report, Task
+
+Result = Report | ThermotiltError
+
+
+class Workers:
+    """Run tasks, ``count`` at a time; one at a time means in this process.
+
+    Workers are spawned, since netCDF4 is not safe in threads nor after a fork. Each uses one thread.
+    """
+
+    def __init__(self, count: int) -> None:
+        self.count = count
+        self._pool: ProcessPoolExecutor | None = None
+
+    def __enter__(self) -> Self:
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        if self._pool is not None:
+            self._pool.shutdown(wait=kind is None, cancel_futures=True)
+            if kind is not None:
+                self._stop(self._pool)
+
+    @staticmethod
+    def _stop(pool: ProcessPoolExecutor) -> None:
+        for process in list((pool._processes or {}).values()):
+            process.terminate()
+
+    def run(self, tasks: Sequence[Task]) -> Iterator[tuple[Task, Result]]:
+        """Yield each task with its report, or the error that ended it, as they end."""
+        if self.count == 1 or len(tasks) < 2:
+            for task in tasks:
+                yield task, attempt(task)
+            return
+        if self._pool is None:
+            context = multiprocessing.get_context("spawn")
+            self._pool = ProcessPoolExecutor(self.count, mp_context=context, initializer=_settle)
+        futures: dict[Future[Result], Task] = {self._pool.submit(attempt, task): task for task in tasks}
+        try:
+            for future in as_completed(futures):
+                yield futures[future], future.result()
+        except BrokenProcessPool as error:
+            raise MachineError(
+                "a worker was killed",
+                expected="enough memory for every worker",
+                advice="run again with fewer workers (--workers 1): what was finished is kept",
+            ) from error
+
+
+def attempt(task: Task) -> Result:
+    """Do a task; an error of the data is a result, one of the machine or of ours is raised."""
+    with threadpool_limits(1):
+        try:
+            return task.work(*task.arguments)
+        except MachineError:
+            raise
+        except ThermotiltError as error:
+            return error
+
+
+def _settle() -> None:
+    """Prepare a worker: one thread, interrupts left to the parent, an end when the parent ends."""
+    os.environ["NUMBA_NUM_THREADS"] = "1"
+    signal.signal(signal.SIGINT, signal.SIG_IGN)
+    threading.Thread(target=_end_with_parent, daemon=True).start()
+
+
+def _end_with_parent() -> None:
+    parent = multiprocessing.parent_process()
+    if parent is not None:
+        parent.join()
+        os._exit(1)  # a killed parent reads no results, and a second run may already be writing
