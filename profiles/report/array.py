@@ -181,7 +181,7 @@ def _over_time(
     section: xr.Dataset, values: Floats, colours: Any, limits: tuple[float, float], label: str
 ) -> tuple[Figure, Axes]:
     figure = Figure(figsize=(style.HALF_WIDTH, 6.4))
-    axis = figure.add_axes((0.12, 0.09, 0.68, 0.82))
+    axis = figure.add_axes((0.15, 0.09, 0.655, 0.82))
     mesh = axis.pcolormesh(
         cell_edges(section["longitude"].values, "longitude"),
         _time_edges(section),
@@ -198,9 +198,9 @@ def _over_time(
     return figure, axis
 
 
-def _time_edges(section: xr.Dataset) -> NDArray[np.datetime64]:
+def _time_edges(dataset: xr.Dataset) -> NDArray[np.datetime64]:
     """Return the first of each month, and of the one after the last."""
-    months = section["time"].values.astype("datetime64[M]")
+    months = dataset["time"].values.astype("datetime64[M]")
     return np.append(months, months[-1] + 1).astype("datetime64[ns]")
 
 
@@ -222,7 +222,7 @@ def _hatch(axis: Axes, where: NDArray[np.bool_], rows: NDArray[np.datetime64], c
 @style.styled
 def tilt_and_anomaly(section: xr.Dataset) -> Figure:
     """Draw the tilt of the thermocline and its anomaly with their 95 % intervals."""
-    figure, (above, below) = _two_panels(right=0.98)
+    figure, (above, below) = _two_panels(section, right=0.98)
     for axis, name in ((above, "thermocline_slope"), (below, "thermocline_slope_anomaly")):
         half = style.HALF_WIDTH_95 * section[f"{name}_error"].values
         _line_with_band(axis, section["time"].values, section[name].values, half, color=style.BLACK)
@@ -238,7 +238,7 @@ def tilt_and_anomaly(section: xr.Dataset) -> Figure:
 @style.styled
 def volume_and_anomaly(volume: xr.Dataset) -> Figure:
     """Draw the volume of warm water and its anomaly, whole, west and east, with their 95 % intervals."""
-    figure, (above, below) = _two_panels(right=0.84)
+    figure, (above, below) = _two_panels(volume, right=0.84)
     for region, (colour, dashes, name) in _REGION_LOOKS.items():
         part = volume.sel(region=region)
         for axis, quantity in ((above, "warm_water_volume"), (below, "warm_water_volume_anomaly")):
@@ -294,12 +294,13 @@ def _panel(size: tuple[float, float]) -> tuple[Figure, Axes]:
     return figure, figure.add_axes((0.065, 0.13, 0.645, 0.77))
 
 
-def _two_panels(*, right: float) -> tuple[Figure, tuple[Axes, Axes]]:
+def _two_panels(dataset: xr.Dataset, *, right: float) -> tuple[Figure, tuple[Axes, Axes]]:
     figure = Figure(figsize=(style.WIDTH, 5.0))
-    above = figure.add_axes((0.075, 0.52, right - 0.075, 0.40))
-    below = figure.add_axes((0.075, 0.11, right - 0.075, 0.36), sharex=above)
+    above = figure.add_axes((0.085, 0.52, right - 0.085, 0.40))
+    below = figure.add_axes((0.085, 0.11, right - 0.085, 0.36), sharex=above)
     above.tick_params(labelbottom=False)
     style.time_axis(below)
+    below.set_xlim(*_time_edges(dataset)[[0, -1]])
     return figure, (above, below)
 
 

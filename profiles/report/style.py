@@ -58,6 +58,10 @@ UPPER_OCEAN = 300.0  # m; below, the depth axis is drawn closer
 _CLOSER = 0.3  # length of a metre below, of one above
 _DEPTH_TICKS = np.array([0, 50, 100, 150, 200, 250, 300, 400, 500, 750, 1000, 1500, 2000], dtype=np.float64)
 
+# By the step of the ticks (years, months, days, hours, minutes, seconds), and of a tick that begins the larger unit.
+_DATES = ["%Y", "%b %Y", "%d %b", "%H:%M", "%H:%M", "%S.%f"]
+_FIRST_DATES = ["%Y", "%Y", "%b %Y", "%d %b", "%H:%M", "%H:%M"]
+
 _SETTINGS: dict[str, Any] = {
     "font.family": "DejaVu Sans",  # comes with matplotlib
     "font.size": 10.0,
@@ -191,7 +195,9 @@ def time_axis(axis: Axes, *, vertical: bool = False) -> None:
     dates = axis.yaxis if vertical else axis.xaxis
     locator = AutoDateLocator(minticks=4, maxticks=9)  # type: ignore[no-untyped-call]
     dates.set_major_locator(locator)
-    labels = ConciseDateFormatter(locator, show_offset=False)  # type: ignore[no-untyped-call]
+    labels = ConciseDateFormatter(  # type: ignore[no-untyped-call]
+        locator, formats=_DATES, zero_formats=_FIRST_DATES, show_offset=False
+    )
     dates.set_major_formatter(labels)
     dates.set_label_text("time (UTC)")
 
