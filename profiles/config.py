@@ -180,8 +180,12 @@ class ClimatologyPriorSettings(Settings):
     )
     annual_sd: Positive = Field(5.0, description="m; each annual coefficient about the atlas (ours)")
     semiannual_sd: Positive = Field(3.0, description="m; each semi-annual coefficient about the atlas (ours)")
-    length_longitude: Positive = Field(15.0, description="degrees; scale of the correction to the atlas (ours)")
-    length_latitude: Positive = Field(4.0, description="degrees; scale of the correction to the atlas (ours)")
+    length_longitude: Positive = Field(
+        10.0, description="degrees; scale of the correction to the atlas (from the difference of two published atlases)"
+    )
+    length_latitude: Positive = Field(
+        7.0, description="degrees; scale of the correction to the atlas (from the difference of two published atlases)"
+    )
     decorrelation_months: Positive = Field(
         4.0, description="months; e-folding time of interannual anomalies (Meyers et al. 1991: 2, without an event)"
     )

@@ -107,7 +107,7 @@ def isotherm_error_kernel(
 
     With z = z1 + f (z2 - z1), f = (T1 - T) / (T1 - T2): dz/dT1 = (1 - f) dz/dT, dz/dT2 = f dz/dT, dz/dz1 = 1 - f and
     dz/dz2 = f. The error of the straight line between the sensors is half f (1 - f) (z2 - z1)^2 |T''| / |T'|, the
-    remainder of linear interpolation, T'' from the gradients of the neighbouring brackets.
+    remainder of linear interpolation, T'' the larger of the bends at the two sensors.
     """
     profiles = temperature.shape[0]
     shared, alike = depth.shape[0] == 1, accuracy.shape[0] == 1
@@ -134,23 +134,26 @@ def isotherm_error_kernel(
 
 @njit(cache=True)
 def _curvature(values: Any, depth: Any, upper: int, lower: int) -> float:
-    """Return |T''| about a bracket from the gradients above and below it, one-sided at the ends of the chain."""
+    """Return the larger |T''| of the two bends at a bracket's ends, 0 where there is no other sensor."""
     above, below = upper - 1, lower + 1
     while above >= 0 and not (np.isfinite(values[above]) and np.isfinite(depth[above])):
         above -= 1
     while below < values.size and not (np.isfinite(values[below]) and np.isfinite(depth[below])):
         below += 1
-    if above < 0:
-        above = upper
-    if below >= values.size:
-        below = lower
-    if above == upper and below == lower:
-        return 0.0
-    first, last = (lower if above == upper else upper), (upper if below == lower else lower)
-    gradient_above = (values[above] - values[first]) / (depth[above] - depth[first])
-    gradient_below = (values[last] - values[below]) / (depth[last] - depth[below])
-    apart = 0.5 * (depth[last] + depth[below] - depth[above] - depth[first])
-    return abs((gradient_below - gradient_above) / apart)
+    largest = 0.0
+    if above >= 0:
+        largest = abs(_second_difference(values, depth, above, upper, lower))
+    if below < values.size:
+        largest = max(largest, abs(_second_difference(values, depth, upper, lower, below)))
+    return largest
+
+
+@njit(cache=True)
+def _second_difference(values: Any, depth: Any, first: int, middle: int, last: int) -> float:
+    """Return T'' of the parabola through three sensors."""
+    gradient_above = (values[middle] - values[first]) / (depth[middle] - depth[first])
+    gradient_below = (values[last] - values[middle]) / (depth[last] - depth[middle])
+    return 2.0 * (gradient_below - gradient_above) / (depth[last] - depth[first])
 
 
 def isotherm_depth(

@@ -99,7 +99,7 @@ def run(
         store.make_folder(path)
     with store.folder_lock(folder.folders()[1]), Workers(workers or os.cpu_count() or 1) as pool:
         store.clear_leftovers(out)
-        outcome = _Run(config, folder, pool, progress or (lambda event: None)).through(until)
+        outcome = _Run(config, folder, pool, progress or _unseen).through(until)
     return outcome
 
 
@@ -164,12 +164,12 @@ class _Run:
             self.problems += [Problem(name, "ingest", row["problem"]) for row in report["deliveries"] if row["problem"]]
         stages.check_usable(reports)
         self.rows = _count_rows(reports.values())
-        self._do("ingest", [stages.gather_task("ingest", self.moorings, self.folder)])
+        self._do("ingest", [stages.gather_task("ingest", self.moorings, self.folder)], shown=False)
         self._go_on_with(name for name, report in reports.items() if report["usable"])
 
     def _qc(self) -> None:
         self._go_on_with(self._do("qc", [stages.qc_task(self.config, m, self.folder) for m in self.moorings]))
-        self._do("qc", [stages.gather_task("qc", self.moorings, self.folder)])
+        self._do("qc", [stages.gather_task("qc", self.moorings, self.folder)], shown=False)
 
     def _column(self) -> None:
         self._go_on_with(self._do("column", [stages.column_task(self.config, m, self.folder) for m in self.moorings]))
@@ -179,11 +179,13 @@ class _Run:
         self.latest = reports["array"]["latest"]
 
     def _report(self) -> None:
-        for tasks in stages.report_tasks(self.config, self.moorings, self.folder):
-            self._do("report", tasks)
+        figures, page = stages.report_tasks(self.config, self.moorings, self.folder)
+        self._do("report", figures)
+        self._do("report", page, shown=False)
 
-    def _do(self, stage: str, tasks: Sequence[Task]) -> dict[str, Report]:
+    def _do(self, stage: str, tasks: Sequence[Task], *, shown: bool = True) -> dict[str, Report]:
         """Do what has to be done of tasks that do not need one another; return the reports by name."""
+        progress: Progress = self.progress if shown else _unseen
         keys = {task.name: task.key(self.checksums) for task in tasks}
         reports: dict[str, Report] = {}
         ended = 0
@@ -197,17 +199,17 @@ class _Run:
             ended += 1
             self.kept += 1
             reports[task.name] = report
-            self.progress(Event(stage, task.name, ended, len(tasks), _outcome(report, "kept")))
+            progress(Event(stage, task.name, ended, len(tasks), _outcome(report, "kept")))
         for task, result in self.workers.run(waiting):
             ended += 1
             self.computed += 1
             if isinstance(result, ThermotiltError):
                 self._note_failure(task, result, tasks)
-                self.progress(Event(stage, task.name, ended, len(tasks), "failed"))
+                progress(Event(stage, task.name, ended, len(tasks), "failed"))
                 continue
             keep_report(task, self.folder.out, keys[task.name], result, self.checksums)
             reports[task.name] = result
-            self.progress(Event(stage, task.name, ended, len(tasks), _outcome(result, "computed")))
+            progress(Event(stage, task.name, ended, len(tasks), _outcome(result, "computed")))
         return {task.name: reports[task.name] for task in tasks if task.name in reports}
 
     def _note_failure(self, task: Task, error: ThermotiltError, tasks: Sequence[Task]) -> None:
@@ -232,6 +234,10 @@ class _Run:
             later = stage not in done
             if (later and self.computed) or (not later and (stage, name) not in self.planned):
                 forget(self.folder.out, stage, name)
+
+
+def _unseen(event: Event) -> None:
+    """Show nothing."""
 
 
 def _outcome(report: Report, usual: Any) -> Any:

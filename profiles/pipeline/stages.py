@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
@@ -286,14 +286,14 @@ def _latest(section: xr.Dataset, volume: xr.Dataset) -> dict[str, Any]:
 # Report
 
 
-def report_tasks(config: Config, moorings: Sequence[Mooring], folder: Folder) -> Iterator[list[Task]]:
-    """Yield the figures, which do not need one another, then the page, which needs them all."""
+def report_tasks(config: Config, moorings: Sequence[Mooring], folder: Folder) -> tuple[list[Task], list[Task]]:
+    """Return the figures, which do not need one another, and the page, which needs them all."""
     from profiles.report.captions import CAPTIONS
 
     array_figures = [folder.figure(name) for name in CAPTIONS]
     mooring_figures = [folder.figure(f"mooring_{mooring.id}") for mooring in moorings]
     shown = {"column": config.column.model_dump(mode="json")}
-    yield [
+    figures = [
         Task(
             stage="report",
             name="array",
@@ -317,7 +317,7 @@ def report_tasks(config: Config, moorings: Sequence[Mooring], folder: Folder) ->
         ),
     ]
     tables = [folder.table(name) for names in TABLES.values() for name in names]
-    yield [
+    page = [
         Task(
             stage="report",
             name="page",
@@ -328,6 +328,7 @@ def report_tasks(config: Config, moorings: Sequence[Mooring], folder: Folder) ->
             settings=config.model_dump(mode="json", exclude={"file"}),
         )
     ]
+    return figures, page
 
 
 def draw_mooring(config: Config, mooring: Mooring, folder: Folder) -> Report:
