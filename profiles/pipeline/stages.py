@@ -253,8 +253,8 @@ def build_array(config: Config, moorings: Sequence[Mooring], folder: Folder) -> 
 
 _SECTION_TEXT = (
     "isotherm depth along the equator and its tilt",
-    "Objective map of monthly isotherm-depth anomalies in 5S-5N, 120E-80W, the equatorial section and the thermocline's "
-    "slope, with standard errors from the covariance of the map and of the climatology.",
+    "Objective map of monthly isotherm-depth anomalies in 5S-5N, 120E-80W, the equatorial section and the "
+    "thermocline's slope, with standard errors from the covariance of the map and of the climatology.",
 )
 _VOLUME_TEXT = (
     "warm water volume",

@@ -140,7 +140,7 @@ def _summaries(
     residual = np.where(present, records.values[:, known] - design @ atlas_sites[known].T, 0.0)
     departures = np.einsum("sth,ts->sh", projected, residual).ravel()
     blocks = np.einsum("sth,tk->shk", projected, design)
-    return np.asarray(departures), _block_diagonal(blocks), _record_error(records, known, projected, settings)
+    return np.asarray(departures, dtype=np.float64), _block_diagonal(blocks), _record_error(records, known, projected, settings)
 
 
 def _record_error(records: Records, known: NDArray[np.intp], projected: Array, settings: SectionSettings) -> Array:

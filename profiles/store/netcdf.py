@@ -91,7 +91,7 @@ def _define(file: netCDF4.Dataset, block: xr.Dataset) -> None:
 def _define_variable(file: netCDF4.Dataset, data: xr.DataArray, scalars: list[str]) -> None:
     name = str(data.name)
     dtype = _storage_type(data)
-    # Only a block that fills its chunk can be followed by another; a shorter one is the whole record.
+    # The first block is as long as any, so a record shorter than a block is one chunk of its own length.
     chunks = [min(size, TIME_BLOCK) if dim == "time" else size for dim, size in data.sizes.items()]
     compress = dtype is not str and bool(data.dims)
     variable = file.createVariable(
