@@ -120,7 +120,7 @@ def estimate_climatology(
 
 def _parameters(spatial: Array, prior_sd: Array) -> Array:
     """Return the prior covariance of (site, harmonic) parameters, harmonics independent of one another."""
-    return np.kron(spatial, np.diag(prior_sd**2))
+    return np.kron(spatial, np.diag(prior_sd**2)).astype(np.float64)
 
 
 def _summaries(
