@@ -137,7 +137,7 @@ LAYOUTS: Mapping[str, Layout] = {
         ),
         most=100,
         empty="There was no delivery.",
-        weight=lambda deliveries: deliveries["problem"].fillna("").ne(""),
+        weight=lambda deliveries: deliveries["problem"].notna() & deliveries["problem"].ne(""),
         order="Those with a problem, then others,",
     ),
     "quarantine": Layout(

@@ -11,6 +11,7 @@ import pytest
 from profiles.errors import MachineError
 from profiles.report import write_array_figures, write_mooring_figure, write_page
 from profiles.report.tables import LAYOUTS, LONGEST_TEXT, text, views
+from profiles.store import read_table, write_table
 from profiles.vocabulary import CAUTION
 
 ATTACK = "<script>alert('x')</script>"
@@ -191,12 +192,11 @@ def test_what_is_cut_is_the_least(small_array):
     assert views(tables)["deliveries"].rows[0][-1] == "empty file"
 
 
-def test_tables_read_back_from_csv_are_shown_alike(small_array):
-    tables = dict(small_array.tables)
-    read = {name: tables[name].copy() for name in tables}
-    for name in ("faults", "gaps"):
-        for column in ("start", "end"):
-            read[name][column] = tables[name][column].dt.strftime("%Y-%m-%dT%H:%M:%SZ")
+def test_tables_read_back_from_csv_are_shown_alike(small_array, tmp_path):
+    tables = small_array.tables
+    for name, table in tables.items():
+        write_table(tmp_path / f"{name}.csv", table)
+    read = {name: read_table(tmp_path / f"{name}.csv") for name in tables}
     assert {name: view.rows for name, view in views(read).items()} == {
         name: view.rows for name, view in views(tables).items()
     }
