@@ -9,6 +9,7 @@ from pathlib import Path
 import numpy as np
 import pandas as pd
 import xarray as xr
+from numpy.typing import NDArray
 
 from profiles.errors import DataError, RequestError
 from profiles.ingest.layout import Layout, LongLayout, NetcdfLayout, WideLayout, load_layout
@@ -16,7 +17,7 @@ from profiles.ingest.lines import texts_of
 from profiles.ingest.long import read_long
 from profiles.ingest.netcdf import read_netcdf, step_text
 from profiles.ingest.record import Record, Rejected, reordered, verify_count
-from profiles.ingest.units import to_its90
+from profiles.ingest.units import depth_of_pressure, to_its90
 from profiles.ingest.wide import read_wide
 from profiles.vocabulary import describe
 
@@ -228,6 +229,7 @@ def _stem(path: Path) -> str:
 def _chain(record: Record, mooring: str, position: Mapping[str, float | None], sensor_accuracy: float) -> xr.Dataset:
     grid = ("time", "depth")
     known = {role: value for role, value in position.items() if value is not None}
+    depth = _depth(record, position["latitude"])
     data = {
         "temperature_raw": (grid, record.temperature),
         "temperature": (grid, to_its90(record.temperature, record.scale).astype(np.float32)),
@@ -236,8 +238,22 @@ def _chain(record: Record, mooring: str, position: Mapping[str, float | None], s
     }
     if record.delivered_qc is not None:
         data["temperature_delivered_qc"] = (grid, record.delivered_qc)
-    coords = {"time": record.time, "depth": record.depth.astype(np.float32), "mooring": mooring, **known}
+    coords = {"time": record.time, "depth": depth.astype(np.float32), "mooring": mooring, **known}
     return describe(xr.Dataset(data, coords=coords), temperature_raw={"reference_scale": record.scale})
+
+
+def _depth(record: Record, latitude: float | None) -> NDArray[np.float64]:
+    """Return the sensors' depths, m, from their pressures where that is what was delivered."""
+    if not record.depth_is_pressure:
+        return record.depth
+    if latitude is None:
+        raise DataError(
+            "a depth cannot be told from a pressure without the latitude",
+            where="latitude",
+            expected="degrees north",
+            advice="state the mooring's latitude",
+        )
+    return depth_of_pressure(record.depth, latitude)
 
 
 def _quarantine(path: Path, layout: Layout, rejected: Sequence[Rejected]) -> pd.DataFrame:

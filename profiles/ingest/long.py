@@ -13,7 +13,7 @@ from profiles.ingest.layout import GREATEST_DEPTH, LongLayout
 from profiles.ingest.lines import open_table
 from profiles.ingest.record import Record, Tally, repeats
 from profiles.ingest.rows import Rows, gathered, understood
-from profiles.ingest.units import to_celsius, to_metres_down
+from profiles.ingest.units import is_pressure, to_celsius, to_downward
 
 DEPTH, TEMPERATURE = 0, 1  # columns of the values of a row
 
@@ -45,6 +45,7 @@ def read_long(path: Path, layout: LongLayout) -> Record:
         depth=depth.astype(np.float64),
         temperature=temperature,
         scale=layout.temperature.scale,
+        depth_is_pressure=is_pressure(layout.depth.units),
         rows=pd.DataFrame({"time": rows.time, "line": rows.line}),
         rejected=rejected,
         rows_read=tally.rows_read,
@@ -53,13 +54,13 @@ def read_long(path: Path, layout: LongLayout) -> Record:
 
 
 def _in_our_units(rows: Rows, layout: LongLayout) -> Rows:
-    depth = to_metres_down(rows.values[:, DEPTH], layout.depth.units, layout.depth.positive)
+    depth = to_downward(rows.values[:, DEPTH], layout.depth.units, layout.depth.positive)
     temperature = to_celsius(rows.values[:, TEMPERATURE], layout.temperature.units)
     return replace(rows, values=np.column_stack([depth, temperature]).astype(np.float32))
 
 
 def _declared(layout: LongLayout) -> NDArray[np.float32]:
-    depths = to_metres_down(layout.depth.values, layout.depth.units, layout.depth.positive)
+    depths = to_downward(layout.depth.values, layout.depth.units, layout.depth.positive)
     return depths.astype(np.float32)
 
 

@@ -21,10 +21,11 @@ from profiles.ingest.lines import GZIP_MAGIC, check_file
 from profiles.ingest.record import Record, Tally, checked_depths, repeats
 from profiles.ingest.units import (
     METRE,
+    is_pressure,
     require_depth_units,
     require_temperature_units,
     to_celsius,
-    to_metres_down,
+    to_downward,
 )
 from profiles.ingest.wording import listed, nearest
 from profiles.vocabulary import OCEANSITES_TO_FLAG, Flag
@@ -62,12 +63,14 @@ def read_netcdf(path: Path, layout: NetcdfLayout) -> Record:
         stamps = _stamps(source, time)
         metres = _depths(source, depth)
         scale = _scale(source, temperature)
+        depth_is_pressure = is_pressure(str(depth.attrs.get("units", METRE)))
         latitude, longitude = source.position("latitude"), source.position("longitude")
         mooring = dataset.attrs.get("platform_code") or dataset.attrs.get("site_code")
     return _record(
         source,
         (stamps, metres, values, flags),
         scale=scale,
+        depth_is_pressure=depth_is_pressure,
         mooring=str(mooring) if mooring else None,
         latitude=latitude,
         longitude=longitude,
@@ -253,7 +256,7 @@ def _depths(source: Source, depth: xr.DataArray) -> NDArray[np.float64]:
             where=f"{source.where}, {depth.name}:units",
             advice="correct the attribute in the file",
         ) from None
-    metres = np.atleast_1d(to_metres_down(depth.values, units, positive))
+    metres = np.atleast_1d(to_downward(depth.values, units, positive))
     checked_depths(metres, [f"{depth.name}[{place}]" for place in range(metres.size)], source.where)
     return metres
 

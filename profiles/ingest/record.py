@@ -34,7 +34,7 @@ class Record:
     time : ndarray of datetime64[ns], (time,)
         UTC, strictly increasing.
     depth : ndarray of float64, (depth,)
-        m, positive down, ascending.
+        m, or dbar of sea pressure where ``depth_is_pressure``; positive down, ascending.
     temperature : ndarray of float32, (time, depth)
         °C on the scale it was delivered on, NaN missing.
     delivered_qc : ndarray of int8, (time, depth), or None
@@ -58,6 +58,7 @@ class Record:
     rejected: tuple[Rejected, ...]
     rows_read: int
     delivered_qc: NDArray[np.int8] | None = None
+    depth_is_pressure: bool = False
     mooring: str | None = None
     latitude: float | None = None
     longitude: float | None = None

@@ -14,7 +14,7 @@ from profiles.ingest.layout import DEPTH_MARK, WideLayout
 from profiles.ingest.lines import Table, open_table
 from profiles.ingest.record import Record, Tally, checked_depths, repeats
 from profiles.ingest.rows import gathered, understood
-from profiles.ingest.units import to_celsius, to_metres_down
+from profiles.ingest.units import is_pressure, to_celsius, to_downward
 from profiles.ingest.wording import listed
 
 _NUMBER = r"([+-]?[0-9]+(?:[.,][0-9]+)?)"
@@ -49,6 +49,7 @@ def read_wide(path: Path, layout: WideLayout) -> Record:
         depth=depth[by_depth],
         temperature=np.ascontiguousarray(kept.values[np.ix_(by_time, by_depth)]),
         scale=layout.temperature.scale,
+        depth_is_pressure=is_pressure(layout.depth.units),
         rows=pd.DataFrame({"time": kept.time, "line": kept.line}),
         rejected=rejected,
         rows_read=tally.rows_read,
@@ -58,7 +59,7 @@ def read_wide(path: Path, layout: WideLayout) -> Record:
 def _sensors(table: Table, layout: WideLayout) -> dict[str, float]:
     """Return the depth of each column of temperature, m, positive down."""
     stated = layout.depth.columns or _matched(table, layout.depth.pattern or DEPTH_MARK)
-    depths = to_metres_down(list(stated.values()), layout.depth.units, layout.depth.positive)
+    depths = to_downward(list(stated.values()), layout.depth.units, layout.depth.positive)
     labels = [f"column {name!r}" for name in stated]
     checked_depths(depths, labels, table.where)
     return dict(zip(stated, depths.tolist(), strict=True))

@@ -164,7 +164,7 @@ def attribute(variable, name, value):
     ("change", "message"),
     [
         (attribute("TEMP", "units", "bogus"), r"TEMP:units: unknown units: 'bogus'"),
-        (attribute("DEPTH", "units", "dbar"), r"DEPTH:units: unknown units: 'dbar'"),
+        (attribute("DEPTH", "units", "kelvin"), r"DEPTH:units: unknown units: 'kelvin'"),
         (attribute("TEMP", "standard_name", "other"), r"no variable is the temperature; expected.*'TEMP'"),
         (attribute("LATITUDE", "standard_name", "sea_water_temperature"), "several variables could be the temp"),
         (attribute("TIME", "standard_name", "other"), "TEMP has no time coordinate"),
