@@ -7,6 +7,8 @@ and source stand here, once; ``config/defaults.toml`` is this page as a file.
 from __future__ import annotations
 
 import difflib
+import json
+import textwrap
 import tomllib
 from collections import Counter
 from collections.abc import Sequence
@@ -17,12 +19,14 @@ from pydantic import BaseModel, ConfigDict, Field, ValidationError, model_valida
 
 from profiles.errors import ConfigError, RequestError
 
-Longitude = Annotated[float, Field(ge=0.0, lt=360.0, description="degrees east, 0-360")]
-Latitude = Annotated[float, Field(ge=-90.0, le=90.0, description="degrees north")]
-Positive = Annotated[float, Field(gt=0.0)]
-NotNegative = Annotated[float, Field(ge=0.0)]
-Share = Annotated[float, Field(ge=0.0, le=1.0)]
-Count = Annotated[int, Field(ge=1)]
+# Strict: the text "20" and the truth value true are no numbers.
+Number = Annotated[float, Field(strict=True)]
+Longitude = Annotated[Number, Field(ge=0.0, lt=360.0, description="degrees east, 0-360")]
+Latitude = Annotated[Number, Field(ge=-90.0, le=90.0, description="degrees north")]
+Positive = Annotated[Number, Field(gt=0.0)]
+NotNegative = Annotated[Number, Field(ge=0.0)]
+Share = Annotated[Number, Field(ge=0.0, le=1.0)]
+Count = Annotated[int, Field(strict=True, ge=1)]
 
 
 class Settings(BaseModel):
@@ -49,10 +53,10 @@ class GapSettings(Settings):
 class GrossRangeSettings(Settings):
     """Gross range: QARTOD test 4."""
 
-    sensor_min: float = Field(-2.5, description="°C; below is bad (EuroGOOS DATA-MEQ EG10.19, global range)")
-    sensor_max: float = Field(40.0, description="°C; above is bad (EuroGOOS DATA-MEQ EG10.19, global range)")
-    user_min: float = Field(3.0, description="°C; below is questionable (tropical Pacific above 800 m, from memory)")
-    user_max: float = Field(33.0, description="°C; above is questionable (tropical Pacific surface, from memory)")
+    sensor_min: Number = Field(-2.5, description="°C; below is bad (EuroGOOS DATA-MEQ EG10.19, global range)")
+    sensor_max: Number = Field(40.0, description="°C; above is bad (EuroGOOS DATA-MEQ EG10.19, global range)")
+    user_min: Number = Field(3.0, description="°C; below is questionable (tropical Pacific above 800 m, from memory)")
+    user_max: Number = Field(33.0, description="°C; above is questionable (tropical Pacific surface, from memory)")
 
     @model_validator(mode="after")
     def _nested(self) -> Self:
@@ -64,7 +68,9 @@ class GrossRangeSettings(Settings):
 class ClimatologySettings(Settings):
     """Climatological range by depth: QARTOD test 5, never worse than questionable."""
 
-    deviations: Positive = Field(4.0, description="half-width of the window, in standard deviations (FACTS J: 3 to 4)")
+    deviations: Positive = Field(
+        4.0, description="half-width of the window, in standard deviations (3 to 4 is usual, from memory)"
+    )
     displacement_sd: NotNegative = Field(
         15.0, description="m; standard deviation of the vertical displacement of the atlas profile (ours)"
     )
@@ -134,15 +140,17 @@ class QualityControlSettings(Settings):
 class ColumnSettings(Settings):
     """[column]: what is read off one profile."""
 
-    use_flags: tuple[Literal[1, 2, 3, 4], ...] = Field((1, 2), description="quality flags of the values that are used")
-    isotherm: float = Field(20.0, description="°C; the isotherm that stands for the thermocline (WWV definition)")
+    use_flags: tuple[Literal[1, 2, 3, 4], ...] = Field(
+        (1, 2), min_length=1, description="quality flags of the values that are used (ours)"
+    )
+    isotherm: Number = Field(20.0, description="°C; the isotherm that stands for the thermocline (WWV definition)")
     max_bracket: Positive = Field(
         75.0, description="m; sensors further apart do not bracket the isotherm (common practice is 50 and less)"
     )
     crossing: Literal["shallowest", "deepest"] = Field(
         "shallowest", description="which crossing is taken where there are several"
     )
-    surface_reach: NotNegative = Field(5.0, description="m; a sensor no deeper than this stands for the surface")
+    surface_reach: NotNegative = Field(5.0, description="m; a sensor no deeper than this stands for the surface (ours)")
     mixed_layer_threshold: Positive = Field(0.2, description="°C (de Boyer Montegut et al. 2004)")
     mixed_layer_reference: NotNegative = Field(10.0, description="m (de Boyer Montegut et al. 2004)")
     mean_temperature_bottom: Positive = Field(
@@ -168,7 +176,7 @@ class MeansSettings(Settings):
         0.2, description="largest share of days on which the isotherm lay above or below the chain (ours)"
     )
     questionable_share: Share = Field(
-        0.5, description="a mean with a larger share of questionable inputs is questionable"
+        0.5, description="a mean with a larger share of questionable inputs is questionable (ours)"
     )
 
 
@@ -196,16 +204,14 @@ class SectionSettings(Settings):
 
     means: MeansSettings = MeansSettings()
     climatology: ClimatologyPriorSettings = ClimatologyPriorSettings()
-    signal_sd: Positive = Field(
-        12.0, description="m; standard deviation of monthly isotherm-depth anomalies (FACTS C4)"
-    )
+    signal_sd: Positive = Field(12.0, description="m; standard deviation of monthly isotherm-depth anomalies (ours)")
     small_scale_sd: NotNegative = Field(
         4.0, description="m; part of a monthly mean that the map's scales do not resolve (ours)"
     )
     length_longitude: Positive = Field(15.0, description="degrees (Meyers et al. 1991, median of the tropical Pacific)")
     length_latitude: Positive = Field(3.0, description="degrees (Meyers et al. 1991, median of the tropical Pacific)")
     tilt_window: tuple[Longitude, Longitude] = Field(
-        (165.0, 265.0), description="degrees east; ends of the line through the equatorial section"
+        (165.0, 265.0), description="degrees east; ends of the line through the equatorial section (ours)"
     )
 
     @model_validator(mode="after")
@@ -267,6 +273,40 @@ class Config(Settings):
         return (self.file.parent / path).resolve()
 
 
+_HEADER = """\
+All settings with their defaults. A run does not read this file: copy the lines that you want to change, with the
+[table] above them, into your configuration. "Ours" marks a choice that rests on no published source.
+"""
+_COMMENT_WIDTH = 110
+
+
+def defaults_text() -> str:
+    """Return ``config/defaults.toml``: every setting that has a default, its description as a comment above it."""
+    tables = {name: Config.model_fields[name].default for name in ("qc", "column", "section")}
+    return "\n".join([_comment(_HEADER), *(_table_text(name, table) for name, table in tables.items())])
+
+
+def _table_text(name: str, settings: Settings) -> str:
+    """Write a table with what it says of itself, its keys, and then the tables in it."""
+    fields = type(settings).model_fields
+    values = {key: getattr(settings, key) for key in fields}
+    tables = [_table_text(f"{name}.{key}", value) for key, value in values.items() if isinstance(value, Settings)]
+    keys = [
+        f"{_comment(fields[key].description or '')}{key} = {_toml(value)}\n"
+        for key, value in values.items()
+        if not isinstance(value, Settings)
+    ]
+    return "\n".join([f"{_comment(type(settings).__doc__ or '')}[{name}]\n" + "".join(keys), *tables])
+
+
+def _comment(text: str) -> str:
+    return "".join(f"# {line}\n" for line in textwrap.wrap(text, _COMMENT_WIDTH))
+
+
+def _toml(value: Any) -> str:
+    return json.dumps(list(value) if isinstance(value, tuple) else value, ensure_ascii=False)
+
+
 def load_config(file: str | Path) -> Config:
     """Read and validate a configuration file.
 
@@ -286,7 +326,8 @@ def load_config(file: str | Path) -> Config:
 
 def _repeated_ids(content: dict[str, Any]) -> list[RequestError]:
     tables = content.get("moorings")
-    ids = [str(table["id"]) for table in tables if "id" in table] if isinstance(tables, list) else []
+    listed = tables if isinstance(tables, list) else []
+    ids = [str(table["id"]) for table in listed if isinstance(table, dict) and "id" in table]
     counts = Counter(name.casefold() for name in ids)
     twice = sorted({name for name in ids if counts[name.casefold()] > 1})
     return [
@@ -309,8 +350,10 @@ def read_toml(path: Path) -> dict[str, Any]:
         raise RequestError("no such file", where=str(path), expected="a TOML file", advice=_neighbours(path)) from None
     except IsADirectoryError:
         raise RequestError("is a folder", where=str(path), expected="a TOML file", advice=_inside(path)) from None
-    except PermissionError:
-        raise RequestError("may not be read", where=str(path), advice="ask for the permission") from None
+    except OSError as error:
+        raise RequestError(
+            "cannot be read", where=str(path), found=error.strerror, advice="check the path and the permission"
+        ) from None
     except UnicodeDecodeError as error:
         raise RequestError(
             "is no UTF-8 text", where=str(path), expected="a TOML file", found=f"byte {error.start} is not UTF-8"

@@ -9,7 +9,7 @@ from typing import Annotated, Any, Literal, Self
 
 from pydantic import AfterValidator, Field, model_validator
 
-from profiles.config import Settings, read_toml, validated
+from profiles.config import Count, Number, Settings, read_toml, validated
 from profiles.errors import ConfigError, RequestError
 from profiles.ingest.clock import ISO_8601, parse_zone
 from profiles.ingest.units import require_depth_units, require_temperature_units
@@ -61,7 +61,7 @@ class TimeColumns(Settings):
         "UTC",
         description="UTC, an offset like +10:00 or an IANA name; an offset in the stamp itself comes first",
     )
-    offset_hours: float = Field(0.0, description="hours added to every stamp, 12 where it names only the day")
+    offset_hours: Number = Field(0.0, description="hours added to every stamp, 12 where it names only the day")
 
     @model_validator(mode="after")
     def _one_way(self) -> Self:
@@ -92,7 +92,7 @@ class WideDepth(Settings):
     """[depth] of a wide text file: which columns are sensors, and how deep."""
 
     pattern: str | None = Field(None, description="column name with {depth} where the number stands")
-    columns: dict[str, float] = Field(default_factory=dict, description="or depth by column name")
+    columns: dict[str, Number] = Field(default_factory=dict, description="or depth by column name")
     units: DepthUnits = "m"
     positive: Literal["down", "up"] = "down"
 
@@ -112,7 +112,7 @@ class LongDepth(Settings):
     column: str
     units: DepthUnits = "m"
     positive: Literal["down", "up"] = "down"
-    values: tuple[float, ...] = Field((), description="depths of the sensors; rows with another are quarantined")
+    values: tuple[Number, ...] = Field((), description="depths of the sensors; rows with another are quarantined")
 
     @model_validator(mode="after")
     def _distinct(self) -> Self:
@@ -132,10 +132,10 @@ class TextLayout(Settings):
 
     delimiter: str = Field(",", description='one character, or "whitespace" for any run of blanks')
     comment: str = Field("", description="lines that begin with this are no data; empty for none")
-    header_rows: Annotated[int, Field(ge=0)] = Field(
+    header_rows: Annotated[int, Field(strict=True, ge=0)] = Field(
         1, description="lines before the first data row, comment and blank lines not counted"
     )
-    names_row: Annotated[int, Field(ge=1)] = Field(1, description="which of them holds the column names")
+    names_row: Count = Field(1, description="which of them holds the column names")
     names: tuple[str, ...] = Field((), description="column names where the file has none")
     encoding: Annotated[str, AfterValidator(_known_encoding)] = Field("utf-8", validate_default=True)
     decimal: Literal[".", ","] = "."
@@ -190,7 +190,7 @@ class NetcdfTemperature(Settings):
 class NetcdfTime(Settings):
     """[time] of a NetCDF file; units come from the file."""
 
-    offset_hours: float = Field(0.0, description="hours added to every stamp")
+    offset_hours: Number = Field(0.0, description="hours added to every stamp")
 
 
 class NetcdfLayout(Settings):

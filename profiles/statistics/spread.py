@@ -61,5 +61,4 @@ class SpreadSurvey:
         total = self.counts.sum(axis=1)
         middle = np.argmax(np.cumsum(self.counts, axis=1) * 2 >= total[:, None], axis=1)
         centres = np.concatenate([[0.0], np.sqrt(self._EDGES[1:] * self._EDGES[:-1]), [self._EDGES[-1]]])
-        padded = np.append(centres, self._EDGES[-1])
-        return np.where(total > 0, NORMAL_MAD * padded[middle], np.nan)
+        return np.where(total > 0, NORMAL_MAD * centres[middle], np.nan)

@@ -11,6 +11,7 @@ from pathlib import Path
 
 from profiles.errors import MachineError
 
+_FULL = 1_000_000  # bytes; HDF5 writes a chunk at once, so less than two chunks of a chain may be left
 _LEFTOVER = ".part-"  # a name that starts so is an unfinished file of a run that was cut off
 
 
@@ -40,7 +41,8 @@ def replacing(path: Path, *, verify: Callable[[Path], object] | None = None) -> 
             temporary.replace(path)
             _flush(path.parent)
     finally:
-        temporary.unlink(missing_ok=True)
+        if temporary.exists():
+            temporary.unlink()
 
 
 @contextmanager
@@ -62,13 +64,13 @@ def translated(path: Path) -> Iterator[None]:
         raise MachineError(
             "cannot be written",
             where=str(path),
-            found=f"{error} ({_free(path)})",
+            found=_REASONS[errno.ENOSPC] if _is_full(path) else str(error),
             advice="free some space or choose another folder, then run again: what was finished is kept",
         ) from error
 
 
 _REASONS = {
-    errno.ENOSPC: "no space left on the disk",
+    errno.ENOSPC: "the disk is full",
     errno.EACCES: "no permission to write there",
     errno.EPERM: "no permission to write there",
     errno.EROFS: "a read-only file system",
@@ -76,12 +78,13 @@ _REASONS = {
 }
 
 
-def _free(path: Path) -> str:
+def _is_full(path: Path) -> bool:
+    """Tell whether the disk is full, while the unfinished file still stands on it."""
     try:
         status = os.statvfs(path.parent)
     except OSError:
-        return "the disk cannot be read"
-    return f"{status.f_bavail * status.f_frsize / 1e6:.1f} MB free on that disk"
+        return False
+    return status.f_bavail * status.f_frsize < _FULL
 
 
 def _flush(path: Path) -> None:

@@ -8,7 +8,7 @@ from collections.abc import Iterable, Iterator, Mapping
 from contextlib import contextmanager
 from datetime import UTC, datetime
 from pathlib import Path
-from typing import Any
+from typing import IO, Any
 
 from profiles.errors import RequestError
 from profiles.store.atomic import replacing, translated
@@ -52,15 +52,24 @@ def folder_lock(folder: Path) -> Iterator[None]:
     ------
     RequestError
         Where another run holds it.
+    MachineError
+        Where the lock cannot be written.
     """
     path = folder / "lock"
-    with translated(path), path.open("w", encoding="utf-8") as stream:
-        try:
-            fcntl.flock(stream, fcntl.LOCK_EX | fcntl.LOCK_NB)
-        except BlockingIOError:
-            raise RequestError(
-                "another run is writing to this folder",
-                where=str(folder.parent),
-                advice="wait for it to end, or name another folder with --out",
-            ) from None
+    with translated(path):
+        stream = path.open("w", encoding="utf-8")
+    with stream:
+        with translated(path):
+            _take(stream, folder)
         yield
+
+
+def _take(stream: IO[str], folder: Path) -> None:
+    try:
+        fcntl.flock(stream, fcntl.LOCK_EX | fcntl.LOCK_NB)
+    except BlockingIOError:
+        raise RequestError(
+            "another run is writing to this folder",
+            where=str(folder.parent),
+            advice="wait for it to end, or name another folder with --out",
+        ) from None
