@@ -162,7 +162,7 @@ class _Run:
         reports = self._do("ingest", [stages.ingest_task(self.config, m, self.folder) for m in self.moorings])
         for name, report in reports.items():
             self.problems += [Problem(name, "ingest", row["problem"]) for row in report["deliveries"] if row["problem"]]
-        stages.check_usable(reports)
+        stages.check_usable(reports, [problem.message for problem in self.problems])
         self.rows = _count_rows(reports.values())
         self._do("ingest", [stages.gather_task("ingest", self.moorings, self.folder)], shown=False)
         self._go_on_with(name for name, report in reports.items() if report["usable"])

@@ -10,8 +10,8 @@ import pandas as pd
 import xarray as xr
 
 from profiles import store
-from profiles.config import Config, Mooring
-from profiles.errors import DataError, ThermotiltError
+from profiles.config import Config, Delivery, Mooring
+from profiles.errors import DataError, MachineError, RequestError, ThermotiltError
 from profiles.pipeline.attributes import global_attributes
 from profiles.pipeline.paths import Folder
 from profiles.pipeline.task import Report, Task
@@ -43,11 +43,11 @@ def ingest_task(config: Config, mooring: Mooring, folder: Folder) -> Task:
 
 def ingest(config: Config, mooring: Mooring, folder: Folder) -> Report:
     """Read a mooring's deliveries; one that cannot be used is reported, and the others still are."""
-    from profiles.ingest import Delivery, join, read
+    from profiles.ingest import join, read
 
     account: list[dict[str, Any]] = []
     quarantine: list[pd.DataFrame] = []
-    usable: list[Delivery] = []
+    usable: list[Any] = []
     for listed in mooring.deliveries:
         try:
             delivery = read(
@@ -58,8 +58,8 @@ def ingest(config: Config, mooring: Mooring, folder: Folder) -> Report:
                 longitude=mooring.longitude,
                 sensor_accuracy=mooring.sensor_accuracy or config.column.sensor_accuracy,
             )
-        except ThermotiltError as error:
-            account.append(_account(mooring, listed.path, problem=str(error)))
+        except (RequestError, DataError, MachineError) as error:
+            account.append(_account(mooring, listed.path, problem=message_of(error, config, listed)))
             continue
         usable.append(delivery)
         account.append(_account(mooring, listed.path, delivery))
@@ -74,6 +74,14 @@ def ingest(config: Config, mooring: Mooring, folder: Folder) -> Report:
     rejected = pd.concat(quarantine) if quarantine else pd.DataFrame(columns=_QUARANTINE)
     store.write_table(folder.part("quarantine", mooring.id), rejected)
     return {"usable": bool(usable), "deliveries": account}
+
+
+def message_of(error: ThermotiltError, config: Config, delivery: Delivery) -> str:
+    """Return the error's text with paths as the configuration gives them: the same bytes wherever it lies."""
+    text = str(error)
+    for path in (delivery.path, delivery.layout):
+        text = text.replace(str(config.resolve(path)), path.as_posix())
+    return text
 
 
 def _account(mooring: Mooring, path: Path, delivery: Any = None, problem: str = "") -> dict[str, Any]:
@@ -431,11 +439,10 @@ def versions() -> dict[str, str]:
     return {name: version(name) for name in names}
 
 
-def check_usable(reports: Mapping[str, Report]) -> None:
+def check_usable(reports: Mapping[str, Report], problems: Sequence[str]) -> None:
     """Raise DataError where no mooring is left to go on with."""
     if any(report["usable"] for report in reports.values()):
         return
-    problems = [row["problem"] for report in reports.values() for row in report["deliveries"] if row["problem"]]
     raise DataError(
         "no delivery could be used",
         expected="at least one mooring with a delivery that can be read",

@@ -8,7 +8,8 @@ from pathlib import Path
 from typing import Literal
 
 from profiles.config import Config, Delivery, Mooring
-from profiles.errors import ThermotiltError
+from profiles.errors import DataError, MachineError, RequestError
+from profiles.pipeline.stages import message_of
 
 
 @dataclass(frozen=True)
@@ -45,8 +46,8 @@ def _inspect(config: Config, mooring: Mooring, delivery: Delivery) -> Finding:
             latitude=mooring.latitude,
             longitude=mooring.longitude,
         )
-    except ThermotiltError as error:
-        return Finding(mooring.id, delivery.path, "not usable", 0, 0, str(error))
+    except (RequestError, DataError, MachineError) as error:
+        return Finding(mooring.id, delivery.path, "not usable", 0, 0, message_of(error, config, delivery))
     if not found.rows_quarantined:
         return Finding(mooring.id, delivery.path, "clean", found.rows_read, found.rows_kept, "")
     rows = found.quarantine

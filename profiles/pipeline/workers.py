@@ -9,12 +9,13 @@ import threading
 from collections.abc import Iterator, Sequence
 from concurrent.futures import Future, ProcessPoolExecutor, as_completed
 from concurrent.futures.process import BrokenProcessPool
+from contextlib import contextmanager
 from types import TracebackType
 from typing import Self
 
 from threadpoolctl import threadpool_limits
 
-from profiles.errors import MachineError, ThermotiltError
+from profiles.errors import DataError, MachineError, RequestError, ThermotiltError
 from profiles.pipeline.task import Report, Task
 
 Result = Report | ThermotiltError
@@ -36,15 +37,13 @@ class Workers:
     def __exit__(
         self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
     ) -> None:
-        if self._pool is not None:
-            self._pool.shutdown(wait=kind is None, cancel_futures=True)
-            if kind is not None:
-                self._stop(self._pool)
-
-    @staticmethod
-    def _stop(pool: ProcessPoolExecutor) -> None:
-        for process in list((pool._processes or {}).values()):
-            process.terminate()
+        if self._pool is None:
+            return
+        if kind is not None:
+            for process in list((self._pool._processes or {}).values()):
+                process.terminate()
+        # Whoever holds the folder next must find no worker that still writes.
+        self._pool.shutdown(wait=True, cancel_futures=True)
 
     def run(self, tasks: Sequence[Task]) -> Iterator[tuple[Task, Result]]:
         """Yield each task with its report, or the error that ended it, as they end."""
@@ -55,7 +54,8 @@ class Workers:
         if self._pool is None:
             context = multiprocessing.get_context("spawn")
             self._pool = ProcessPoolExecutor(self.count, mp_context=context, initializer=_settle)
-        futures: dict[Future[Result], Task] = {self._pool.submit(attempt, task): task for task in tasks}
+        with _interrupts_held():
+            futures: dict[Future[Result], Task] = {self._pool.submit(attempt, task): task for task in tasks}
         try:
             for future in as_completed(futures):
                 yield futures[future], future.result()
@@ -68,20 +68,27 @@ class Workers:
 
 
 def attempt(task: Task) -> Result:
-    """Do a task; an error of the data is a result, one of the machine or of ours is raised."""
+    """Do a task; an error of the data or the request is a result, one of the machine or of ours is raised."""
     with threadpool_limits(1):
         try:
             return task.work(*task.arguments)
-        except MachineError:
-            raise
-        except ThermotiltError as error:
+        except (DataError, RequestError) as error:
             return error
 
 
+@contextmanager
+def _interrupts_held() -> Iterator[None]:
+    """Hold interrupts back; processes that are started meanwhile never see one, from their first instruction on."""
+    before = signal.pthread_sigmask(signal.SIG_BLOCK, {signal.SIGINT})
+    try:
+        yield
+    finally:
+        signal.pthread_sigmask(signal.SIG_SETMASK, before)
+
+
 def _settle() -> None:
-    """Prepare a worker: one thread, interrupts left to the parent, an end when the parent ends."""
+    """Prepare a worker: one thread, an end when the parent ends."""
     os.environ["NUMBA_NUM_THREADS"] = "1"
-    signal.signal(signal.SIGINT, signal.SIG_IGN)
     threading.Thread(target=_end_with_parent, daemon=True).start()
 
 
