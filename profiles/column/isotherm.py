@@ -10,7 +10,8 @@ from numba import njit, prange
 from numpy.typing import NDArray
 
 from profiles.column.labelled import check_profiles, over_profiles
-from profiles.errors import DataError, RequestError
+from profiles.column.sensors import DISORDER, check_order
+from profiles.errors import RequestError
 from profiles.vocabulary import IsothermStatus, describe
 
 _FOUND = int(IsothermStatus.FOUND)
@@ -20,7 +21,6 @@ _BELOW = int(IsothermStatus.BELOW_CHAIN)
 _GAP = int(IsothermStatus.GAP)
 _SEVERAL = int(IsothermStatus.SEVERAL_CROSSINGS)
 _TOO_FEW = int(IsothermStatus.TOO_FEW_SENSORS)
-_DISORDER = 0  # sensor depths that do not increase: the caller raises
 
 SURFACE_REACH = 5.0  # m; a sensor no deeper than this stands for the surface
 
@@ -41,7 +41,7 @@ def _locate(
         if not (np.isfinite(value) and np.isfinite(place)):
             continue
         if place <= last_place:
-            return -1, -1, _DISORDER
+            return -1, -1, DISORDER
         warm = value >= isotherm
         if last < 0:
             top = sensor
@@ -213,7 +213,7 @@ def isotherm_depth(
 
     def kernel(values: NDArray[Any], places: NDArray[Any]) -> tuple[NDArray[Any], ...]:
         results = isotherm_kernel(values, places, float(isotherm), reach, float(surface_reach), deepest)
-        _check_order(results[1])
+        check_order(results[1])
         return results
 
     dtype = temperature.dtype
@@ -288,18 +288,6 @@ def _check_choice(argument: str, value: str, choices: tuple[str, ...]) -> None:
     if value not in choices:
         raise RequestError(
             "no such choice", where=argument, expected=" or ".join(map(repr, choices)), found=repr(value)
-        )
-
-
-def _check_order(status: NDArray[np.int8]) -> None:
-    disordered = int((status == _DISORDER).sum())
-    if disordered:
-        raise DataError(
-            "the sensor depths do not increase downwards",
-            where="sensor_depth",
-            expected="each sensor deeper than the one above it, in every profile",
-            found=f"{disordered} profiles in which one is not",
-            advice="set the depths of these sensors to NaN, or correct them",
         )
 
 

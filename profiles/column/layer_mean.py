@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 
 from profiles.column.isotherm import SURFACE_REACH
 from profiles.column.labelled import check_profiles, over_profiles
+from profiles.column.sensors import DISORDER, check_order, count_good
 from profiles.errors import RequestError
 from profiles.vocabulary import LayerMeanStatus, describe
 
@@ -24,12 +25,14 @@ _TOO_FEW = int(LayerMeanStatus.TOO_FEW_SENSORS)
 @njit(cache=True)
 def _layer_mean(temperature: Any, depth: Any, bottom: float, surface_reach: float, max_gap: float) -> tuple[float, int]:
     """Return the mean and the status of one profile: trapezoids, the shallowest value up to the surface."""
-    integral, last, good, gap = 0.0, -1, 0, False
+    good = count_good(temperature, depth)
+    if good < 2:
+        return np.nan, DISORDER if good < 0 else _TOO_FEW
+    integral, last, gap = 0.0, -1, False
     for sensor in range(temperature.size):
         value, place = np.float64(temperature[sensor]), np.float64(depth[sensor])
         if not (np.isfinite(value) and np.isfinite(place)):
             continue
-        good += 1
         if last < 0:
             if place > surface_reach:
                 return np.nan, _OPEN_TOP
@@ -41,8 +44,6 @@ def _layer_mean(temperature: Any, depth: Any, bottom: float, surface_reach: floa
             middle = temperature[last] + 0.5 * inside / distance * (value - temperature[last])
             integral += inside * middle
         last = sensor
-    if good < 2:
-        return np.nan, _TOO_FEW
     if depth[last] < bottom:
         return np.nan, _OPEN_BOTTOM
     return (np.nan, _GAP) if gap else (integral / bottom, _FOUND)
@@ -98,7 +99,7 @@ def layer_mean_temperature(
     RequestError
         Where ``bottom`` is not positive.
     DataError
-        Where the depths do not fit.
+        Where the depths do not fit or do not increase.
     """
     if not bottom > 0.0:
         raise RequestError("no layer", where="bottom", expected="a positive depth, m", found=f"{bottom}")
@@ -109,6 +110,7 @@ def layer_mean_temperature(
         results: tuple[NDArray[Any], ...] = layer_mean_kernel(
             values, places, float(bottom), float(surface_reach), reach
         )
+        check_order(results[1])
         return results
 
     found = over_profiles(

@@ -10,6 +10,7 @@ from numba import njit, prange
 from numpy.typing import NDArray
 
 from profiles.column.labelled import check_profiles, over_profiles
+from profiles.column.sensors import DISORDER, check_order, count_good
 from profiles.errors import RequestError
 from profiles.vocabulary import MixedLayerStatus, describe
 
@@ -22,13 +23,15 @@ _TOO_FEW = int(MixedLayerStatus.TOO_FEW_SENSORS)
 @njit(cache=True)
 def _mixed_layer(temperature: Any, depth: Any, threshold: float, reference_depth: float) -> tuple[float, int]:
     """Return the depth and the status of one profile."""
-    good, above, reference = 0, -1, np.nan
+    good = count_good(temperature, depth)
+    if good < 2:
+        return np.nan, DISORDER if good < 0 else _TOO_FEW
+    above, reference = -1, np.nan
     last_depth, last_departure = reference_depth, 0.0
     for sensor in range(temperature.size):
         value, place = np.float64(temperature[sensor]), np.float64(depth[sensor])
         if not (np.isfinite(value) and np.isfinite(place)):
             continue
-        good += 1
         if place < reference_depth:
             above = sensor
             continue
@@ -46,8 +49,6 @@ def _mixed_layer(temperature: Any, depth: Any, threshold: float, reference_depth
             share = (target - last_departure) / (departure - last_departure)
             return last_depth + share * (place - last_depth), _FOUND
         last_depth, last_departure = place, departure
-    if good < 2:
-        return np.nan, _TOO_FEW
     return np.nan, _NO_REFERENCE if np.isnan(reference) else _BELOW
 
 
@@ -96,7 +97,7 @@ def mixed_layer_depth(
     RequestError
         Where the threshold is not positive.
     DataError
-        Where the depths do not fit.
+        Where the depths do not fit or do not increase.
 
     References
     ----------
@@ -108,6 +109,7 @@ def mixed_layer_depth(
 
     def kernel(values: NDArray[Any], places: NDArray[Any]) -> tuple[NDArray[Any], ...]:
         results: tuple[NDArray[Any], ...] = mixed_layer_kernel(values, places, float(threshold), float(reference_depth))
+        check_order(results[1])
         return results
 
     found = over_profiles(
