@@ -28,7 +28,7 @@ def wide_lines(site: Site, chain: xr.Dataset) -> tuple[list[str], list[str]]:
         "# Halcyon Marine Survey (invented)",
         f"# mooring {site.id}, {site.latitude:g} N, {site.longitude:g} E",
         "# daily mean temperature, degrees Celsius (ITS-90), days in UTC",
-        ",".join(["date", *(f"T_{depth:g}m" for depth in site.depths)]),
+        ",".join(["date", *(f"T_{depth:g}m" for depth in chain["depth"].values)]),
     ]
     rows = [
         ",".join([day.strftime("%Y-%m-%d"), *(_number(value, "-9.999") for value in values)])
@@ -42,7 +42,7 @@ def long_lines(site: Site, chain: xr.Dataset) -> tuple[list[str], list[str]]:
     rows = [
         f"{site.id};{day.strftime('%d.%m.%Y %H:%M')};{depth:g};{_number(value, 'NA').replace('.', ',')}"
         for day, values in _days_with_data(chain, LOCAL)
-        for depth, value in zip(site.depths, values, strict=True)
+        for depth, value in zip(chain["depth"].values, values, strict=True)
     ]
     return ["station;time_local;depth_m;temp_c"], rows
 
@@ -140,7 +140,7 @@ def write_netcdf_delivery(path: Path, site: Site, chain: xr.Dataset) -> None:
     values = chain["temperature"].transpose("time", "depth").values
     with replacing(path) as temporary, netCDF4.Dataset(temporary, "w", format="NETCDF4") as file:
         file.setncatts(_global_attributes(site, chain))
-        _define_coordinates(file, site, chain["time"].values)
+        _define_coordinates(file, site, chain)
         temperature = file.createVariable(
             "TEMP",
             "f4",
@@ -175,16 +175,16 @@ def write_netcdf_delivery(path: Path, site: Site, chain: xr.Dataset) -> None:
         quality[...] = np.where(np.isfinite(values), _NO_QUALITY_CONTROL, _MISSING)
 
 
-def _define_coordinates(file: netCDF4.Dataset, site: Site, time: np.ndarray) -> None:
+def _define_coordinates(file: netCDF4.Dataset, site: Site, chain: xr.Dataset) -> None:
     coordinates = {
         "TIME": (
             "f8",
-            (time - TIME_ORIGIN) / np.timedelta64(1, "D"),
+            (chain["time"].values - TIME_ORIGIN) / np.timedelta64(1, "D"),
             "time",
             "days since 1950-01-01T00:00:00Z",
             "T",
         ),
-        "DEPTH": ("f4", np.asarray(site.depths), "depth", "meters", "Z"),
+        "DEPTH": ("f4", chain["depth"].values, "depth", "meters", "Z"),
         "LATITUDE": ("f4", np.array([site.latitude]), "latitude", "degrees_north", "Y"),
         "LONGITUDE": (
             "f4",
@@ -220,8 +220,8 @@ def _global_attributes(site: Site, chain: xr.Dataset) -> dict[str, object]:
         "geospatial_lat_max": site.latitude,
         "geospatial_lon_min": site.longitude,
         "geospatial_lon_max": site.longitude,
-        "geospatial_vertical_min": site.depths[0],
-        "geospatial_vertical_max": site.depths[-1],
+        "geospatial_vertical_min": float(chain["depth"][0]),
+        "geospatial_vertical_max": float(chain["depth"][-1]),
         "time_coverage_start": start,
         "time_coverage_end": end,
         "processing_level": "Raw instrument data",

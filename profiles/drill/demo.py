@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Callable, Iterator, Mapping
 from dataclasses import asdict
 from pathlib import Path
@@ -20,8 +21,9 @@ from profiles.drill.deliveries import (
     write_text_delivery,
 )
 from profiles.drill.faults import CATALOGUE, Event, Fault, plant
-from profiles.drill.instruments import deployment_numbers, measure, missing
+from profiles.drill.instruments import moor
 from profiles.drill.ocean import Columns, Ocean
+from profiles.drill.service import visits
 from profiles.drill.streams import stream
 from profiles.drill.truth import array_truth, site_columns, site_truth
 from profiles.store import make_folder, write_dataset, write_table
@@ -94,7 +96,7 @@ def make_demo(
     """
     make_folder(folder)
     ocean = Ocean.simulate(days() if time is None else time, seed)
-    large, whole = site_columns(ocean, sites, seed)
+    large, whole = site_columns(ocean, sites)
     progress(f"water columns of {len(sites)} sites")
     chains, events = plant_over_array(list(simulated_chains(ocean, sites, whole, seed)), sites, faults, seed)
     progress(f"chains with {len(events)} planted faults")
@@ -109,16 +111,14 @@ def make_demo(
 
 
 def simulated_chains(ocean: Ocean, sites: tuple[Site, ...], columns: Columns, seed: int) -> Iterator[xr.Dataset]:
-    """Yield what each site's sensors read, gaps included, dims (time, depth), °C."""
+    """Yield what each site's sensors read, gaps included, dims (time, depth)."""
+    days = (ocean.time[-1] - ocean.time[0]) / np.timedelta64(1, "D")
+    lines: Counter[float] = Counter()
     for position, site in enumerate(sites):
-        random = stream(seed, "sensors", site.id)
-        deployment = deployment_numbers(ocean.time.size, random)
-        values = measure(columns, position, site.depths, deployment, random)
-        values[missing(len(site.depths), deployment, stream(seed, "gaps", site.id))] = np.nan
-        yield xr.Dataset(
-            {"temperature": (("time", "depth"), values)},
-            coords={"time": ocean.time, "depth": list(site.depths), "mooring": site.id},
-        )
+        visited = visits(days, stream(seed, "visits", f"{site.longitude:g}"))
+        berth, lines[site.longitude] = lines[site.longitude], lines[site.longitude] + 1
+        chain, _, _ = moor(columns, position, site, ocean.time, visited, seed=seed, berth=berth)
+        yield chain
 
 
 def plant_over_array(

@@ -39,7 +39,7 @@ def folder(tmp_path_factory: pytest.TempPathFactory) -> Path:
 @pytest.fixture(scope="module")
 def simulated() -> dict[str, xr.Dataset]:
     ocean = Ocean.simulate(TIME, SEED)
-    _, whole = site_columns(ocean, SMALL, SEED)
+    _, whole = site_columns(ocean, SMALL)
     chains, _ = plant_over_array(list(simulated_chains(ocean, SMALL, whole, SEED)), SMALL, FAULTS, SEED)
     return {site.id: chain for site, chain in zip(SMALL, chains, strict=True)}
 
@@ -68,7 +68,7 @@ def test_another_seed_gives_other_deliveries(tmp_path: Path) -> None:
     sites = SMALL[:1]
     for seed in (1, 2):
         ocean = Ocean.simulate(TIME[:90], seed)
-        _, whole = site_columns(ocean, sites, seed)
+        _, whole = site_columns(ocean, sites)
         write_deliveries(tmp_path / str(seed), sites, list(simulated_chains(ocean, sites, whole, seed)), seed)
     assert (tmp_path / "1" / delivery_path(WIDE)).read_bytes() != (tmp_path / "2" / delivery_path(WIDE)).read_bytes()
 
@@ -89,7 +89,7 @@ def test_long_delivery_holds_what_was_simulated(folder: Path, simulated: dict[st
     read = np.full(values.shape, np.nan)
     for station, stamp, depth, temperature in rows:
         utc = datetime.strptime(stamp, "%d.%m.%Y %H:%M") - timedelta(hours=10)
-        place = (utc - datetime(2031, 1, 1)).days, LONG.depths.index(float(depth))
+        place = (utc - datetime(2031, 1, 1)).days, list(values["depth"].values).index(float(depth))
         assert (station, utc.hour) == ("TB-18", 12)
         read[place] = np.nan if temperature == "NA" else float(temperature.replace(",", "."))
     lost = np.isnan(read) & np.isfinite(values.values)
@@ -99,13 +99,14 @@ def test_long_delivery_holds_what_was_simulated(folder: Path, simulated: dict[st
 
 
 def test_netcdf_delivery_holds_what_was_simulated(folder: Path, simulated: dict[str, xr.Dataset]) -> None:
-    expected = simulated[NETCDF.id]["temperature"].values
+    chain = simulated[NETCDF.id]
+    expected = chain["temperature"].values
     with netCDF4.Dataset(folder / delivery_path(NETCDF)) as file:
         read = np.ma.filled(file["TEMP"][...].astype(float), np.nan)
         quality = file["TEMP_QC"][...].filled()
         time = netCDF4.num2date(file["TIME"][...], file["TIME"].units)
         assert (file["LATITUDE"][0], file["LONGITUDE"][0]) == (0.0, -94.0)
-        np.testing.assert_array_equal(file["DEPTH"][...], NETCDF.depths)
+        np.testing.assert_array_equal(file["DEPTH"][...], chain["depth"])
     np.testing.assert_allclose(read, expected, rtol=0, atol=1e-5)
     np.testing.assert_array_equal(quality == 9, np.isnan(expected))
     assert (time[0].isoformat(), time[-1].isoformat()) == ("2031-01-01T12:00:00", "2031-12-31T12:00:00")
@@ -143,7 +144,7 @@ def test_damaged_rows_are_what_the_truth_calls_them(folder: Path) -> None:
 
 def test_no_fault_looks_like_the_missing_value_of_its_delivery() -> None:
     ocean = Ocean.simulate(TIME, SEED)
-    _, whole = site_columns(ocean, SMALL[:1], SEED)
+    _, whole = site_columns(ocean, SMALL[:1])
     chains = list(simulated_chains(ocean, SMALL[:1], whole, SEED))
     planted, events = plant_over_array(chains, SMALL[:1], {"fill value": 12}, SEED)
     assert {event.size for event in events} == {99.99}
@@ -153,7 +154,7 @@ def test_no_fault_looks_like_the_missing_value_of_its_delivery() -> None:
 def test_truth_at_a_site_is_the_isotherm_between_its_sensors(folder: Path, simulated: dict[str, xr.Dataset]) -> None:
     with xr.open_dataset(folder / "truth" / "sites.nc") as truth:
         depth = truth["isotherm_depth"].sel(mooring=WIDE.id).values
-    values, sensors = simulated[WIDE.id]["temperature"].values, np.array(WIDE.depths)
+    values, sensors = simulated[WIDE.id]["temperature"].values, simulated[WIDE.id]["depth"].values
     errors = []
     for day, profile in enumerate(values):
         below = int(np.searchsorted(sensors, depth[day]))
