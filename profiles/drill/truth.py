@@ -12,7 +12,6 @@ from profiles.atlas import sea_share
 from profiles.drill.array import Site, positions
 from profiles.drill.ocean import Columns, Ocean
 from profiles.drill.sphere import METRES_PER_DEGREE, cell_areas
-from profiles.drill.variability import small_scale_displacement
 from profiles.vocabulary import describe
 
 Floats = NDArray[np.float64]
@@ -28,10 +27,9 @@ _DEPTH_DECIMALS = 2
 _PLACE = "latitude longitude"  # CF-1.11, section 5: what is no dimension is named
 
 
-def site_columns(ocean: Ocean, sites: tuple[Site, ...], seed: int) -> tuple[Columns, Columns]:
+def site_columns(ocean: Ocean, sites: tuple[Site, ...]) -> tuple[Columns, Columns]:
     """Return the water columns at ``sites`` without and with small scales."""
-    large = ocean.columns(*positions(sites))
-    return large, large.displaced_by(small_scale_displacement(len(sites), ocean.time.size, seed))
+    return ocean.columns(*positions(sites)), ocean.columns(*positions(sites), small_scales=True)
 
 
 def site_truth(ocean: Ocean, sites: tuple[Site, ...], large: Columns, whole: Columns) -> xr.Dataset:
@@ -71,7 +69,7 @@ def array_truth(ocean: Ocean) -> xr.Dataset:
     """Return monthly isotherm depth, equatorial section, its slope and the warm-water volume."""
     share = sea_share(np.arange(SOUTH, NORTH + 1.0), np.arange(WEST, EAST + 1.0))
     latitude, longitude = (grid.ravel() for grid in np.meshgrid(LATITUDE, LONGITUDE, indexing="ij"))
-    daily = ocean.columns(latitude, longitude).isotherm_depth()
+    daily = ocean.isotherm_depth(latitude, longitude)
     time, monthly = monthly_means(ocean.time, daily)
     depth = monthly.T.reshape(time.size, LATITUDE.size, LONGITUDE.size)
     section = equatorial_section(depth, share)
