@@ -12,10 +12,12 @@ import pandas as pd
 import xarray as xr
 
 from profiles.drill.array import Site
+from profiles.drill.faults import delivered_time
 from profiles.store import replacing
 
 UTC, LOCAL = pd.Timedelta(0), pd.Timedelta(hours=10)  # of the wide and the long delivery
 TIME_ORIGIN = np.datetime64("1950-01-01", "ns")  # OceanSITES 1.4
+WIDE_ABSENT = -9.999  # °C; what a wide delivery has where nothing was measured
 FILL = np.float32(99999.0)  # OceanSITES 1.4
 
 # ----------------------------------------------------------------------------------------------------
@@ -31,7 +33,7 @@ def wide_lines(site: Site, chain: xr.Dataset) -> tuple[list[str], list[str]]:
         ",".join(["date", *(f"T_{depth:g}m" for depth in chain["depth"].values)]),
     ]
     rows = [
-        ",".join([day.strftime("%Y-%m-%d"), *(_number(value, "-9.999") for value in values)])
+        ",".join([day.strftime("%Y-%m-%d"), *(_number(value, f"{WIDE_ABSENT:.3f}") for value in values)])
         for day, values in _days_with_data(chain, UTC)
     ]
     return head, rows
@@ -49,7 +51,7 @@ def long_lines(site: Site, chain: xr.Dataset) -> tuple[list[str], list[str]]:
 
 def _days_with_data(chain: xr.Dataset, offset: pd.Timedelta) -> list[tuple[pd.Timestamp, np.ndarray]]:
     values = chain["temperature"].transpose("time", "depth").values
-    days = pd.DatetimeIndex(chain["time"].values) + offset
+    days = pd.DatetimeIndex(delivered_time(chain)) + offset
     return [(day, row) for day, row in zip(days, values, strict=True) if np.isfinite(row).any()]
 
 
@@ -179,7 +181,7 @@ def _define_coordinates(file: netCDF4.Dataset, site: Site, chain: xr.Dataset) ->
     coordinates = {
         "TIME": (
             "f8",
-            (chain["time"].values - TIME_ORIGIN) / np.timedelta64(1, "D"),
+            (delivered_time(chain) - TIME_ORIGIN) / np.timedelta64(1, "D"),
             "time",
             "days since 1950-01-01T00:00:00Z",
             "T",
@@ -204,7 +206,8 @@ def _define_coordinates(file: netCDF4.Dataset, site: Site, chain: xr.Dataset) ->
 
 
 def _global_attributes(site: Site, chain: xr.Dataset) -> dict[str, object]:
-    start, end = (pd.Timestamp(chain["time"].values[place]).strftime("%Y-%m-%dT%H:%M:%SZ") for place in (0, -1))
+    stamps = pd.DatetimeIndex(delivered_time(chain))
+    start, end = (stamp.strftime("%Y-%m-%dT%H:%M:%SZ") for stamp in (stamps.min(), stamps.max()))
     return {
         "Conventions": "CF-1.11, OceanSITES-1.4, ACDD-1.3",
         "title": f"Daily mean temperature of mooring {site.id}",

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections import Counter
 from collections.abc import Callable, Iterator, Mapping
-from dataclasses import asdict
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -14,13 +14,15 @@ from numpy.typing import NDArray
 
 from profiles.drill.array import INSTITUTES, SITES, Site
 from profiles.drill.deliveries import (
+    WIDE_ABSENT,
     damage,
     long_lines,
     wide_lines,
     write_netcdf_delivery,
     write_text_delivery,
 )
-from profiles.drill.faults import CATALOGUE, Event, Fault, plant
+from profiles.drill.fault_catalogue import CATALOGUE, Fault
+from profiles.drill.faults import Event, event_table, plant
 from profiles.drill.instruments import moor
 from profiles.drill.ocean import Columns, Ocean
 from profiles.drill.service import visits
@@ -104,7 +106,7 @@ def make_demo(
     progress(f"deliveries with {len(damaged)} damaged rows")
     truth = make_folder(folder / "truth")
     write_dataset(truth / "sites.nc", site_truth(ocean, sites, large, whole), _ATTRIBUTES)
-    write_table(truth / "faults.csv", pd.DataFrame([asdict(event) for event in events]))
+    write_table(truth / "faults.csv", event_table(events))
     write_table(truth / "damaged_rows.csv", damaged)
     write_dataset(truth / "array.nc", array_truth(ocean), _ATTRIBUTES)
     progress("truth")
@@ -133,16 +135,16 @@ def plant_over_array(
         random = stream(seed, "faults", site.id)
         faulty, happened = plant(chain, own, random, catalogue=_catalogue(site.institute))
         planted.append(faulty)
-        events += sorted(happened, key=lambda event: (event.start, event.depth))
+        events += sorted(happened, key=lambda event: (event.start, event.depths))
     return planted, events
 
 
 def _catalogue(institute: str) -> dict[str, Fault]:
-    """A wide delivery writes -9.999 where a value is missing: there it is no fault."""
+    """A wide delivery writes :data:`WIDE_ABSENT` where a value is missing: there it is no fault."""
     if institute != "halcyon":
         return dict(CATALOGUE)
     fill = CATALOGUE["fill value"]
-    return {**CATALOGUE, "fill value": Fault(fill.kind, fill.kernel, fill.days, sizes=(99.99,))}
+    return {**CATALOGUE, "fill value": replace(fill, sizes=tuple(size for size in fill.sizes if size != WIDE_ABSENT))}
 
 
 def write_deliveries(folder: Path, sites: tuple[Site, ...], chains: list[xr.Dataset], seed: int) -> pd.DataFrame:

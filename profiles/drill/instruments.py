@@ -110,7 +110,7 @@ def moor(
         UTC, evenly spaced.
     visited : ndarray, shape (visit,)
         Days since the first time, as :func:`profiles.drill.service.visits` gives them for the line.
-    seed : int, optional
+    seed : int
         With the site's name decides everything else.
     berth : int, optional
         Place of the mooring on its line, from 0.

@@ -18,11 +18,11 @@ from profiles.drill.ocean import Columns
 Floats = NDArray[np.float64]
 
 REFERENCE_DEPTH = 300.0  # m; where the rise is stated
-RISE = 3.4  # m at the reference depth, in the undercurrent's mean flow (ours: 0 to 10 m, rms error as FACTS E)
+RISE = 3.0  # m at the reference depth, in the undercurrent's mean flow (ours: 0 to 10 m, rms error as FACTS E)
 CORE_LONGITUDE = 225.0  # degrees east; where the undercurrent is strongest, about 140W to 130W (from memory)
 CORE_WIDTH_WEST, CORE_WIDTH_EAST = 50.0, 60.0  # degrees of longitude, e-folding of the Gaussian (ours)
 CORE_HALF_WIDTH = 1.8  # degrees of latitude, e-folding of the Gaussian (from memory: confined to within 2 degrees)
-BACKGROUND_SPEED = 0.55  # of the core's: surface currents and what is left far from the core (ours)
+BACKGROUND_SPEED = 0.6  # of the core's: surface currents and what is left far from the core (ours)
 SPEED_SD = 0.35  # of the local mean speed (ours)
 SPEED_DAYS = (5.0, 25.0)  # e-folding times of the two parts of the red noise: days and weeks (ours)
 SHAPE_WEST, SHAPE_EAST = 1.0, 0.5  # mean power at and beyond the two ends of SHAPE_SPAN (ours)
@@ -32,7 +32,7 @@ SHAPE_DAYS = 15.0  # e-folding time of the power's wandering (ours)
 LEAST_SHAPE, GREATEST_SHAPE = 0.3, 1.4  # of the power; positive, so the rise grows with depth everywhere
 PULSES_PER_YEAR = 3.0  # (ours)
 PULSE_DAYS = (4.0, 15.0)  # whole length (ours)
-PULSE_RISE = (4.0, 14.0)  # m at the reference depth, in the core (ours)
+PULSE_RISE = (4.0, 12.0)  # m at the reference depth, in the core (ours)
 
 
 def red_noise(days: Floats, memory: float, random: np.random.Generator) -> Floats:

@@ -1,7 +1,7 @@
 """When moorings are exchanged and when they are silent: visits of a ship to each line, and what goes wrong between.
 
 Shares below are of the values that a mooring should give, and are what the constants lead to over many years
-(``tests/drill/test_service.py`` holds them): line not visited 5 %, upper sensors vandalised 2 %, buoy lost 1.5 %,
+(the tests hold them): line not visited 5 %, upper sensors vandalised 2 %, buoy lost 1.5 %,
 sensor dead 3 %, turn-around 1 %, transmission 3 %, single values 1 %.
 """
 

@@ -147,7 +147,7 @@ def test_no_fault_looks_like_the_missing_value_of_its_delivery() -> None:
     _, whole = site_columns(ocean, SMALL[:1])
     chains = list(simulated_chains(ocean, SMALL[:1], whole, SEED))
     planted, events = plant_over_array(chains, SMALL[:1], {"fill value": 12}, SEED)
-    assert {event.size for event in events} == {99.99}
+    assert {event.size for event in events} <= {-99.0, 99.99, 1e35}
     assert not (planted[0]["temperature"] == -9.999).any()
 
 
