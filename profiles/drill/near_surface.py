@@ -34,7 +34,7 @@ class NearSurface:
     FRESH_EDGE = 4.0  # m
     POOL = (165.0, 190.0)  # degrees east: barrier layers lie west of it (Sprintall and Tomczak 1992: the west)
     INTRUSION = 1.3  # share of the surface's excess over 20 °C, at most (ours)
-    AFTERNOON, AFTERNOON_SPREAD = 0.5, 0.8  # °C, median peak, and the sd of its logarithm (ours)
+    AFTERNOON, AFTERNOON_SPREAD = 0.4, 0.7  # °C, median peak, and the sd of its logarithm (ours)
     STRONGEST_AFTERNOON = 3.0  # °C (from memory)
 
     @classmethod

@@ -72,8 +72,8 @@ class FineStructure:
     frequency: Floats  # radians per day
 
     WAVELENGTHS = (10.0, 40.0)  # m: steps of 5 to 20 m
-    STRAIN = 0.85  # the largest; its rms is 0.85 / sqrt(2 * SINES) = 0.25
-    SINES = 6
+    STRAIN = 0.85  # the largest; its rms is 0.85 / sqrt(2 * SINES) = 0.35
+    SINES = 3
     DAYS = (15.0, 60.0)  # days in which a sine runs through its wavelength: a step stays for days (ours)
 
     @classmethod

@@ -39,6 +39,7 @@ CALM = 35.0  # m; an isotherm deeper than this is out of reach of what the layer
 FINE_DEPTH = np.arange(0.0, BOTTOM + STEP / 2.0, STEP)
 
 _SEARCH_STEP = 0.5  # m, when looking for crossings near the surface
+_RESOLUTION = 1e-4  # m, of a depth
 _SEARCH_BELOW = 12.0  # m below the isotherm
 
 
@@ -143,7 +144,7 @@ def _calm_depth(day: Any, position: Any, time: Any, state: Any, shape: Any) -> A
         return isotherm
     reach = shape.height[position].sum()
     low, high = isotherm - reach, isotherm + reach
-    while high - low > 1e-4:
+    while high - low > _RESOLUTION:
         middle = 0.5 * (low + high)
         if _strained(middle, day, position, shape) < isotherm:
             low = middle
@@ -164,9 +165,21 @@ def _search(day: Any, position: Any, time: Any, state: Any, shape: Any) -> Any:
         if below < ISOTHERM <= above:
             passages += 1
             if np.isnan(first):
-                first = depth - _SEARCH_STEP * (ISOTHERM - below) / (above - below)
+                first = _passage(depth - _SEARCH_STEP, depth, day, position, time, state, shape)
         above = below
     return first, passages
+
+
+@njit(cache=True)
+def _passage(low: Any, high: Any, day: Any, position: Any, time: Any, state: Any, shape: Any) -> Any:
+    """Depth between two at which the column passes the isotherm."""
+    while high - low > _RESOLUTION:
+        middle = 0.5 * (low + high)
+        if _temperature(middle, day, position, time, state, shape) < ISOTHERM:
+            high = middle
+        else:
+            low = middle
+    return 0.5 * (low + high)
 
 
 @njit(cache=True, parallel=True)
@@ -184,7 +197,7 @@ def isotherm_depths(day: Any, state: Any, shape: Any) -> Any:
     -------
     tuple of ndarray, shape (position, time)
         The shallowest downward passage, m, 0 where the surface is colder; the number of passages, int8. The depth
-        is exact to 0.1 mm below :data:`CALM`, and from values 0.5 m apart above it.
+        is exact to 0.1 mm; above :data:`CALM`, passages less than 0.5 m apart are not told apart.
     """
     depth = np.empty(state.isotherm.shape)
     passages = np.ones(state.isotherm.shape, dtype=np.int8)
