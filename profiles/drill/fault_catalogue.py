@@ -70,7 +70,7 @@ def _by_sensor(kernel: SensorKernel, values: Floats, since: Floats, sensors: Int
     for sensor in sensors:
         good = np.isfinite(values[:, sensor])
         if good.any():
-            values[good, sensor] = kernel(values[good, sensor], since[good] - since[good][0], size)
+            values[good, sensor] = kernel(values[good, sensor], since[good], size)
 
 
 def on_temperature(kernel: SensorKernel) -> Action:

@@ -405,6 +405,24 @@ def test_planting_again_goes_on_counting_and_keeps_clear_of_what_stands() -> Non
     assert not any((held & later).any() for held in inside.values())
 
 
+def test_planting_again_keeps_out_of_a_fault_that_left_values_between() -> None:
+    # One sensor, 100 days, 90 of them rolled over, half the values unchanged: ten days are left, less one beside it.
+    lasting = {**CATALOGUE, "digit rollover": replace(CATALOGUE["digit rollover"], days=(90, 90))}
+    chain = record(100, missing=0.0).isel(depth=[3])
+    once, (rollover,) = plant(chain, ["digit rollover"], np.random.default_rng(1), catalogue=lasting)
+    for seed in range(5):
+        _, spikes = plant(once, ["spike"] * 2, np.random.default_rng(seed))
+        assert all(spike.end < rollover.start or spike.start > rollover.end for spike in spikes)
+
+
+def test_event_lasts_as_long_as_is_drawn_though_values_are_missing_around_it() -> None:
+    ten = {"ten days": replace(CATALOGUE["offset"], days=(10, 10))}
+    chain = record(missing=0.08)
+    _, events = plant(chain, ["ten days"] * 30, np.random.default_rng(2), catalogue=ten)
+    assert {(event.end - event.start).days for event in events} == {9}
+    assert all(event.values >= 9 for event in events)
+
+
 def test_faults_of_temperature_pressure_and_time_may_coincide() -> None:
     chain = record(360, missing=0.0)
     _, events = plant(chain, ["calibration error", "pressure offset", "clock offset"], np.random.default_rng(8))
@@ -482,6 +500,11 @@ def test_record_too_short_for_a_fault_is_an_error() -> None:
         DataError, match=r"TB-07: the record has no room for another fault: drift; expected 100 to 350 days"
     ):
         plant(record(60), ["drift"], np.random.default_rng(9))
+
+
+def test_record_with_too_many_gaps_is_an_error() -> None:
+    with pytest.raises(DataError, match="free of other faults, 90% of it with temperature"):
+        plant(record(missing=0.5), ["offset"], np.random.default_rng(9))
 
 
 def test_full_record_is_an_error() -> None:
