@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from profiles.drill.water_column import (
@@ -53,6 +53,7 @@ def test_temperature_of_each_part_of_the_column() -> None:
     np.testing.assert_allclose(values, [29.0, 29.0, 26.75, 20.0, 14.943, 12.0], atol=1e-3)
 
 
+@settings(deadline=None)  # the first example compiles
 @given(isotherm=st.floats(36.0, 250.0), surface=st.floats(22.0, 30.0))
 def test_the_isotherm_lies_where_the_state_has_it(isotherm: float, surface: float) -> None:
     column = state(isotherm, surface)
@@ -60,6 +61,7 @@ def test_the_isotherm_lies_where_the_state_has_it(isotherm: float, surface: floa
     assert profile(column, np.array([isotherm]))[0] == pytest.approx(ISOTHERM, abs=1e-6)
 
 
+@settings(deadline=None)  # the first example compiles
 @given(isotherm=st.floats(2.0, 250.0), seed=st.integers(0, 20))
 def test_the_depth_is_a_crossing_of_the_strained_column(isotherm: float, seed: int) -> None:
     form = shape(sines=3, seed=seed)
@@ -68,6 +70,7 @@ def test_the_depth_is_a_crossing_of_the_strained_column(isotherm: float, seed: i
     assert profile(state(isotherm), np.array([depth]), form)[0] == pytest.approx(ISOTHERM, abs=1e-3)
 
 
+@settings(deadline=None)  # the first example compiles
 @given(isotherm=st.floats(-10.0, 250.0), surface=st.floats(21.5, 31.0), seed=st.integers(0, 20))
 def test_a_column_without_layers_never_warms_with_depth(isotherm: float, surface: float, seed: int) -> None:
     assert np.diff(profile(state(isotherm, surface), form=shape(sines=3, seed=seed))).max() <= 1e-9
@@ -79,6 +82,7 @@ def test_upper_thermocline_is_sharper_than_the_lower() -> None:
     assert above > 1.5 * below
 
 
+@settings(deadline=None)  # the first example compiles
 @given(isotherm=st.floats(-1.0, 1.0))
 def test_an_outcrop_comes_without_a_jump(isotherm: float) -> None:
     # A metre of the isotherm at the surface is worth (29 - 20) / 25 and (20 - 12) / 40 degrees on either side.
