@@ -7,6 +7,7 @@ import sys
 from pathlib import Path
 
 from profiles.drill.demo import SEED, make_demo
+from profiles.drill.supplements import make_supplements
 from profiles.errors import EXIT_DONE, ThermotiltError
 
 
@@ -14,15 +15,16 @@ def main(arguments: list[str] | None = None) -> int:
     """Parse, make, report; return the exit code."""
     parser = argparse.ArgumentParser(
         prog="python -m profiles.drill",
-        description="Make the deliveries and the truth of the invented Tropicbird Array.",
+        description="Make the demo data of the invented Tropicbird Array: deliveries, what lies beside them, truth.",
     )
-    parser.add_argument("folder", type=Path, help="gets deliveries/ and truth/; files of the same names are replaced")
+    parser.add_argument("folder", type=Path, help="gets the demo data; files of the same names are replaced")
     parser.add_argument(
         "--seed", type=int, default=SEED, help="another seed makes another ocean (default: %(default)s)"
     )
     options = parser.parse_args(arguments)
     try:
         make_demo(options.folder, seed=options.seed, progress=print)
+        make_supplements(options.folder, seed=options.seed, progress=print)
     except ThermotiltError as error:
         print(error, file=sys.stderr)
         return error.exit_code

@@ -28,7 +28,7 @@ _WIDE_LINE = (-4.5, -2.5, 0.0, 2.5, 4.5)
 _WIDE_LINES = (162.0, 188.0, 214.0, 240.0, 266.0)
 
 #: The invented institutes that deliver, west to east, and how many moorings each looks after.
-INSTITUTES: Mapping[str, int] = {"halcyon": 16, "marlin": 12, "frigate": 12}
+INSTITUTES: Mapping[str, int] = {"halcyon": 10, "marlin": 10, "frigate": 10, "shearwater": 10}
 
 
 @dataclass(frozen=True)

@@ -42,6 +42,7 @@ def site_truth(ocean: Ocean, sites: tuple[Site, ...], large: Columns, whole: Col
             "isotherm_depth": (("mooring", "time"), depth.round(_DEPTH_DECIMALS)),
             "isotherm_depth_large_scale": (("mooring", "time"), large_scale),
             "outcropped": (("mooring", "time"), (depth == 0.0).astype(np.int8)),
+            "passages": (("mooring", "time"), whole.passages()),
         },
         coords={
             "mooring": [site.id for site in sites],
@@ -62,14 +63,18 @@ def site_truth(ocean: Ocean, sites: tuple[Site, ...], large: Columns, whole: Col
         "flag_meanings": "found outcropped",
         "coordinates": _PLACE,
     }
+    truth["passages"].attrs = {
+        "long_name": "how often the temperature falls through that of the isotherm with depth",
+        "units": "1",
+        "coordinates": _PLACE,
+    }
     return describe(truth, isotherm_depth={"coordinates": _PLACE})
 
 
 def array_truth(ocean: Ocean) -> xr.Dataset:
     """Return monthly isotherm depth, equatorial section, its slope and the warm-water volume."""
     share = sea_share(np.arange(SOUTH, NORTH + 1.0), np.arange(WEST, EAST + 1.0))
-    latitude, longitude = (grid.ravel() for grid in np.meshgrid(LATITUDE, LONGITUDE, indexing="ij"))
-    daily = ocean.isotherm_depth(latitude, longitude)
+    daily = ocean.isotherm_depth(*cells(LATITUDE, LONGITUDE))
     time, monthly = monthly_means(ocean.time, daily)
     depth = monthly.T.reshape(time.size, LATITUDE.size, LONGITUDE.size)
     section = equatorial_section(depth, share)
@@ -89,6 +94,12 @@ def array_truth(ocean: Ocean) -> xr.Dataset:
         coords={"time": time, "latitude": LATITUDE, "longitude": LONGITUDE, "region": list(_REGIONS)},
     )
     return describe(truth)
+
+
+def cells(latitude: Floats, longitude: Floats) -> tuple[Floats, Floats]:
+    """Return the positions of the cells of a grid, each (cell,), longitude changing fastest."""
+    south_north, west_east = np.meshgrid(latitude, longitude, indexing="ij")
+    return south_north.ravel(), west_east.ravel()
 
 
 def monthly_means(time: NDArray[np.datetime64], daily: Floats) -> tuple[NDArray[np.datetime64], Floats]:

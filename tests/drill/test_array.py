@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from pathlib import Path
 
 import numpy as np
@@ -9,13 +10,20 @@ import pytest
 
 from profiles.config import Config, load_config
 from profiles.drill.array import CHAINS, SITES, Site
-from profiles.drill.demo import delivery_path
+from profiles.drill.configuration import FORMS, configuration_text, delivery_path
+from profiles.drill.supplements import FAST_SITE
+from profiles.ingest.layout import load_layout
 
 ROOT = Path(__file__).parents[2]
 
 # m, depth of the isotherm on the equator in the packaged monthly atlas, as the array's design states it.
 ATLAS_EQUATOR = {149.0: 180, 175.0: 180, 201.0: 155, 214.0: 125, 227.0: 110, 240.0: 72, 253.0: 52, 266.0: 38}
-LAYOUTS = {"halcyon": "halcyon_wide", "marlin": "marlin_long", "frigate": "frigate_netcdf"}
+LAYOUTS = {
+    "halcyon": "halcyon_wide",
+    "marlin": "marlin_long",
+    "frigate": "frigate_netcdf",
+    "shearwater": "shearwater_wide",
+}
 
 
 @pytest.fixture(scope="module")
@@ -55,9 +63,8 @@ def test_sensors_stand_closest_where_the_thermocline_lives(longitude: float) -> 
     assert np.all((spacing[below] >= 40.0) & (spacing[below] <= 60.0))
 
 
-def test_institutes_deliver_16_12_and_12_moorings() -> None:
-    counts = {name: sum(site.institute == name for site in SITES) for name in LAYOUTS}
-    assert counts == {"halcyon": 16, "marlin": 12, "frigate": 12}
+def test_four_institutes_deliver_ten_moorings_each() -> None:
+    assert Counter(site.institute for site in SITES) == dict.fromkeys(LAYOUTS, 10)
 
 
 def test_configuration_lists_the_array(config: Config) -> None:
@@ -73,3 +80,16 @@ def test_configuration_names_the_delivery_and_its_layout(config: Config, site: S
     assert config.resolve(delivery.layout) == ROOT / "config" / "layouts" / f"{LAYOUTS[site.institute]}.toml"
     assert config.resolve(delivery.path).is_file()
     assert config.resolve(delivery.layout).is_file()
+
+
+def test_layouts_beside_a_demo_say_what_the_commented_ones_say(tmp_path: Path) -> None:
+    for form in FORMS.values():
+        (tmp_path / form.layout).write_text(form.text, encoding="utf-8")
+        assert load_layout(tmp_path / form.layout) == load_layout(ROOT / "config" / "layouts" / form.layout)
+
+
+@pytest.mark.parametrize(("name", "sites"), [("tropicbird", SITES), ("tropicbird_fast", (FAST_SITE,))])
+def test_committed_configuration_is_the_one_that_the_code_writes(name: str, sites: tuple[Site, ...]) -> None:
+    committed = (ROOT / "config" / f"{name}.toml").read_text(encoding="utf-8")
+    head = "".join(line for line in committed.splitlines(keepends=True) if line.startswith("#"))
+    assert committed == configuration_text(sites, head=f"{head}\n", below="../data_demo/")

@@ -5,6 +5,7 @@ from __future__ import annotations
 import csv
 import gzip
 import hashlib
+from collections import Counter
 from datetime import datetime, timedelta
 from pathlib import Path
 
@@ -16,17 +17,23 @@ import xarray as xr
 
 from profiles.drill.__main__ import main
 from profiles.drill.array import SITES, Site
+from profiles.drill.configuration import delivery_path
 from profiles.drill.demo import SEED as COMMITTED_SEED
-from profiles.drill.demo import days, delivery_path, make_demo, plant_over_array, simulated_chains, write_deliveries
+from profiles.drill.demo import days, demo_config, make_demo, simulated_chains, write_deliveries
+from profiles.drill.fault_catalogue import CATALOGUE
+from profiles.drill.faults import Event
 from profiles.drill.ocean import Ocean
+from profiles.drill.planting import FAULTS as ALL_FAULTS
+from profiles.drill.planting import catalogue_of, plant_over_array
 from profiles.drill.truth import site_columns
+from profiles.ingest import read_delivery
 
 ROOT = Path(__file__).parents[2]
 SEED = 3
 TIME = days("2031-01-01", "2031-12-31")
-SMALL = tuple(site for site in SITES if site.id in ("TB-02", "TB-18", "TB-37", "TB-38"))
+SMALL = tuple(site for site in SITES if site.id in ("TB-02", "TB-18", "TB-30", "TB-37", "TB-38"))
 FAULTS = {"spike": 3, "stuck value": 2, "fill value": 2, "offset": 1}
-WIDE, LONG, _, NETCDF = SMALL
+WIDE, LONG, NETCDF, SHALLOW, KELVIN = SMALL
 
 
 @pytest.fixture(scope="module")
@@ -58,7 +65,8 @@ def test_same_seed_gives_the_same_bytes(tmp_path: Path) -> None:
     for folder in (first, again):
         make_demo(folder, seed=SEED, time=TIME[:90], sites=SMALL, faults={"spike": 3, "stuck value": 2})
     files = sorted(path.relative_to(first) for path in first.rglob("*") if path.is_file())
-    assert len(files) == len(SMALL) + 4
+    # The truth is four files, and the configuration stands beside four layouts.
+    assert len(files) == len(SMALL) + 4 + 5
     for name in files:
         digests = [hashlib.sha256((folder / name).read_bytes()).hexdigest() for folder in (first, again)]
         assert digests[0] == digests[1], name
@@ -104,12 +112,49 @@ def test_netcdf_delivery_holds_what_was_simulated(folder: Path, simulated: dict[
     with netCDF4.Dataset(folder / delivery_path(NETCDF)) as file:
         read = np.ma.filled(file["TEMP"][...].astype(float), np.nan)
         quality = file["TEMP_QC"][...].filled()
+        pressure = np.ma.filled(file["PRES"][...].astype(float), np.nan)
         time = netCDF4.num2date(file["TIME"][...], file["TIME"].units)
-        assert (file["LATITUDE"][0], file["LONGITUDE"][0]) == (0.0, -94.0)
+        assert (file["LATITUDE"][0], file["LONGITUDE"][0]) == (0.0, -120.0)
         np.testing.assert_array_equal(file["DEPTH"][...], chain["depth"])
     np.testing.assert_allclose(read, expected, rtol=0, atol=1e-5)
     np.testing.assert_array_equal(quality == 9, np.isnan(expected))
+    np.testing.assert_allclose(pressure, chain["pressure"].values, rtol=0, atol=1e-4)
+    # Sensors at or nearest to 100, 300 and 500 m have pressure, the others none.
+    assert list(chain["depth"].values[np.isfinite(pressure).any(axis=0)]) == [100.0, 300.0, 500.0]
     assert (time[0].isoformat(), time[-1].isoformat()) == ("2031-01-01T12:00:00", "2031-12-31T12:00:00")
+
+
+def test_kelvin_delivery_holds_what_was_simulated(folder: Path, simulated: dict[str, xr.Dataset]) -> None:
+    values = simulated[KELVIN.id]["temperature"]
+    rows = rows_of(folder, KELVIN, "\t", header=3)
+    assert len(rows) > 200
+    for year, day, *fields in rows:
+        noon = datetime.strptime(f"{year} {day}", "%Y %j") + timedelta(hours=12)
+        read = np.array([np.nan if field == "-99.99" else float(field) - 273.15 for field in fields])
+        np.testing.assert_allclose(read, values.sel(time=noon).values, rtol=0, atol=1e-9)
+
+
+def test_kelvin_delivery_names_its_sensors_by_pressure(folder: Path) -> None:
+    with gzip.open(folder / delivery_path(KELVIN), "rt", encoding="utf-8") as stream:
+        names = stream.read().splitlines()[2].split("\t")
+    # FACTS E, computed with gsw: 300 dbar are 298.1 m and 500 dbar 496.7 m at the equator, so 1.0063 and 1.0066 dbar/m.
+    assert names[:3] == ["year", "day", "P1.0"]
+    assert names[-2:] == ["P301.9", "P503.4"]
+
+
+def test_configuration_of_a_demo_finds_its_deliveries(folder: Path) -> None:
+    config = demo_config(folder)
+    assert [mooring.id for mooring in config.moorings] == [site.id for site in SMALL]
+    for mooring in config.moorings:
+        (delivery,) = mooring.deliveries
+        chain = read_delivery(
+            config.resolve(delivery.path),
+            config.resolve(delivery.layout),
+            latitude=mooring.latitude,
+            longitude=mooring.longitude,
+        )
+        assert chain.sizes["time"] > 200
+        assert float(chain["depth"][-1]) == pytest.approx(500.0, abs=0.1)
 
 
 def test_packed_text_names_neither_file_nor_time(folder: Path) -> None:
@@ -122,7 +167,7 @@ def test_packed_text_names_neither_file_nor_time(folder: Path) -> None:
 
 def test_each_text_delivery_with_damage_has_each_kind_once(folder: Path) -> None:
     damaged = pd.read_csv(folder / "truth" / "damaged_rows.csv")
-    for site in (WIDE, LONG):
+    for site in (WIDE, LONG, SHALLOW, KELVIN):
         kinds = list(damaged["kind"][damaged["file"] == delivery_path(site)])
         assert sorted(kinds) == ["duplicated row", "letter in a number", "no such day", "truncated line"]
 
@@ -133,11 +178,11 @@ def test_damaged_rows_are_what_the_truth_calls_them(folder: Path) -> None:
         with gzip.open(folder / file, "rt", encoding="utf-8") as stream:
             lines = stream.read().splitlines()
         row, before = lines[line - 1], lines[line - 2]
-        separators = {",", ";"} & set(row)
+        separators = {",", ";", "\t"} & set(row)
         assert {
             "duplicated row": row == before,
             "letter in a number": row[-1].isalpha() and row.count("x") == 1,
-            "no such day": "-02-30" in row or "30.02." in row,
+            "no such day": "-02-30" in row or "30.02." in row or "\t399\t" in row,
             "truncated line": bool(separators) and len(row) < 0.7 * len(before),
         }[kind], (file, line, kind)
 
@@ -149,6 +194,56 @@ def test_no_fault_looks_like_the_missing_value_of_its_delivery() -> None:
     planted, events = plant_over_array(chains, SMALL[:1], {"fill value": 12}, SEED)
     assert {event.size for event in events} <= {-99.0, 99.99, 1e35}
     assert not (planted[0]["temperature"] == -9.999).any()
+    # As text in kelvin: -9.999, -99.000, 99.990 and 1e35, none of which is the missing value -99.99.
+    sizes = catalogue_of("shearwater")["fill value"].sizes
+    assert sizes == pytest.approx((-283.149, -372.15, -173.16, 1e35))
+
+
+def test_faults_go_where_the_delivery_tells_of_them(every_fault: tuple[list[xr.Dataset], list[Event]]) -> None:
+    institutes = {site.id: site.institute for site in SITES}
+    for event in every_fault[1]:
+        if event.variable == "pressure":
+            assert institutes[event.mooring] == "frigate"
+        if event.variable == "time":
+            assert institutes[event.mooring] in ("marlin", "frigate")
+
+
+def test_every_kind_of_fault_is_planted_several_times(every_fault: tuple[list[xr.Dataset], list[Event]]) -> None:
+    counts = Counter(event.name for event in every_fault[1])
+    assert set(counts) == set(CATALOGUE)
+    assert min(counts.values()) >= 3
+    assert counts == ALL_FAULTS
+
+
+def test_most_delivered_values_are_good(every_fault: tuple[list[xr.Dataset], list[Event]]) -> None:
+    chains = every_fault[0]
+    delivered = sum(int(np.isfinite(chain["temperature"]).sum()) for chain in chains)
+    faulty = sum(int((chain["temperature_fault"] > 0).sum()) for chain in chains if "temperature_fault" in chain)
+    assert 0.005 < faulty / delivered < 0.05
+
+
+def test_a_clock_fault_is_delivered_as_the_clock_had_it(tmp_path: Path) -> None:
+    ocean = Ocean.simulate(TIME, SEED)
+    sites = (NETCDF,)
+    _, whole = site_columns(ocean, sites)
+    planted, (event,) = plant_over_array(
+        list(simulated_chains(ocean, sites, whole, SEED)), sites, {"clock offset": 1}, SEED
+    )
+    write_deliveries(tmp_path, sites, planted, SEED)
+    with netCDF4.Dataset(tmp_path / delivery_path(NETCDF)) as file:
+        stamps = np.asarray(file["TIME"][...])
+    true = (TIME - np.datetime64("1950-01-01", "ns")) / np.timedelta64(1, "D")
+    late = 24.0 * (stamps - true)
+    within = (TIME >= event.start.to_datetime64()) & (TIME <= event.end.to_datetime64())
+    np.testing.assert_allclose(late[within], event.size, rtol=0, atol=0.001)
+    np.testing.assert_array_equal(late[~within], 0.0)
+
+
+@pytest.fixture(scope="module")
+def every_fault() -> tuple[list[xr.Dataset], list[Event]]:
+    ocean = Ocean.simulate(days(), SEED)
+    _, whole = site_columns(ocean, SITES)
+    return plant_over_array(list(simulated_chains(ocean, SITES, whole, SEED)), SITES, ALL_FAULTS, SEED)
 
 
 def test_truth_at_a_site_is_the_isotherm_between_its_sensors(folder: Path, simulated: dict[str, xr.Dataset]) -> None:
@@ -223,7 +318,7 @@ def test_committed_demo_is_the_one_that_the_code_makes(site: Site) -> None:
         ours = Ocean.simulate(days(), COMMITTED_SEED).columns([site.latitude], [site.longitude]).isotherm_depth()[0]
         stated = truth["isotherm_depth_large_scale"].sel(mooring=site.id).values
     np.testing.assert_allclose(stated, ours, rtol=0, atol=0.006)
-    assert len(committed) == 55
+    assert len(committed) == sum(ALL_FAULTS.values()) == 120
 
 
 def test_command_refuses_a_folder_that_is_a_file(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
