@@ -115,6 +115,14 @@ def test_small_scales_leave_the_large_scale_alone(ocean: Ocean, columns: Columns
     assert np.all((difference.std(axis=1) > 1.0) & (difference.std(axis=1) < 5.0))
 
 
+def test_small_scales_hold_internal_waves_and_fine_structure(ocean: Ocean, columns: Columns) -> None:
+    large = ocean.columns(LATITUDE, LONGITUDE)
+    assert (columns.displacement - large.displacement).std(axis=1).min() > 1.0
+    # Internal waves move the state; the steps move the crossing away from it, by a metre or so.
+    steps = (columns.isotherm_depth() - columns.state.isotherm)[:3]
+    assert np.all((steps.std(axis=1) > 0.3) & (steps.std(axis=1) < 2.5))
+
+
 def test_a_third_and_more_of_the_variance_lies_in_basin_wide_patterns() -> None:
     latitude, longitude = (grid.ravel() for grid in np.meshgrid(ROWS[::3], COLUMNS[2::8], indexing="ij"))
     months = np.arange("2000-01", "2040-01", dtype="datetime64[M]").astype("datetime64[ns]") + np.timedelta64(15, "D")
