@@ -251,7 +251,7 @@ def score_seed(seed: int) -> Score:
 
 
 def score_columns_only(seed: int) -> Score:
-    """Score tilt, volume and section of one ocean whose isotherm depths the sites know to within their stated errors."""
+    """Score tilt, volume and section of one ocean whose isotherm depths the sites know to their stated errors."""
     from profiles.drill.array import SITES
     from profiles.drill.demo import days
     from profiles.drill.ocean import Ocean
@@ -329,7 +329,7 @@ def summarise(scores: Sequence[Score]) -> dict[str, Any]:
 
 
 def fault_summary(table: pd.DataFrame) -> dict[str, dict[str, float]]:
-    """Return, by kind, how many were planted, and the shares flagged, named and caught with binomial standard errors."""
+    """Return, by kind, how many were planted, the shares flagged, named and caught, and the binomial standard error."""
     rows = {}
     for kind, group in table.groupby("kind"):
         caught = (group["flagged"] & group["named"]).mean()
