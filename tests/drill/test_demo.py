@@ -116,7 +116,8 @@ def test_netcdf_delivery_holds_what_was_simulated(folder: Path, simulated: dict[
         time = netCDF4.num2date(file["TIME"][...], file["TIME"].units)
         assert (file["LATITUDE"][0], file["LONGITUDE"][0]) == (0.0, -120.0)
         np.testing.assert_array_equal(file["DEPTH"][...], chain["depth"])
-    np.testing.assert_allclose(read, expected, rtol=0, atol=1e-5)
+    # Half the spacing of float32 is 6e-8 of a value: 1e35 is among the planted fill values.
+    np.testing.assert_allclose(read, expected, rtol=6e-8, atol=0)
     np.testing.assert_array_equal(quality == 9, np.isnan(expected))
     np.testing.assert_allclose(pressure, chain["pressure"].values, rtol=0, atol=1e-4)
     # Sensors at or nearest to 100, 300 and 500 m have pressure, the others none.
@@ -234,7 +235,8 @@ def test_a_clock_fault_is_delivered_as_the_clock_had_it(tmp_path: Path) -> None:
         stamps = np.asarray(file["TIME"][...])
     true = (TIME - np.datetime64("1950-01-01", "ns")) / np.timedelta64(1, "D")
     late = 24.0 * (stamps - true)
-    within = (TIME >= event.start.to_datetime64()) & (TIME <= event.end.to_datetime64())
+    start, end = event.start.to_datetime64(), event.end.to_datetime64()
+    within = (start <= TIME) & (end >= TIME)
     np.testing.assert_allclose(late[within], event.size, rtol=0, atol=0.001)
     np.testing.assert_array_equal(late[~within], 0.0)
 
@@ -264,10 +266,26 @@ def test_truth_at_a_site_is_the_isotherm_between_its_sensors(folder: Path, simul
 def test_truth_of_a_site_differs_by_its_small_scales_alone(folder: Path) -> None:
     with xr.open_dataset(folder / "truth" / "sites.nc") as truth:
         small = (truth["isotherm_depth"] - truth["isotherm_depth_large_scale"]).sel(mooring=[WIDE.id, LONG.id])
-        outcropped = truth["outcropped"].sel(mooring="TB-37").values == 1
-        np.testing.assert_array_equal(truth["isotherm_depth"].sel(mooring="TB-37").values == 0.0, outcropped)
-        assert small.std("time").values == pytest.approx(3.0, rel=0.15)
-    assert 0 < outcropped.sum() < 120
+        # Waves of days are 2.5 m, of which a daily mean keeps 2 m and more; tide and continuum leave some tenths.
+        assert small.std("time").values == pytest.approx(2.5, rel=0.25)
+
+
+def test_truth_of_a_site_is_0_where_the_isotherm_outcrops() -> None:
+    with xr.open_dataset(ROOT / "data_demo" / "truth" / "sites.nc") as truth:
+        outcropped = truth["outcropped"].values == 1
+        np.testing.assert_array_equal(truth["isotherm_depth"].values == 0.0, outcropped)
+        east = (truth["longitude"] > 250.0).values
+    # Common practice, no source: only the cold tongue in the far east gets that cold, and seldom.
+    assert outcropped[east].any()
+    assert not outcropped[~east].any()
+
+
+def test_several_passages_are_rare_and_none_is_an_outcrop() -> None:
+    with xr.open_dataset(ROOT / "data_demo" / "truth" / "sites.nc") as truth:
+        passages, outcropped = truth["passages"].values, truth["outcropped"].values
+    # A profile that begins warmer than 20 °C falls through it once more often than it rises through it.
+    assert passages[outcropped == 0].min() == 1
+    assert 0 < (passages > 1).mean() < 0.02
 
 
 def test_truth_of_the_array_agrees_with_that_of_its_sites(folder: Path) -> None:
