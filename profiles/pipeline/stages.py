@@ -256,7 +256,7 @@ def build_array(config: Config, moorings: Sequence[Mooring], folder: Folder) -> 
         )
         store.write_dataset(path, dataset, attributes | dict(dataset.attrs) | {"leave_one_out": built.leave_one_out})
     store.write_table(folder.table(MONTHLY_TABLE), _monthly_table(built.section, built.volume))
-    return {"leave_one_out": built.leave_one_out, "latest": _latest(built.section, built.volume)}
+    return {"latest": _latest(built.section, built.volume)}
 
 
 _SECTION_TEXT = (
