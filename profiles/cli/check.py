@@ -19,7 +19,7 @@ def check(
     quiet: Annotated[bool, typer.Option("--quiet", help="Print only what is wrong.")] = False,
     as_json: Annotated[bool, typer.Option("--json", help="Print one JSON document instead of text.")] = False,
 ) -> None:
-    """Say everything that is wrong with a configuration and its files, before any work.
+    """Say everything that is wrong, before any work.
 
     Every delivery is read once; nothing is written.
     """

@@ -22,9 +22,9 @@ def run(
     quiet: Annotated[bool, typer.Option("--quiet", help="Print nothing but errors.")] = False,
     as_json: Annotated[bool, typer.Option("--json", help="Print one JSON document instead of text.")] = False,
 ) -> None:
-    """Do the whole job: ingest, quality control, columns, section, report.
+    """Do the whole job, from deliveries to the report.
 
-    What an earlier run finished in the same folder is kept where its inputs and settings are the same.
+    The stages are ingest, qc (quality control), column, section and report. What an earlier run finished in the same folder is kept where its inputs and settings are the same.
     """
     with ending(as_json=as_json):
         from profiles import pipeline
