@@ -24,7 +24,8 @@ def run(
 ) -> None:
     """Do the whole job, from deliveries to the report.
 
-    The stages are ingest, qc (quality control), column, section and report. What an earlier run finished in the same folder is kept where its inputs and settings are the same.
+    The stages are ingest, qc (quality control), column, section and report. What an earlier run finished in the same
+    folder is kept where its inputs and settings are the same.
     """
     with ending(as_json=as_json):
         from profiles import pipeline
