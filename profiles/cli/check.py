@@ -56,8 +56,8 @@ def _print(findings: list[Finding], *, quiet: bool) -> None:
         return
     counts = {
         outcome: sum(finding.outcome == outcome for finding in findings)
-        for outcome in ("clean", "rows quarantined", "not usable")
+        for outcome in ("clean", "rows sorted", "rows quarantined", "not usable")
     }
     read, kept = sum(finding.rows_read for finding in findings), sum(finding.rows_kept for finding in findings)
-    typer.echo("; ".join(f"{count} deliveries {outcome}" for outcome, count in counts.items()))
+    typer.echo("deliveries: " + ", ".join(f"{count} {outcome}" for outcome, count in counts.items()))
     typer.echo(f"rows read {read} = kept {kept} + quarantined {read - kept}")

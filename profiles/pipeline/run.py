@@ -246,7 +246,7 @@ def _outcome(report: Report, usual: Any) -> Any:
 
 def _count_rows(reports: Iterable[Report]) -> dict[str, int]:
     """Add up the rows of all deliveries; a fault of ours where they do not add up."""
-    names = ("rows_read", "rows_kept", "rows_quarantined")
+    names = ("rows_read", "rows_kept", "rows_quarantined", "rows_reordered")
     rows = [row for report in reports for row in report["deliveries"]]
     total = {name: sum(row[name] for row in rows) for name in names}
     if total["rows_read"] != total["rows_kept"] + total["rows_quarantined"]:
