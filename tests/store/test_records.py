@@ -5,6 +5,8 @@ from __future__ import annotations
 import os
 import subprocess
 import sys
+import time
+from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
@@ -100,12 +102,21 @@ def test_what_fails_in_the_run_is_not_laid_at_the_lock(tmp_path: Path) -> None:
         raise FileNotFoundError("gone")
 
 
-def test_the_date_of_files_is_their_last_change_in_utc(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+@pytest.fixture
+def far_from_greenwich(monkeypatch: pytest.MonkeyPatch) -> Iterator[None]:
+    with monkeypatch.context() as patch:
+        patch.setenv("TZ", "FAR-14")  # 14 hours ahead of UTC, in the notation of POSIX
+        time.tzset()
+        yield
+    time.tzset()
+
+
+@pytest.mark.usefixtures("far_from_greenwich")
+def test_the_date_of_files_is_their_last_change_in_utc(tmp_path: Path) -> None:
     files = [tmp_path / name for name in "abc"]
     # 2001-09-09T01:46:40Z is the second 1 000 000 000 of the clock that counts from 1970.
     for file, second in zip(files, (1e9 - 5.0, 1e9 + 0.9, 0.0), strict=True):
         file.touch()
         os.utime(file, (second, second))
-    monkeypatch.setenv("TZ", "Pacific/Kiritimati")
     assert date_of(files) == date_of(reversed(files)) == "2001-09-09T01:46:40Z"
     assert date_of(iter(files[2:])) == "1970-01-01T00:00:00Z"
