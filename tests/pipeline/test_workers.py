@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 import operator
 import os
+import time
 from collections.abc import Callable
 from pathlib import Path
 from typing import Any
@@ -54,11 +55,15 @@ def test_one_worker_works_in_this_process() -> None:
     assert results == [os.getpid()] * 2
 
 
-def test_workers_have_ended_when_an_error_leaves_the_block() -> None:
+def test_workers_are_ended_when_an_error_leaves_the_block() -> None:
     pids: list[Any] = []
-    tasks = [task("one", os.getpid), task("two", os.getpid), task("fails", operator.truediv, 1.0, 0.0)]
+    long = 120.0  # seconds, more than the test has
+    work = [("one", os.getpid), ("two", os.getpid), ("fails", operator.truediv, 1.0, 0.0), ("sleeps", time.sleep, long)]
+    tasks = [task(name, function, *arguments) for name, function, *arguments in work]
+    began = time.monotonic()
     with pytest.raises(ZeroDivisionError, match="division"), Workers(2) as pool:
         pids.extend(result for _, result in pool.run(tasks))
+    assert time.monotonic() - began < long / 2.0
     assert pids
     assert [pid for pid in pids if Path(f"/proc/{pid}").exists()] == []
 
