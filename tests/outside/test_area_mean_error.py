@@ -57,7 +57,8 @@ def test_nine_observations_on_a_line_against_simulation(mean):
 )
 def test_the_error_of_the_box_mean_from_55_sites(noise_share, mean, expected):
     """Worked out for the design: 55 sites, 11 longitudes by 5 latitudes within 5 degrees, scales 15 by 3 degrees,
-    signal 12 m. The longitudes are not recorded; evenly spaced from 137E to 95W as here, the table holds within a fifth."""
+    signal 12 m. The longitudes are not recorded; evenly spaced from 137E to 95W as here,
+    the table holds within a fifth."""
     latitude, longitude = (
         axis.ravel() for axis in np.meshgrid([-5.0, -2.0, 0.0, 2.0, 5.0], np.linspace(137.0, 265.0, 11), indexing="ij")
     )
