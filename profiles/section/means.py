@@ -99,9 +99,7 @@ def join_moorings(means: Mapping[str, xr.Dataset]) -> xr.Dataset:
     aligned = [_aligned(part, times).assign_coords(mooring=name) for name, part in means.items()]
     # Positions stand along the moorings even where they are all the same, as on the equator.
     position = [name for name in ("latitude", "longitude") if all(name in part.coords for part in aligned)]
-    joined = xr.concat(
-        aligned, dim="mooring", join="exact", coords=position, compat="equals", combine_attrs="override"
-    )
+    joined = xr.concat(aligned, dim="mooring", join="exact", coords=position, compat="equals", combine_attrs="override")
     return describe(joined)
 
 
