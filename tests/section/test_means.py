@@ -10,7 +10,7 @@ import xarray as xr
 from profiles.config import MeansSettings
 from profiles.errors import DataError
 from profiles.section import daily_means, join_moorings, monthly_means
-from profiles.vocabulary import IsothermStatus, MeanStatus
+from profiles.vocabulary import Flag, IsothermStatus, MeanStatus
 
 NAN = np.nan
 
@@ -117,6 +117,17 @@ def test_the_share_of_questionable_inputs_is_carried():
 
 # --------------------------------------------------------------------------------------------------------------
 # Monthly
+
+
+@pytest.mark.parametrize(("allowed", "flag"), [(0.25, Flag.GOOD), (0.24, Flag.QUESTIONABLE)])
+def test_a_mean_is_questionable_only_above_the_stated_share(allowed, flag):
+    settings = MeansSettings(questionable_share=allowed)
+    doubtful = columns(six_hourly(4), [100] * 4, questionable=np.array([0, 0, 0.5, 0.5]))  # a quarter
+    assert daily_means(doubtful, settings)["isotherm_depth_qc"].item() == flag
+
+
+def test_a_mean_that_is_not_given_is_flagged_missing():
+    assert daily_means(columns(six_hourly(4), [100, NAN, NAN, NAN]))["isotherm_depth_qc"].item() == Flag.MISSING
 
 
 def test_monthly_mean_spread_and_error():
