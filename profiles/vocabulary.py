@@ -197,7 +197,7 @@ _CHAIN_VARIABLES = [
 
 _COLUMN_VARIABLES = [
     Variable("isotherm_depth", ("time",), "depth of the isotherm of in situ temperature", "m",
-             extra={"positive": "down", "ancillary_variables": "isotherm_depth_error isotherm_status"}),
+             extra={"positive": "down", "ancillary_variables": "isotherm_depth_error isotherm_status isotherm_depth_qc"}),
     Variable("isotherm_depth_error", ("time",), "standard error of isotherm_depth", "m", None, "float32", _QUALITY),
     Variable("isotherm_depth_error_independent", ("time",),
              "part of isotherm_depth_error that is independent from day to day", "m", None, "float32", _QUALITY),
@@ -219,6 +219,8 @@ _COLUMN_VARIABLES = [
              _QUALITY, _flag_attributes(LayerMeanStatus)),
     Variable("questionable_share", ("time",), "share of questionable values among the inputs", "1", None, "float32",
              _QUALITY),
+    Variable("isotherm_depth_qc", ("time",), "quality flag of the mean of isotherm_depth", None, "quality_flag", "int8",
+             _QUALITY, _flag_attributes((Flag.GOOD, Flag.QUESTIONABLE, Flag.MISSING))),
     Variable("isotherm_mean_status", ("time",), "why the mean of isotherm_depth is or is not given", None, "status_flag",
              "int8", _QUALITY, _flag_attributes(MeanStatus)),
     Variable("isotherm_day_count", ("time",), "number of daily means in the monthly mean of isotherm_depth", "1",

@@ -19,7 +19,7 @@ def check(
     quiet: Annotated[bool, typer.Option("--quiet", help="Print only what is wrong.")] = False,
     as_json: Annotated[bool, typer.Option("--json", help="Print one JSON document instead of text.")] = False,
 ) -> None:
-    """Say everything that is wrong with a configuration and its files, before any work.
+    """Say everything that is wrong, before any work.
 
     Every delivery is read once; nothing is written.
     """
@@ -56,8 +56,8 @@ def _print(findings: list[Finding], *, quiet: bool) -> None:
         return
     counts = {
         outcome: sum(finding.outcome == outcome for finding in findings)
-        for outcome in ("clean", "rows quarantined", "not usable")
+        for outcome in ("clean", "rows sorted", "rows quarantined", "not usable")
     }
     read, kept = sum(finding.rows_read for finding in findings), sum(finding.rows_kept for finding in findings)
-    typer.echo("; ".join(f"{count} deliveries {outcome}" for outcome, count in counts.items()))
+    typer.echo("deliveries: " + ", ".join(f"{count} {outcome}" for outcome, count in counts.items()))
     typer.echo(f"rows read {read} = kept {kept} + quarantined {read - kept}")

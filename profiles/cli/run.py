@@ -22,9 +22,10 @@ def run(
     quiet: Annotated[bool, typer.Option("--quiet", help="Print nothing but errors.")] = False,
     as_json: Annotated[bool, typer.Option("--json", help="Print one JSON document instead of text.")] = False,
 ) -> None:
-    """Do the whole job: ingest, quality control, columns, section, report.
+    """Do the whole job, from deliveries to the report.
 
-    What an earlier run finished in the same folder is kept where its inputs and settings are the same.
+    The stages are ingest, qc (quality control), column, section and report. What an earlier run finished in the same
+    folder is kept where its inputs and settings are the same.
     """
     with ending(as_json=as_json):
         from profiles import pipeline
@@ -69,12 +70,21 @@ def _summary(config: Config, outcome: Outcome) -> list[str]:
     lines = [
         f"{config.array.name}: {len(outcome.moorings)} of {len(config.moorings)} moorings used",
         f"rows read {rows['rows_read']} = kept {rows['rows_kept']} + quarantined {rows['rows_quarantined']}",
+        *_row_notes(rows),
         f"tasks computed {outcome.computed}, kept from an earlier run {outcome.kept}",
     ]
     if outcome.latest is not None:
         lines += [*_latest(config, outcome.latest), CAUTION]
     shown = outcome.out / "report.html" if "report" in outcome.stages else outcome.out
     return [*lines, f"see {shown}"]
+
+
+def _row_notes(rows: dict[str, int]) -> list[str]:
+    notes = {
+        "rows_quarantined": "rows were not understood: tables/quarantine.csv has each with its line and the reason",
+        "rows_reordered": "rows stood out of order and were sorted: tables/deliveries.csv says in which files",
+    }
+    return [f"{rows[name]} {note}" for name, note in notes.items() if rows[name]]
 
 
 def _latest(config: Config, latest: dict[str, float]) -> list[str]:

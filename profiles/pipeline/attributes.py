@@ -15,7 +15,7 @@ from profiles.config import Config
 from profiles.vocabulary import CAUTION
 
 KEYWORDS = "EARTH SCIENCE > OCEANS > OCEAN TEMPERATURE > THERMOCLINE"
-VOCABULARY = "CF Standard Name Table v83"
+VOCABULARY = "CF Standard Name Table v93"
 
 
 def global_attributes(

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import os
 import time
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import UTC, datetime
 from pathlib import Path
@@ -99,7 +99,7 @@ def run(
         store.make_folder(path)
     with store.folder_lock(folder.folders()[1]), Workers(workers or os.cpu_count() or 1) as pool:
         store.clear_leftovers(out)
-        outcome = _Run(config, folder, pool, progress or _unseen).through(until)
+        outcome = _Run(config, folder, pool, progress or (lambda event: None)).through(until)
     return outcome
 
 
@@ -122,8 +122,13 @@ class _Run:
     planned: set[tuple[str, str]] = field(default_factory=set)
     problems: list[Problem] = field(default_factory=list)
     seconds: dict[str, float] = field(default_factory=dict)
+    rows: dict[str, int] = field(default_factory=dict)
+    latest: dict[str, Any] | None = None
     computed: int = 0
     kept: int = 0
+
+    def __post_init__(self) -> None:
+        self.moorings: Sequence[Mooring] = self.config.moorings
 
     def through(self, until: str) -> Outcome:
         """Run the stages up to ``until`` and write the account."""
@@ -136,9 +141,6 @@ class _Run:
             "section": self._section,
             "report": self._report,
         }
-        self.moorings: Sequence[Mooring] = self.config.moorings
-        self.rows: dict[str, int] = {}
-        self.latest: dict[str, Any] | None = None
         for stage in done:
             before = time.perf_counter()
             work[stage]()
@@ -185,36 +187,39 @@ class _Run:
 
     def _do(self, stage: str, tasks: Sequence[Task], *, shown: bool = True) -> dict[str, Report]:
         """Do what has to be done of tasks that do not need one another; return the reports by name."""
-        progress: Progress = self.progress if shown else _unseen
         keys = {task.name: task.key(self.checksums) for task in tasks}
-        reports: dict[str, Report] = {}
+        self.planned |= {(stage, task.name) for task in tasks}
+        reports = self._kept(tasks, keys)
         ended = 0
-        waiting: list[Task] = []
-        for task in tasks:
-            self.planned.add((stage, task.name))
-            report = kept_report(task, self.folder.out, keys[task.name], self.checksums)
-            if report is None:
-                waiting.append(task)
-                continue
+        for name, report in reports.items():
             ended += 1
-            self.kept += 1
-            reports[task.name] = report
-            progress(Event(stage, task.name, ended, len(tasks), _outcome(report, "kept")))
-        for task, result in self.workers.run(waiting):
+            self._tell(Event(stage, name, ended, len(tasks), _outcome(report, "kept")), shown)
+        for task, result in self.workers.run([task for task in tasks if task.name not in reports]):
             ended += 1
             self.computed += 1
             if isinstance(result, ThermotiltError):
-                self._note_failure(task, result, tasks)
-                progress(Event(stage, task.name, ended, len(tasks), "failed"))
+                self._go_on_without(task, result)
+                self._tell(Event(stage, task.name, ended, len(tasks), "failed"), shown)
                 continue
             keep_report(task, self.folder.out, keys[task.name], result, self.checksums)
             reports[task.name] = result
-            progress(Event(stage, task.name, ended, len(tasks), _outcome(result, "computed")))
+            self._tell(Event(stage, task.name, ended, len(tasks), _outcome(result, "computed")), shown)
         return {task.name: reports[task.name] for task in tasks if task.name in reports}
 
-    def _note_failure(self, task: Task, error: ThermotiltError, tasks: Sequence[Task]) -> None:
-        """Go on without a mooring whose data is unfit; end where it is the only task."""
-        if len(tasks) == 1:
+    def _kept(self, tasks: Sequence[Task], keys: Mapping[str, str]) -> dict[str, Report]:
+        """Return the reports of the tasks that need not be done again."""
+        found = {task.name: kept_report(task, self.folder.out, keys[task.name], self.checksums) for task in tasks}
+        reports = {name: report for name, report in found.items() if report is not None}
+        self.kept += len(reports)
+        return reports
+
+    def _tell(self, event: Event, shown: bool) -> None:
+        if shown:
+            self.progress(event)
+
+    def _go_on_without(self, task: Task, error: ThermotiltError) -> None:
+        """Leave out a mooring whose data is unfit; where the task is not one mooring's, nothing can go on."""
+        if task.stage == "report" or task.name not in {mooring.id for mooring in self.moorings}:
             raise error
         self.problems.append(Problem(task.name, task.stage, str(error)))
 
@@ -236,17 +241,13 @@ class _Run:
                 forget(self.folder.out, stage, name)
 
 
-def _unseen(event: Event) -> None:
-    """Show nothing."""
-
-
 def _outcome(report: Report, usual: Any) -> Any:
     return usual if report.get("usable", True) else "failed"
 
 
 def _count_rows(reports: Iterable[Report]) -> dict[str, int]:
     """Add up the rows of all deliveries; a fault of ours where they do not add up."""
-    names = ("rows_read", "rows_kept", "rows_quarantined")
+    names = ("rows_read", "rows_kept", "rows_quarantined", "rows_reordered")
     rows = [row for report in reports for row in report["deliveries"]]
     total = {name: sum(row[name] for row in rows) for name in names}
     if total["rows_read"] != total["rows_kept"] + total["rows_quarantined"]:

@@ -124,7 +124,8 @@ def qc_task(config: Config, mooring: Mooring, folder: Folder) -> Task:
         arguments=(config, mooring, folder),
         inputs=(folder.delivered(mooring.id),),
         outputs=(folder.chain(mooring.id), *(folder.part(table, mooring.id) for table in TABLES["qc"])),
-        settings=config.qc.model_dump(mode="json") | {"array": config.array.model_dump(mode="json")},
+        settings=config.qc.model_dump(mode="json")
+        | {"array": config.array.model_dump(mode="json"), "created": _created(config, [mooring])},
     )
 
 
@@ -171,6 +172,7 @@ def column_task(config: Config, mooring: Mooring, folder: Folder) -> Task:
             "column": config.column.model_dump(mode="json"),
             "means": config.section.means.model_dump(mode="json"),
             "array": config.array.model_dump(mode="json"),
+            "created": _created(config, [mooring]),
         },
     )
 
@@ -217,8 +219,9 @@ def section_task(config: Config, moorings: Sequence[Mooring], folder: Folder) ->
         outputs=(folder.daily, folder.monthly, folder.section, folder.volume, folder.table(MONTHLY_TABLE)),
         settings={
             "section": config.section.model_dump(mode="json"),
-            "isotherm": config.column.isotherm,
+            "column": config.column.model_dump(mode="json"),
             "array": config.array.model_dump(mode="json"),
+            "created": _created(config, moorings),
         },
     )
 
@@ -333,7 +336,7 @@ def report_tasks(config: Config, moorings: Sequence[Mooring], folder: Folder) ->
             arguments=(config, tuple(moorings), folder),
             inputs=(folder.section, folder.volume, *array_figures, *mooring_figures, *tables),
             outputs=(folder.page,),
-            settings=config.model_dump(mode="json", exclude={"file"}),
+            settings=config.model_dump(mode="json", exclude={"file"}) | {"created": _created(config, moorings)},
         )
     ]
     return figures, page

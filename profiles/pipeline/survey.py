@@ -5,20 +5,22 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Literal
+from typing import Any, Literal
 
 from profiles.config import Config, Delivery, Mooring
 from profiles.errors import DataError, MachineError, RequestError
 from profiles.pipeline.stages import message_of
 
+SHOWN = 3  # rows that a finding quotes
+
 
 @dataclass(frozen=True)
 class Finding:
-    """What was found in one delivery: unusable, or usable with rows that were not understood, or nothing wrong."""
+    """What was found in one delivery: unusable, rows not understood or out of order, or nothing wrong."""
 
     mooring: str
     file: Path
-    outcome: Literal["clean", "rows quarantined", "not usable"]
+    outcome: Literal["clean", "rows sorted", "rows quarantined", "not usable"]
     rows_read: int
     rows_kept: int
     message: str
@@ -48,11 +50,17 @@ def _inspect(config: Config, mooring: Mooring, delivery: Delivery) -> Finding:
         )
     except (RequestError, DataError, MachineError) as error:
         return Finding(mooring.id, delivery.path, "not usable", 0, 0, message_of(error, config, delivery))
-    if not found.rows_quarantined:
-        return Finding(mooring.id, delivery.path, "clean", found.rows_read, found.rows_kept, "")
-    rows = found.quarantine
-    shown = "; ".join(
-        f"line {line}: {reason}" for line, reason in zip(rows["line"][:3], rows["reason"][:3], strict=True)
-    )
-    more = f"; and {len(rows) - 3} more" if len(rows) > 3 else ""
-    return Finding(mooring.id, delivery.path, "rows quarantined", found.rows_read, found.rows_kept, shown + more)
+    notes = _notes(found)
+    outcome: Any = "rows quarantined" if found.rows_quarantined else "rows sorted" if notes else "clean"
+    return Finding(mooring.id, delivery.path, outcome, found.rows_read, found.rows_kept, "; ".join(notes))
+
+
+def _notes(found: Any) -> list[str]:
+    """Say which rows were not understood, the first few of them by line, and how many stood out of order."""
+    rows = found.quarantine.head(SHOWN)
+    notes = [f"line {line}: {reason}" for line, reason in zip(rows["line"], rows["reason"], strict=True)]
+    if found.rows_quarantined > SHOWN:
+        notes.append(f"and {found.rows_quarantined - SHOWN} more")
+    if found.rows_reordered:
+        notes.append(f"{found.rows_reordered} rows are earlier than a row before them; they are sorted")
+    return notes

@@ -134,13 +134,13 @@ def _summaries(
     design = harmonic_design(year_fraction(records.time))
     present = np.isfinite(records.values[:, known])
     count = present.sum(axis=0)
-    projected = (
-        np.where(present.T[..., None], design, 0.0) / np.maximum(count, 1)[:, None, None]
-    )  # (site, time, harmonic)
+    # (site, time, harmonic)
+    projected = np.where(present.T[..., None], design, 0.0) / np.maximum(count, 1)[:, None, None]
     residual = np.where(present, records.values[:, known] - design @ atlas_sites[known].T, 0.0)
     departures = np.einsum("sth,ts->sh", projected, residual).ravel()
     blocks = np.einsum("sth,tk->shk", projected, design)
-    return np.asarray(departures, dtype=np.float64), _block_diagonal(blocks), _record_error(records, known, projected, settings)
+    errors = _record_error(records, known, projected, settings)
+    return np.asarray(departures, dtype=np.float64), _block_diagonal(blocks), errors
 
 
 def _record_error(records: Records, known: NDArray[np.intp], projected: Array, settings: SectionSettings) -> Array:

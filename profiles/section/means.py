@@ -11,7 +11,7 @@ import xarray as xr
 
 from profiles.config import MeansSettings
 from profiles.errors import DataError
-from profiles.vocabulary import IsothermStatus, MeanStatus, describe
+from profiles.vocabulary import Flag, IsothermStatus, MeanStatus, describe
 
 _CENSORED = (IsothermStatus.ABOVE_CHAIN, IsothermStatus.BELOW_CHAIN)
 _INDEPENDENT = "isotherm_depth_error_independent"
@@ -31,8 +31,9 @@ def daily_means(columns: xr.Dataset, settings: MeansSettings | None = None) -> x
     Returns
     -------
     xarray.Dataset
-        On ``time``, every day from the first to the last. The isotherm's ``isotherm_mean_status`` says why a mean is
-        not given; ``isotherm_status`` is the commonest of the day.
+        On ``time``, every day from the first to the last. ``isotherm_mean_status`` says why a mean of the isotherm is
+        not given, ``isotherm_depth_qc`` flags one of whose inputs too many are questionable, and ``isotherm_status`` is
+        the commonest of the day.
     """
     settings = settings or MeansSettings()
     table = _table(columns)
@@ -48,6 +49,7 @@ def daily_means(columns: xr.Dataset, settings: MeansSettings | None = None) -> x
     count = grouped["isotherm_depth"].count().reindex(index, fill_value=0)
     censored = _censored(table).groupby(days).sum().reindex(index, fill_value=0)
     means["isotherm_mean_status"] = _mean_status(count, censored, least, settings.censored_share)
+    means["isotherm_depth_qc"] = _flag(means, settings.questionable_share)
     return _labelled(means, index + pd.Timedelta("12h"), columns)
 
 
@@ -82,6 +84,7 @@ def monthly_means(daily: xr.Dataset, settings: MeansSettings | None = None) -> x
     means["isotherm_day_count"] = count
     means["isotherm_day_spread"] = grouped["isotherm_depth"].std().reindex(index)
     middle = index.start_time + (index.end_time.ceil("D") - index.start_time) / 2
+    means["isotherm_depth_qc"] = _flag(means, settings.questionable_share)
     return _labelled(means, middle, daily)
 
 
@@ -99,9 +102,7 @@ def join_moorings(means: Mapping[str, xr.Dataset]) -> xr.Dataset:
     aligned = [_aligned(part, times).assign_coords(mooring=name) for name, part in means.items()]
     # Positions stand along the moorings even where they are all the same, as on the equator.
     position = [name for name in ("latitude", "longitude") if all(name in part.coords for part in aligned)]
-    joined = xr.concat(
-        aligned, dim="mooring", join="exact", coords=position, compat="equals", combine_attrs="override"
-    )
+    joined = xr.concat(aligned, dim="mooring", join="exact", coords=position, compat="equals", combine_attrs="override")
     return describe(joined)
 
 
@@ -109,6 +110,7 @@ def join_moorings(means: Mapping[str, xr.Dataset]) -> xr.Dataset:
 _NOTHING = {
     "isotherm_status": int(IsothermStatus.TOO_FEW_SENSORS),
     "isotherm_mean_status": int(MeanStatus.TOO_FEW_VALUES),
+    "isotherm_depth_qc": int(Flag.MISSING),
     "isotherm_day_count": 0,
     "deployment": 0,
 }
@@ -164,6 +166,14 @@ def _mean_status(
     status[count < least] = int(MeanStatus.TOO_FEW_VALUES)
     status[censored > censored_share * (count + censored)] = int(MeanStatus.CENSORED)
     return status
+
+
+def _flag(means: pd.DataFrame, questionable_share: float) -> pd.Series[int]:
+    """Return the flag of each mean: missing, questionable where too much of its input is, else good."""
+    flag = pd.Series(int(Flag.GOOD), index=means.index)
+    flag[means["questionable_share"] > questionable_share] = int(Flag.QUESTIONABLE)
+    flag[means["isotherm_mean_status"] != int(MeanStatus.GIVEN)] = int(Flag.MISSING)
+    return flag
 
 
 def _labelled(means: pd.DataFrame, times: pd.DatetimeIndex, source: xr.Dataset) -> xr.Dataset:

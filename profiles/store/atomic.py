@@ -119,7 +119,7 @@ def make_folder(path: Path) -> Path:
 
 def clear_leftovers(folder: Path) -> None:
     """Remove the unfinished files of a run that was cut off, below ``folder``."""
-    for leftover in folder.rglob(f"{_LEFTOVER}*"):
+    for leftover in list(folder.rglob(f"{_LEFTOVER}*")):
         leftover.unlink(missing_ok=True)
 
 

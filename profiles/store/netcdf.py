@@ -16,6 +16,11 @@ from profiles.vocabulary import VARIABLES
 
 TIME_BLOCK = 8192  # samples of one block: 14 sensors of float32 are half a megabyte
 TIME_UNITS = "seconds since 1970-01-01T00:00:00Z"
+TIME_ENCODING = {
+    "units": TIME_UNITS,
+    "calendar": "standard",
+    "units_metadata": "leap_seconds: none",  # CF-1.12 (from memory): elapsed seconds as datetime64 counts them
+}
 CONVENTIONS = "CF-1.11, ACDD-1.3"
 _FILL: Mapping[str, Any] = {
     "f": np.float32(9.96921e36),
@@ -83,12 +88,12 @@ def write_blocks(path: Path, blocks: Iterable[xr.Dataset], attributes: Mapping[s
 def _define(file: netCDF4.Dataset, block: xr.Dataset) -> None:
     for dim, size in block.sizes.items():
         file.createDimension(str(dim), None if dim == "time" else size)
-    scalars = [str(name) for name in block.coords if not block[name].dims]
+    auxiliary = [block[name] for name in block.coords if name not in block.dims or _is_text(block[name])]
     for name in [*block.coords, *block.data_vars]:
-        _define_variable(file, block[name], scalars)
+        _define_variable(file, block[name], auxiliary)
 
 
-def _define_variable(file: netCDF4.Dataset, data: xr.DataArray, scalars: list[str]) -> None:
+def _define_variable(file: netCDF4.Dataset, data: xr.DataArray, auxiliary: list[xr.DataArray]) -> None:
     name = str(data.name)
     dtype = _storage_type(data)
     # The first block is as long as any, so a record shorter than a block is one chunk of its own length.
@@ -106,16 +111,22 @@ def _define_variable(file: netCDF4.Dataset, data: xr.DataArray, scalars: list[st
     )
     attributes = {key: value for key, value in data.attrs.items() if value is not None}
     if np.issubdtype(data.dtype, np.datetime64):
-        attributes |= {"units": TIME_UNITS, "calendar": "standard"}
+        attributes |= TIME_ENCODING
     if name not in data.dims:
         attributes.pop("axis", None)  # CF-1.11, section 5: only a coordinate variable, or a scalar one, has an axis
-    if name not in data.coords and scalars:
-        attributes["coordinates"] = " ".join(scalars)
+    # CF-1.11, sections 5 and 6.1: what is no numeric variable of its own dimension is named by those it goes with.
+    belonging = [str(other.name) for other in auxiliary if set(other.dims) <= set(data.dims)]
+    if name not in data.coords and belonging:
+        attributes["coordinates"] = " ".join(belonging)
     variable.setncatts(attributes)
 
 
+def _is_text(data: xr.DataArray) -> bool:
+    return data.dtype.kind in "OUT"
+
+
 def _storage_type(data: xr.DataArray) -> Any:
-    if data.dtype.kind in "OUT":
+    if _is_text(data):
         return str
     if np.issubdtype(data.dtype, np.datetime64):
         return np.dtype("float64")

@@ -11,8 +11,8 @@ from profiles.store.atomic import replacing
 
 def write_table(path: Path, table: pd.DataFrame) -> None:
     """Write a table without its index, whole or not at all."""
-    with replacing(path) as temporary:
-        table.to_csv(temporary, index=False, float_format="%.6g", date_format="%Y-%m-%dT%H:%M:%SZ", lineterminator="\n")
+    with replacing(path) as temporary, temporary.open("w", encoding="utf-8", newline="") as stream:
+        table.to_csv(stream, index=False, float_format="%.6g", date_format="%Y-%m-%dT%H:%M:%SZ", lineterminator="\n")
 
 
 def read_table(path: Path) -> pd.DataFrame:

@@ -19,9 +19,7 @@ def test_annual_profile_gives_the_atlas_back_at_its_own_points() -> None:
 def test_annual_profile_takes_the_mean_of_the_four_points_around_a_corner() -> None:
     # 0N 200E is the corner of four 1-degree points: equal weights.
     around = annual_mean()["temperature"].sel(latitude=[-0.5, 0.5], longitude=[199.5, 200.5])
-    np.testing.assert_allclose(
-        annual_profile(0.0, 200.0)[0], around.mean(("latitude", "longitude")), rtol=0, atol=1e-5
-    )
+    np.testing.assert_allclose(annual_profile(0.0, 200.0)[0], around.mean(("latitude", "longitude")), rtol=0, atol=1e-5)
 
 
 def test_annual_profile_holds_water_on_land() -> None:

@@ -28,10 +28,12 @@ def test_both_parts_of_the_error_by_hand(make_profile):
     assert float(error["isotherm_depth_error"]) == pytest.approx(1.113194, abs=1e-6)
 
 
-def test_the_bend_between_sensors_adds_to_the_persistent_part(make_profile):
-    # Gradients -0.05, -0.5 and -0.1 K/m. T'' at 100 m: 2 (-0.5 + 0.05) / 40 = -0.0225; at 120 m: 2 (0.4) / 40 = 0.02.
-    # f = 0.5, dz/dT = 2: the error of the chord is 0.5 * 0.25 * 20^2 * 0.0225 * 2 = 2.25 m.
-    profile = make_profile([26, 25, 15, 13], [80.0, 100.0, 120.0, 140.0])
+@pytest.mark.parametrize("temperatures", [(26, 25, 15, 13), (27, 25, 15, 14)])
+def test_the_larger_bend_beside_the_bracket_adds_to_the_persistent_part(make_profile, temperatures):
+    # Gradients -0.05, -0.5 and -0.1 K/m. T'' at 100 m: 2 (-0.5 + 0.05) / 40 = -0.0225; at 120 m: 2 (0.4) / 40 = 0.02;
+    # in the other profile -0.02 and 0.0225. f = 0.5, dz/dT = 2: the error of the chord is
+    # 0.5 * 0.25 * 20^2 * 0.0225 * 2 = 2.25 m.
+    profile = make_profile(temperatures, [80.0, 100.0, 120.0, 140.0])
     error = isotherm_depth_error(profile, accuracy(profile, 0, 0, 0, 0), noise=0.0, depth_accuracy=0.0)
     assert float(error[PERSISTENT]) == pytest.approx(2.25)
     assert float(error[INDEPENDENT]) == 0.0

@@ -75,6 +75,10 @@ def test_a_chain_that_ends_above_the_reference_has_none(make_profile):
     assert one(mixed_layer_depth(make_profile([29, 28], [1.0, 5.0])))[1] is MixedLayerStatus.NO_REFERENCE
 
 
+def test_a_chain_that_ends_at_the_reference_is_mixed_to_its_end(make_profile):
+    assert one(mixed_layer_depth(make_profile([29, 28], [1.0, 10.0])))[1] is MixedLayerStatus.BELOW_CHAIN
+
+
 @pytest.mark.parametrize("missing", [0, 2, 4])
 def test_a_missing_sensor_is_bridged(make_profile, missing):
     # Without 30 m the line runs from 10 m, 29.0, to 50 m, 28.0: 28.8 at 18 m; the others do not matter.

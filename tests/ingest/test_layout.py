@@ -56,6 +56,7 @@ def test_defaults_are_those_the_examples_state(layout_of):
         ("delimiter = ';;'\n" + WIDE, "delimiter: expected one character"),
         ("decimal = ','\n" + WIDE, "delimiter and decimal are the same"),
         ("names_row = 2\n" + WIDE, "expected names_row among the header_rows"),
+        ("header_rows = '1'\n" + WIDE, "header_rows: Input should be a valid integer; found '1'"),
     ],
 )
 def test_a_wrong_layout_says_where_and_what(layout_of, wrong, message):

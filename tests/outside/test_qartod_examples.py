@@ -61,9 +61,7 @@ def test_spike_rule_with_the_example_thresholds():
     for n in range(2, values.size):
         departure = abs(values[n - 1] - (values[n - 2] + values[n]) / 2)
         expected.append(4 if departure > 8.0 else 3 if departure > 3.0 else 1)
-    outcome = spike_outcome(
-        values[:, None], every_sample_linked(values.size), threshold_low=3.0, threshold_high=8.0
-    )
+    outcome = spike_outcome(values[:, None], every_sample_linked(values.size), threshold_low=3.0, threshold_high=8.0)
     assert {1, 3, 4} <= set(expected)
     np.testing.assert_array_equal(outcome[:, 0], [2, *expected, 2])
 

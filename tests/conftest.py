@@ -1,0 +1,81 @@
+"""A small array for the rooms that run the whole job: three moorings, one of each layout, a year and a half."""
+
+from __future__ import annotations
+
+import shutil
+from collections.abc import Callable
+from pathlib import Path
+
+import pytest
+
+from profiles.config import load_config
+from profiles.drill.array import SITES, Site
+from profiles.drill.demo import days, delivery_path, plant_over_array, simulated_chains, write_deliveries
+from profiles.drill.ocean import Ocean
+from profiles.drill.truth import site_columns
+from profiles.pipeline import run
+
+ROOT = Path(__file__).parents[1]
+SEED = 5
+LAYOUTS = {"halcyon": "halcyon_wide", "marlin": "marlin_long", "frigate": "frigate_netcdf"}
+SMALL = tuple(site for site in SITES if site.id in ("TB-07", "TB-18", "TB-37"))
+
+
+def entry(site: Site) -> str:
+    return f"""
+[[moorings]]
+id = "{site.id}"
+latitude = {site.latitude}
+longitude = {site.longitude}
+deliveries = [{{ path = "{delivery_path(site)}", layout = "layouts/{LAYOUTS[site.institute]}.toml" }}]
+"""
+
+
+@pytest.fixture(scope="session")
+def small_array(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """A folder with ``array.toml``, its layouts, its deliveries and ``damaged.csv``; not to be changed."""
+    folder = tmp_path_factory.mktemp("small")
+    ocean = Ocean.simulate(days("2031-01-01", "2032-06-30"), SEED)
+    _, whole = site_columns(ocean, SMALL, SEED)
+    chains = list(simulated_chains(ocean, SMALL, whole, SEED))
+    chains, _ = plant_over_array(chains, SMALL, {"spike": 3, "stuck value": 2}, SEED)
+    write_deliveries(folder, SMALL, chains, SEED).to_csv(folder / "damaged.csv", index=False)
+    shutil.copytree(ROOT / "config" / "layouts", folder / "layouts")
+    head = '[array]\nname = "Small Array"\n'
+    (folder / "array.toml").write_text(head + "".join(entry(site) for site in SMALL), encoding="utf-8")
+    return folder
+
+
+@pytest.fixture
+def array(small_array: Path, tmp_path: Path) -> Path:
+    """A copy of the small array, times of change included, that a test may change."""
+    return shutil.copytree(small_array, tmp_path / "array")
+
+
+@pytest.fixture(scope="session")
+def finished(small_array: Path, tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """The folder of an uninterrupted run over the small array with one worker; not to be changed."""
+    out = tmp_path_factory.mktemp("finished") / "out"
+    run(load_config(small_array / "array.toml"), out, workers=1)
+    return out
+
+
+@pytest.fixture
+def out(finished: Path, tmp_path: Path) -> Path:
+    """A copy of the finished folder that a test may change."""
+    return shutil.copytree(finished, tmp_path / "out")
+
+
+@pytest.fixture(scope="session")
+def contents() -> Callable[[Path], dict[str, bytes]]:
+    """Return what reads every file of a run's folder, by its name in it, save the account and the records."""
+
+    def read(folder: Path) -> dict[str, bytes]:
+        files = {path.relative_to(folder).as_posix(): path for path in folder.rglob("*") if path.is_file()}
+        return {name: path.read_bytes() for name, path in sorted(files.items()) if _is_result(name)}
+
+    return read
+
+
+def _is_result(name: str) -> bool:
+    return name != "run.json" and not name.startswith((".stages/records/", ".stages/ingest/lock"))
