@@ -75,7 +75,7 @@ class ClimatologySettings(Settings):
         15.0, description="m; standard deviation of the vertical displacement of the atlas profile (ours)"
     )
     floor_shallow: Positive = Field(
-        0.75, description="°C; standard deviation at the surface, displacement aside (ours)"
+        1.25, description="°C; standard deviation at the surface, displacement aside (eastern Pacific, from memory)"
     )
     floor_deep: Positive = Field(0.3, description="°C; the same at 500 m and below, linear between (ours)")
 

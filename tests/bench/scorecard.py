@@ -5,7 +5,7 @@
 
 With ``--seeds`` each ocean is simulated, delivered, run and scored. With ``--columns-only`` the isotherm depths of the
 sites are taken from the ocean with errors as stated, and only what follows from columns is scored: tilt, volume,
-section. With ``--deliveries`` the one configuration (TOML) in that folder is run, and scored against a truth that
+section. With ``--deliveries`` the configuration ``array.toml`` of that folder is run, and scored against a truth that
 somebody else made; the format of the truth is that of ``data_demo/README.md``.
 
 Every figure is the mean over the seeds, with its standard error. An interval is a claim only if it is both right and
@@ -69,7 +69,9 @@ def interval(error: np.ndarray, stated: np.ndarray) -> dict[str, float]:
 
 
 def score_section(section: xr.Dataset, volume: xr.Dataset, truth: xr.Dataset) -> dict[str, dict[str, float]]:
-    """Score tilt, volume and equatorial section, month by month."""
+    """Score tilt, volume and equatorial section in the months that both have."""
+    section, volume, truth = (by_month(dataset) for dataset in (section, volume, truth))
+    section, volume, truth = xr.align(section, volume, truth, join="inner", exclude=["latitude", "longitude", "region"])
     scores = {}
     months = pd.DatetimeIndex(section["time"].values)
     slope_error = section["thermocline_slope"].values - truth["thermocline_slope"].values
@@ -89,6 +91,11 @@ def score_section(section: xr.Dataset, volume: xr.Dataset, truth: xr.Dataset) ->
         inside = (longitude >= west) & (longitude < east)
         scores[f"equatorial depth, {part}"] = interval(error[:, inside], stated[:, inside])
     return scores
+
+
+def by_month(dataset: xr.Dataset) -> xr.Dataset:
+    """Return the dataset with each month stamped at its start, whatever day it was stamped at."""
+    return dataset.assign_coords(time=dataset["time"].values.astype("datetime64[M]").astype("datetime64[ns]"))
 
 
 def by_season(times: pd.DatetimeIndex) -> Iterator[tuple[str, np.ndarray]]:
@@ -158,7 +165,7 @@ def score_faults(out: Path, planted: pd.DataFrame) -> tuple[pd.DataFrame, dict[s
     An event is caught where at least half of its values are flagged on the right sensor and the table of faults has an
     entry of its kind there at that time.
     """
-    listed = pd.read_csv(out / "tables" / "faults.csv", parse_dates=["start", "end"])
+    listed = read_events(out / "tables" / "faults.csv")
     rows: list[dict[str, Any]] = []
     counts = dict.fromkeys(("good", *map(str, FLAGGED)), 0)
     for path in sorted((out / "chains").glob("*.nc")):
@@ -177,6 +184,12 @@ def score_faults(out: Path, planted: pd.DataFrame) -> tuple[pd.DataFrame, dict[s
             counts[str(flag)] += int((flags.values[sound] == flag).sum())
     shares = {f"good values flagged {flag}": counts[str(flag)] / counts["good"] for flag in FLAGGED}
     return pd.DataFrame(rows), shares
+
+
+def read_events(path: Path) -> pd.DataFrame:
+    """Read a table of faults, planted or listed; its times become UTC without a zone, as in the chains."""
+    table = pd.read_csv(path, parse_dates=["start", "end"])
+    return table.assign(**{name: table[name].dt.tz_localize(None) for name in ("start", "end")})
 
 
 def event_place(event: Any, flags: xr.DataArray) -> tuple[np.ndarray, np.ndarray]:
@@ -215,7 +228,7 @@ def score_run(out: Path, truth: Path) -> Score:
     with xr.open_dataset(out / "section.nc") as section, xr.open_dataset(out / "volume.nc") as volume:
         section, volume = section.load(), volume.load()
     table = column_table(out, sites)
-    planted = pd.read_csv(truth / "faults.csv", parse_dates=["start", "end"])
+    planted = read_events(truth / "faults.csv")
     events, flagged = score_faults(out, planted)
     statuses = pd.crosstab(table["true"].map(status_name), table["given"].map(status_name))
     return Score(score_columns(table) | score_section(section, volume, array), events, flagged, statuses)
@@ -227,11 +240,12 @@ def status_name(status: int) -> str:
 
 
 def score_deliveries(deliveries: Path, truth: Path, workers: int) -> Score:
-    """Run the one configuration in a folder and score it."""
+    """Run the configuration ``array.toml`` of a folder, or the only one in it, and score it."""
     from profiles import pipeline
     from profiles.config import load_config
 
-    (config,) = deliveries.glob("*.toml")
+    named = deliveries / "array.toml"
+    (config,) = [named] if named.is_file() else deliveries.glob("*.toml")
     with tempfile.TemporaryDirectory() as scratch:
         out = Path(scratch) / "out"
         pipeline.run(load_config(config), out, until="section", workers=workers)
