@@ -18,7 +18,9 @@ from profiles.drill.ocean import Columns
 Floats = NDArray[np.float64]
 
 REFERENCE_DEPTH = 300.0  # m; where the rise is stated
-RISE = 3.0  # m at the reference depth, in the undercurrent's mean flow (ours: 0 to 10 m, rms error as FACTS E)
+RISE = (
+    3.0  # m at the reference depth, in the undercurrent's mean flow (ours: 0 to 10 m, rms error as McCarty et al. 1997)
+)
 CORE_LONGITUDE = 225.0  # degrees east; where the undercurrent is strongest, about 140W to 130W (from memory)
 CORE_WIDTH_WEST, CORE_WIDTH_EAST = 50.0, 60.0  # degrees of longitude, e-folding of the Gaussian (ours)
 CORE_HALF_WIDTH = 1.8  # degrees of latitude, e-folding of the Gaussian (from memory: confined to within 2 degrees)

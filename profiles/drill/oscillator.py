@@ -28,12 +28,12 @@ class Oscillator:
     recharge: Floats
     warmth: Floats
 
-    PERIOD = 39.0 * 30.4  # days (FACTS H: fits to observations give 37-41 months, from memory)
+    PERIOD = 39.0 * 30.4  # days (fits to observations give 37-41 months, from memory)
     DAMPING = 20.0 * 30.4  # days, e-folding (the same fits: 24-25 months; a little less for a lead of 6-7 months)
     SKEW = 0.34  # of the exponential: skewness 1.09, of which weather and waves leave 0.5 to 0.8 (0.8 from memory)
     RECHARGE_SD = 6.5  # m on the equator at 180E
     EAST_SD, WEST_SD = 14.5, 9.5  # m at the eastern and western extremes of the tilt
-    NODE = 192.0  # degrees east (FACTS C3: date line to 160W, from memory)
+    NODE = 192.0  # degrees east (date line to 160W, from memory)
     WEST_EXTREME, EAST_EXTREME = 150.0, 258.0  # degrees east
     EAST_WIDTH, WEST_WIDTH, RECHARGE_WIDTH = 4.5, 10.0, 11.0  # degrees of latitude, e-folding of Gaussians
     SURFACE_SD = 1.05  # °C at the eastern extreme, boreal winter and summer together (from memory: 0.9 in Nino-3)

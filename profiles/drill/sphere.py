@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-EARTH_RADIUS = 6.371e6  # m; the sphere of the volume's check values (FACTS C2)
+EARTH_RADIUS = 6.371e6  # m; the sphere of the volume's check values
 METRES_PER_DEGREE = EARTH_RADIUS * np.pi / 180.0  # of longitude, on the equator
 
 

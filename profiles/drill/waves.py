@@ -34,7 +34,7 @@ class EastwardWaves:
 
     BAND, REST = (60.0, 75.0), (30.0, 180.0)  # days; peak (Kessler et al. 1995) and skirt (ours)
     SPEED, SPEED_SD = 2.4, 0.12  # m s-1 (the same; spread ours, altimetry gives 2.26 to 2.82)
-    RADIUS = 2.9  # degrees of latitude (FACTS G: sqrt(c/beta), 324 km at 2.4 m s-1)
+    RADIUS = 2.9  # degrees of latitude (sqrt(c/beta), 324 km at 2.4 m s-1)
     FORCED = (145.0, 190.0)  # degrees east between which they grow (Kessler et al. 1995: west of the date line)
     BEFORE = 0.2  # share of the amplitude west of that (ours)
     SD = 7.5  # m where grown (ours)
@@ -62,7 +62,7 @@ class WestwardWaves:
     opposite: Lines
 
     PERIODS = (100.0, 400.0)  # days (ours)
-    SPEED = (0.75, 0.95)  # m s-1 (FACTS G: a third of the Kelvin speed, 0.8-0.9)
+    SPEED = (0.75, 0.95)  # m s-1 (a third of the Kelvin speed, 0.8-0.9)
     MAXIMUM = 4.0  # degrees of latitude (theory: sqrt(3/2) radii and more)
     SD = 8.0  # m there (ours)
 

@@ -222,9 +222,7 @@ def mean_checks(seeds: list[int]) -> Iterator[Check]:
         [companion(seed).isotherm_depth(0.0 * longitude, longitude).mean(axis=1) for seed in seeds], axis=0
     )
     drop = np.polyfit(longitude * METRES_PER_DEGREE / 1e6, section, 1)[0]
-    yield Check(
-        "slope 165E-95W on the equator, m per 1000 km", drop, -14.0, -9.0, "-10.8 to -11.6 (FACTS G, from memory)"
-    )
+    yield Check("slope 165E-95W on the equator, m per 1000 km", drop, -14.0, -9.0, "-10.8 to -11.6 (from memory)")
 
 
 def equatorial_checks(seeds: list[int], longitude: float) -> Iterator[Check]:

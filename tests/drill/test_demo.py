@@ -138,7 +138,7 @@ def test_kelvin_delivery_holds_what_was_simulated(folder: Path, simulated: dict[
 def test_kelvin_delivery_names_its_sensors_by_pressure(folder: Path) -> None:
     with gzip.open(folder / delivery_path(KELVIN), "rt", encoding="utf-8") as stream:
         names = stream.read().splitlines()[2].split("\t")
-    # FACTS E, computed with gsw: 300 dbar are 298.1 m and 500 dbar 496.7 m at the equator, so 1.0063 and 1.0066 dbar/m.
+    # Computed with gsw: 300 dbar are 298.1 m and 500 dbar 496.7 m at the equator, so 1.0063 and 1.0066 dbar/m.
     assert names[:3] == ["year", "day", "P1.0"]
     assert names[-2:] == ["P301.9", "P503.4"]
 
@@ -302,7 +302,7 @@ def test_truth_of_the_array_agrees_with_that_of_its_sites(folder: Path) -> None:
 
 def test_truth_of_the_array_is_an_ordinary_pacific(folder: Path) -> None:
     with xr.open_dataset(folder / "truth" / "array.nc") as array:
-        # Common practice, no source: deep in the west, shallow in the east. About 23e14 m3 (FACTS C2, from memory).
+        # Common practice, no source: deep in the west, shallow in the east. About 23e14 m3 (from memory).
         assert array.sizes == {"time": 12, "latitude": 10, "longitude": 160, "region": 3}
         assert (array["thermocline_slope"] < -5.0).all()
         assert array["warm_water_volume"].sel(region="total").mean() == pytest.approx(23e14, rel=0.15)

@@ -178,7 +178,7 @@ def test_fill_values_stand_instead_of_the_temperature() -> None:
         event, _, after = one_event("fill value", seed)
         np.testing.assert_array_equal(window(after, event), np.float32(event.size))
         sizes.add(event.size)
-    # The list of FACTS I.
+    # The kinds seen in delivered records (mostly from memory).
     assert sizes == {-9.999, -99.0, 99.99, 1e35}
 
 
@@ -273,7 +273,7 @@ def test_mooring_adrift_changes_all_depths_together_and_leaves_its_place() -> No
     assert 0.6 < change[-1, 0] / event.size <= 1.001
     away = np.hypot(after["delivered_latitude"], after["delivered_longitude"] - 214.0)
     inside = (after["time"] > event.start) & (after["time"] <= event.end)
-    # The first value is still in its place; then 0.4 degrees a day, where a watch circle is a few km (FACTS A2).
+    # The first value is still in its place; then 0.4 degrees a day, where a watch circle is a few km (from memory).
     assert (away.where(inside, drop=True) > 0.39).all()
     assert (away.where(~inside, drop=True) == 0.0).all()
 

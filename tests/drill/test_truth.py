@@ -26,7 +26,7 @@ def test_cell_without_height_has_no_area() -> None:
 
 
 def test_volume_of_one_metre_is_the_area_of_the_box() -> None:
-    # FACTS C2, computed for the sphere of 6371 km: box 1.9758e13 m2, west 1.0496e13, east 0.9261e13.
+    # Computed for the sphere of 6371 km: box 1.9758e13 m2, west 1.0496e13, east 0.9261e13.
     volume = volumes(uniform(1.0), ALL_SEA)
     assert volume["total"][0] == pytest.approx(1.9758e13, rel=5e-5)
     assert volume["west"][0] == pytest.approx(1.0496e13, rel=5e-5)

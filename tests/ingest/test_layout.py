@@ -12,7 +12,12 @@ WIDE = 'kind = "wide"\n[time]\ncolumn = "date"\n[depth]\npattern = "T_{depth}m"\
 
 @pytest.mark.parametrize(
     ("name", "model"),
-    [("halcyon_wide", WideLayout), ("marlin_long", LongLayout), ("frigate_netcdf", NetcdfLayout), ("shearwater_wide", WideLayout)],
+    [
+        ("halcyon_wide", WideLayout),
+        ("marlin_long", LongLayout),
+        ("frigate_netcdf", NetcdfLayout),
+        ("shearwater_wide", WideLayout),
+    ],
 )
 def test_the_example_layouts_load(name, model):
     assert isinstance(load_layout(LAYOUTS / f"{name}.toml"), model)
