@@ -228,7 +228,7 @@ class Fault:
 
 _SENSOR_AND_PRESSURE: tuple[Touched, ...] = ("temperature", "pressure")
 
-#: What can be planted, by name. Durations and sizes are ours; the kinds are those seen in delivered records (from memory).
+#: What can be planted, by name. Durations and sizes are ours; the kinds are those that deliveries show (from memory).
 CATALOGUE: Mapping[str, Fault] = {
     # One sensor's temperature
     "spike": Fault("spike", on_temperature(kernels.added), samples=(1, 1), span=(3.0, 12.0)),
