@@ -9,26 +9,16 @@ from pathlib import Path
 import pytest
 
 from profiles.config import load_config
-from profiles.drill.array import SITES, Site
-from profiles.drill.demo import days, delivery_path, plant_over_array, simulated_chains, write_deliveries
+from profiles.drill.array import SITES
+from profiles.drill.configuration import configuration_text
+from profiles.drill.demo import days, simulated_chains, write_configuration, write_deliveries
 from profiles.drill.ocean import Ocean
+from profiles.drill.planting import plant_over_array
 from profiles.drill.truth import site_columns
 from profiles.pipeline import run
 
-ROOT = Path(__file__).parents[1]
 SEED = 5
-LAYOUTS = {"halcyon": "halcyon_wide", "marlin": "marlin_long", "frigate": "frigate_netcdf"}
-SMALL = tuple(site for site in SITES if site.id in ("TB-07", "TB-18", "TB-37"))
-
-
-def entry(site: Site) -> str:
-    return f"""
-[[moorings]]
-id = "{site.id}"
-latitude = {site.latitude}
-longitude = {site.longitude}
-deliveries = [{{ path = "{delivery_path(site)}", layout = "layouts/{LAYOUTS[site.institute]}.toml" }}]
-"""
+SMALL = tuple(site for site in SITES if site.id in ("TB-07", "TB-18", "TB-28"))
 
 
 @pytest.fixture(scope="session")
@@ -36,13 +26,11 @@ def small_array(tmp_path_factory: pytest.TempPathFactory) -> Path:
     """A folder with ``array.toml``, its layouts, its deliveries and ``damaged.csv``; not to be changed."""
     folder = tmp_path_factory.mktemp("small")
     ocean = Ocean.simulate(days("2031-01-01", "2032-06-30"), SEED)
-    _, whole = site_columns(ocean, SMALL, SEED)
+    _, whole = site_columns(ocean, SMALL)
     chains = list(simulated_chains(ocean, SMALL, whole, SEED))
     chains, _ = plant_over_array(chains, SMALL, {"spike": 3, "stuck value": 2}, SEED)
     write_deliveries(folder, SMALL, chains, SEED).to_csv(folder / "damaged.csv", index=False)
-    shutil.copytree(ROOT / "config" / "layouts", folder / "layouts")
-    head = '[array]\nname = "Small Array"\n'
-    (folder / "array.toml").write_text(head + "".join(entry(site) for site in SMALL), encoding="utf-8")
+    write_configuration(folder, "array.toml", configuration_text(SMALL))
     return folder
 
 

@@ -90,7 +90,7 @@ def repeat_depth_in_other_words(array: Path) -> None:
 
 
 def misspell_layout(array: Path) -> None:
-    edit(array / "layouts" / "halcyon_wide.toml", "delimiter =", "delimeter =")
+    edit(array / "layouts" / "halcyon_wide.toml", "comment =", "coment =")
 
 
 def remove_layout(array: Path) -> None:
@@ -98,7 +98,7 @@ def remove_layout(array: Path) -> None:
 
 
 def deliver_another_site(array: Path) -> None:
-    edit(array / "array.toml", WIDE, "deliveries/frigate/TB-37.nc")
+    edit(array / "array.toml", WIDE, "deliveries/frigate/TB-28.nc")
     edit(array / "array.toml", "halcyon_wide", "frigate_netcdf")
 
 
@@ -117,9 +117,9 @@ def deliver_another_site(array: Path) -> None:
         (keep_header, WIDE, ("there are no data rows", "expected at least one", "found only a header")),
         (repeat_depth, WIDE, ("there are 2 columns of this name", "T_10m", "found 'date', 'T_1m'", "layout")),
         (repeat_depth_in_other_words, WIDE, ("depth", "found", "10")),
-        (misspell_layout, "layouts/halcyon_wide.toml", ("this key is not known", "did you mean 'delimiter'?")),
+        (misspell_layout, "layouts/halcyon_wide.toml", ("this key is not known", "did you mean 'comment'?")),
         (remove_layout, "layouts/halcyon_wide.toml", ("no such file", "expected a TOML file")),
-        (deliver_another_site, "deliveries/frigate/TB-37.nc", ("of another l", "expected", "found", "check that")),
+        (deliver_another_site, "deliveries/frigate/TB-28.nc", ("of another l", "expected", "found", "check that")),
     ],
     ids=lambda value: getattr(value, "__name__", ""),
 )
@@ -136,8 +136,8 @@ def test_unusable_delivery_is_explained_and_the_others_are_finished(
     for part in (file, *parts):
         assert part in told[1]
     assert "2 of 3 moorings used" in result.stdout
-    assert sorted(path.name for path in (out / "chains").iterdir()) == ["TB-18.nc", "TB-37.nc"]
-    assert [accounts(out)[mooring]["outcome"] for mooring in ("TB-07", "TB-18", "TB-37")] == [
+    assert sorted(path.name for path in (out / "chains").iterdir()) == ["TB-18.nc", "TB-28.nc"]
+    assert [accounts(out)[mooring]["outcome"] for mooring in ("TB-07", "TB-18", "TB-28")] == [
         "not used",
         "used",
         "used",
@@ -205,8 +205,8 @@ def test_check_tells_of_sorted_rows(array: Path) -> None:
     ("old", "new", "parts"),
     [
         (
-            'name = "Small Array"',
-            'name = "Small Array"\ninstitusion = "X"',
+            'name = "Tropicbird Array"',
+            'name = "Tropicbird Array"\ninstitusion = "X"',
             ("array.institusion: this key is not known", "did you mean 'institution'?"),
         ),
         (
@@ -221,7 +221,7 @@ def test_check_tells_of_sorted_rows(array: Path) -> None:
         ),
         ("latitude = 2.5", "latitude = 95.0", ("moorings #1.latitude", "less than or equal to 90", "found 95.0")),
         ("latitude = 2.5", "", ("moorings #1.latitude: this key is missing", "add it")),
-        ("latitude = 2.5", "latitude = ", ("not TOML", "line 6")),
+        ("latitude = 2.5", "latitude = ", ("not TOML", "line 15")),
     ],
     ids=["unknown key", "two moorings with one id", "latitude 95", "no latitude", "no TOML"],
 )
@@ -299,4 +299,4 @@ def test_full_disk_is_called_so_and_the_run_goes_on_after_space_is_made(
     assert "kept from an earlier run 0" not in again.stdout
     written = contents(out)
     assert written == {name: data for name, data in contents(finished).items() if name in written}
-    assert "chains/TB-37.nc" in written
+    assert "chains/TB-28.nc" in written

@@ -38,7 +38,7 @@ def test_run_over_finished_work_prints_rows_tasks_results_and_the_caution(small_
     account = json.loads((out / "run.json").read_text(encoding="utf-8"))
     rows, latest = account["rows"], account["latest"]
     lines = result.stdout.splitlines()
-    assert lines[0] == "Small Array: 3 of 3 moorings used"
+    assert lines[0] == "Tropicbird Array: 3 of 3 moorings used"
     assert lines[1] == (
         f"rows read {rows['rows_read']} = kept {rows['rows_kept']} + quarantined {rows['rows_quarantined']}"
     )
@@ -66,7 +66,7 @@ def test_json_is_one_document_and_nothing_else(small_array: Path, out: Path) -> 
     assert result.stderr == ""
     assert document["exit_code"] == result.exit_code == 0
     assert document["tasks"] == {"computed": 0, "kept": 17}
-    assert document["moorings"] == ["TB-07", "TB-18", "TB-37"]
+    assert document["moorings"] == ["TB-07", "TB-18", "TB-28"]
     assert document["out"] == str(out)
 
 
@@ -217,7 +217,7 @@ def test_check_as_json_has_an_entry_per_delivery(lame_array: Path) -> None:
 
 def test_check_lists_every_problem_of_a_configuration(array: Path) -> None:
     path = array / "array.toml"
-    text = path.read_text(encoding="utf-8").replace("latitude = 2.5", "latitude = 95.0").replace("TB-37", "TB-18", 1)
+    text = path.read_text(encoding="utf-8").replace("latitude = 2.5", "latitude = 95.0").replace("TB-28", "TB-18", 1)
     path.write_text(text + "[sections]\nsignal_sd = 3.0\n", encoding="utf-8")
     result = call("check", path)
     assert result.exit_code == 2

@@ -11,6 +11,7 @@ import xarray as xr
 
 from profiles import read_delivery
 from profiles.drill.array import CHAINS, SITES
+from profiles.drill.configuration import FORMS, delivery_path
 
 ROOT = Path(__file__).parents[2]
 TRUTH = ROOT / "data_demo" / "truth" / "array.nc"
@@ -22,15 +23,11 @@ def truth():
         return opened.load()
 
 
-LAYOUTS = {"halcyon": ("halcyon_wide.toml", "csv.gz"), "frigate": ("frigate_netcdf.toml", "nc")}
-
-
 def delivered(longitude):
     """Return the chain delivered for the equatorial mooring of a line."""
     site = next(site for site in SITES if (site.latitude, site.longitude) == (0.0, longitude))
-    layout, ending = LAYOUTS[site.institute]
-    delivery = ROOT / "data_demo" / "deliveries" / site.institute / f"{site.id}.{ending}"
-    return read_delivery(delivery, ROOT / "config" / "layouts" / layout)
+    layout = ROOT / "config" / "layouts" / FORMS[site.institute].layout
+    return read_delivery(ROOT / "data_demo" / delivery_path(site), layout, latitude=site.latitude)
 
 
 @pytest.fixture(scope="module")

@@ -43,7 +43,7 @@ def wait_for_records(out: Path, count: int, process: subprocess.Popen[str]) -> N
 
 def assert_as_finished(out: Path, finished: Path, contents: Contents) -> None:
     resumed = contents(out)
-    assert {"section.nc", "volume.nc", "chains/TB-37.nc", "tables/volume_and_tilt.csv"} <= set(resumed)
+    assert {"section.nc", "volume.nc", "chains/TB-28.nc", "tables/volume_and_tilt.csv"} <= set(resumed)
     assert resumed == {name: data for name, data in contents(finished).items() if name in resumed}
 
 

@@ -19,10 +19,10 @@ from profiles.config import load_config
 from profiles.errors import DataError, MachineError, RequestError
 from profiles.pipeline import STAGES, Event, Outcome, run
 
-MOORINGS = ("TB-07", "TB-18", "TB-37")
+MOORINGS = ("TB-07", "TB-18", "TB-28")
 WIDE = "deliveries/halcyon/TB-07.csv.gz"
 LONG = "deliveries/marlin/TB-18.csv.gz"
-NETCDF = "deliveries/frigate/TB-37.nc"
+NETCDF = "deliveries/frigate/TB-28.nc"
 Contents = Callable[[Path], dict[str, bytes]]
 
 
@@ -188,7 +188,7 @@ def test_mooring_whose_delivery_is_gone_takes_its_files_away_and_is_reported(arr
     (array / LONG).unlink()
     outcome, _ = ran(array, out)
     assert outcome.exit_code == 5
-    assert outcome.moorings == ("TB-07", "TB-37")
+    assert outcome.moorings == ("TB-07", "TB-28")
     assert [(problem.mooring, problem.stage) for problem in outcome.problems] == [("TB-18", "ingest")]
     assert not (out / "chains" / "TB-18.nc").exists()
     assert not (out / "columns" / "TB-18.nc").exists()
