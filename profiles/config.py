@@ -165,6 +165,11 @@ class ColumnSettings(Settings):
     depth_accuracy: NotNegative = Field(
         1.0, description="m, one standard deviation of a nominal sensor depth (from memory)"
     )
+    motion_accuracy: NotNegative = Field(
+        0.3,
+        description="°C, one standard deviation from the leaning of the line, where a chain does not say how deep its "
+        "sensors were (McCarty et al. 1997: 0.15 to 0.45 in the upper thermocline of taut-line moorings)",
+    )
 
 
 class MeansSettings(Settings):

@@ -61,6 +61,7 @@ def columns_of(chain: xr.Dataset, settings: ColumnSettings | None = None) -> xr.
                 **rule,
                 noise=settings.sensor_noise,
                 depth_accuracy=settings.depth_accuracy,
+                motion=settings.motion_accuracy if sensor_depth is None else 0.0,
             ),
             mixed_layer_depth(
                 temperature,

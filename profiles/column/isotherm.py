@@ -102,12 +102,14 @@ def isotherm_error_kernel(
     deepest: bool,
     noise: float,
     depth_accuracy: float,
+    motion: float,
 ) -> tuple[Any, Any]:
     """Return the independent and the persistent standard error of each profile's isotherm depth.
 
     With z = z1 + f (z2 - z1), f = (T1 - T) / (T1 - T2): dz/dT1 = (1 - f) dz/dT, dz/dT2 = f dz/dT, dz/dz1 = 1 - f and
     dz/dz2 = f. The error of the straight line between the sensors is half f (1 - f) (z2 - z1)^2 |T''| / |T'|, the
-    remainder of linear interpolation, T'' the larger of the bends at the two sensors.
+    remainder of linear interpolation, T'' the larger of the bends at the two sensors. A line that leans moves both
+    sensors alike: dz/dT times ``motion``.
     """
     profiles = temperature.shape[0]
     shared, alike = depth.shape[0] == 1, accuracy.shape[0] == 1
@@ -127,8 +129,9 @@ def isotherm_error_kernel(
         weight = np.sqrt((1.0 - share) ** 2 + share**2)
         calibration = metres * np.sqrt(((1.0 - share) * sd[upper]) ** 2 + (share * sd[lower]) ** 2)
         bending = 0.5 * share * (1.0 - share) * distance**2 * _curvature(values, place, upper, lower) * metres
+        lean = metres * motion
         independent[profile] = metres * weight * noise
-        persistent[profile] = np.sqrt(calibration**2 + (weight * depth_accuracy) ** 2 + bending**2)
+        persistent[profile] = np.sqrt(calibration**2 + (weight * depth_accuracy) ** 2 + bending**2 + lean**2)
     return independent, persistent
 
 
@@ -238,6 +241,7 @@ def isotherm_depth_error(
     surface_reach: float = SURFACE_REACH,
     noise: float,
     depth_accuracy: float,
+    motion: float = 0.0,
 ) -> xr.Dataset:
     """Return the standard error of the depth that :func:`isotherm_depth` gives, whole and in its two parts.
 
@@ -252,13 +256,16 @@ def isotherm_depth_error(
         Standard deviation of what is independent from value to value, °C.
     depth_accuracy : float
         Standard uncertainty of a sensor's depth, m.
+    motion : float
+        Standard error of temperature from the leaning of the line, °C, alike at neighbouring sensors; 0 where
+        ``sensor_depth`` says where they were.
 
     Returns
     -------
     xarray.Dataset
         ``isotherm_depth_error`` and its parts ``_independent`` (noise) and ``_persistent`` (calibration, sensor depth,
-        the straight line between sensors), m, NaN where no isotherm is bracketed. The size of the last is estimated
-        from the curvature of the profile.
+        a leaning line, the straight line between sensors), m, NaN where no isotherm is bracketed. The size of the last
+        is estimated from the curvature of the profile.
     """
     deepest = _is_deepest(crossing)
     temperature, depth = check_profiles(temperature, sensor_depth)
@@ -268,6 +275,7 @@ def isotherm_depth_error(
         results: tuple[NDArray[Any], ...] = isotherm_error_kernel(
             values, places, accuracy, float(isotherm), reach, float(surface_reach), deepest, float(noise),
             float(depth_accuracy),
+            float(motion),
         )  # fmt: skip
         return results
 

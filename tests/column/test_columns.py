@@ -79,13 +79,25 @@ def test_a_profile_without_used_values_has_no_share(chain):
 def test_columns_are_those_of_the_single_functions(chain):
     columns = columns_of(chain)
     error = isotherm_depth_error(
-        chain["temperature"], chain["temperature_uncertainty"], max_bracket=75.0, noise=0.005, depth_accuracy=1.0
+        chain["temperature"],
+        chain["temperature_uncertainty"],
+        max_bracket=75.0,
+        noise=0.005,
+        depth_accuracy=1.0,
+        motion=0.3,
     )
     np.testing.assert_array_equal(columns["isotherm_depth_error"], error["isotherm_depth_error"])
     assert columns["deployment"].values.tolist() == [1] * 30 + [2] * 30
     assert columns["isotherm_depth"].attrs["ancillary_variables"] == "isotherm_depth_error isotherm_status"
     assert "at most 75 m" in columns["isotherm_depth"].attrs["comment"]
     assert set(columns.coords) == {"time", "mooring", "latitude", "longitude"}
+
+
+def test_known_sensor_depths_leave_no_error_of_the_line(chain):
+    known = chain.assign(sensor_depth=chain["depth"].broadcast_like(chain["temperature"]).transpose("time", "depth"))
+    still = columns_of(chain, ColumnSettings(motion_accuracy=0.0))
+    np.testing.assert_allclose(columns_of(known)["isotherm_depth_error"], still["isotherm_depth_error"], rtol=1e-4)
+    assert bool((columns_of(chain)["isotherm_depth_error"] > still["isotherm_depth_error"]).any())
 
 
 def test_settings_reach_every_column(chain):

@@ -28,6 +28,14 @@ def test_both_parts_of_the_error_by_hand(make_profile):
     assert float(error["isotherm_depth_error"]) == pytest.approx(1.113194, abs=1e-6)
 
 
+def test_a_leaning_line_moves_both_sensors_alike(make_profile):
+    # dz/dT = 2 m/K between 26 at 100 m and 16 at 120 m: 0.3 K are 0.6 m, whatever the share.
+    profile = make_profile([26, 16], [100.0, 120.0])
+    error = isotherm_depth_error(profile, accuracy(profile, 0, 0), noise=0.0, depth_accuracy=0.0, motion=0.3)
+    assert float(error[PERSISTENT]) == pytest.approx(0.6)
+    assert float(error[INDEPENDENT]) == 0.0
+
+
 @pytest.mark.parametrize("temperatures", [(26, 25, 15, 13), (27, 25, 15, 14)])
 def test_the_larger_bend_beside_the_bracket_adds_to_the_persistent_part(make_profile, temperatures):
     # Gradients -0.05, -0.5 and -0.1 K/m. T'' at 100 m: 2 (-0.5 + 0.05) / 40 = -0.0225; at 120 m: 2 (0.4) / 40 = 0.02;
