@@ -10,9 +10,10 @@ import pandas as pd
 import xarray as xr
 
 from profiles import store
-from profiles.config import Config, Delivery, Mooring
-from profiles.errors import DataError, MachineError, RequestError, ThermotiltError
+from profiles.config import Config, Mooring
+from profiles.errors import DataError
 from profiles.pipeline.attributes import global_attributes
+from profiles.pipeline.listed import read_listed
 from profiles.pipeline.paths import Folder
 from profiles.pipeline.task import Report, Task
 
@@ -43,23 +44,15 @@ def ingest_task(config: Config, mooring: Mooring, folder: Folder) -> Task:
 
 def ingest(config: Config, mooring: Mooring, folder: Folder) -> Report:
     """Read a mooring's deliveries; one that cannot be used is reported, and the others still are."""
-    from profiles.ingest import join, read
+    from profiles.ingest import join
 
     account: list[dict[str, Any]] = []
     quarantine: list[pd.DataFrame] = []
     usable: list[Any] = []
     for listed in mooring.deliveries:
-        try:
-            delivery = read(
-                config.resolve(listed.path),
-                config.resolve(listed.layout),
-                mooring=mooring.id,
-                latitude=mooring.latitude,
-                longitude=mooring.longitude,
-                sensor_accuracy=mooring.sensor_accuracy or config.column.sensor_accuracy,
-            )
-        except (RequestError, DataError, MachineError) as error:
-            account.append(_account(mooring, listed.path, problem=message_of(error, config, listed)))
+        delivery = read_listed(config, mooring, listed)
+        if isinstance(delivery, str):
+            account.append(_account(mooring, listed.path, problem=delivery))
             continue
         usable.append(delivery)
         account.append(_account(mooring, listed.path, delivery))
@@ -74,14 +67,6 @@ def ingest(config: Config, mooring: Mooring, folder: Folder) -> Report:
     rejected = pd.concat(quarantine) if quarantine else pd.DataFrame(columns=_QUARANTINE)
     store.write_table(folder.part("quarantine", mooring.id), rejected)
     return {"usable": bool(usable), "deliveries": account}
-
-
-def message_of(error: ThermotiltError, config: Config, delivery: Delivery) -> str:
-    """Return the error's text with paths as the configuration gives them: the same bytes wherever it lies."""
-    text = str(error)
-    for path in (delivery.path, delivery.layout):
-        text = text.replace(str(config.resolve(path)), path.as_posix())
-    return text
 
 
 def _account(mooring: Mooring, path: Path, delivery: Any = None, problem: str = "") -> dict[str, Any]:

@@ -8,8 +8,7 @@ from pathlib import Path
 from typing import Any, Literal
 
 from profiles.config import Config, Delivery, Mooring
-from profiles.errors import DataError, MachineError, RequestError
-from profiles.pipeline.stages import message_of
+from profiles.pipeline.listed import read_listed
 
 SHOWN = 3  # rows that a finding quotes
 
@@ -38,18 +37,9 @@ def survey(config: Config, progress: Callable[[Finding], None] | None = None) ->
 
 
 def _inspect(config: Config, mooring: Mooring, delivery: Delivery) -> Finding:
-    from profiles.ingest import read
-
-    try:
-        found = read(
-            config.resolve(delivery.path),
-            config.resolve(delivery.layout),
-            mooring=mooring.id,
-            latitude=mooring.latitude,
-            longitude=mooring.longitude,
-        )
-    except (RequestError, DataError, MachineError) as error:
-        return Finding(mooring.id, delivery.path, "not usable", 0, 0, message_of(error, config, delivery))
+    found = read_listed(config, mooring, delivery)
+    if isinstance(found, str):
+        return Finding(mooring.id, delivery.path, "not usable", 0, 0, found)
     notes = _notes(found)
     outcome: Any = "rows quarantined" if found.rows_quarantined else "rows sorted" if notes else "clean"
     return Finding(mooring.id, delivery.path, outcome, found.rows_read, found.rows_kept, "; ".join(notes))
