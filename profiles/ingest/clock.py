@@ -3,14 +3,17 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
 from datetime import UTC, datetime, timedelta, timezone, tzinfo
 from zoneinfo import ZoneInfo, available_timezones
 
+import cf_units
 import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
+from profiles.ingest.stamps import NOT_DECIDED, as_matrix, compiled, read_stamps
 from profiles.ingest.wording import nearest
 
 ISO_8601 = "iso8601"
@@ -27,6 +30,12 @@ _NAT = np.datetime64("NaT", "ns")
 
 UNREADABLE = "the time cannot be read"
 NOT_ON_THE_CLOCK = "this local time does not exist, or exists twice, in the layout's zone"
+
+Times = NDArray[np.datetime64]
+
+
+# --------------------------------------------------------------------------------------------------------------
+# What a layout may name
 
 
 def parse_zone(name: str) -> tzinfo:
@@ -51,10 +60,223 @@ def _offset_zone(name: str) -> tzinfo:
     return timezone(offset or timedelta(0))
 
 
+def parse_units(units: str) -> tuple[float, np.datetime64]:
+    """Return the seconds of one unit and the time of zero, for units like ``"seconds since 1970-01-01"``.
+
+    ValueError where they are no such units, or of a length that changes, as months and years do.
+    """
+    step = units.partition(" since ")[0].strip()
+    try:
+        known = cf_units.Unit(units, calendar=cf_units.CALENDAR_STANDARD)
+        seconds = float(cf_units.Unit(step).convert(1.0, "second"))
+        zero = known.num2date(0.0, only_use_cftime_datetimes=False, only_use_python_datetimes=True)
+    except ValueError as error:
+        raise ValueError(f"no units of time: {units!r}; expected for example 'seconds since 1970-01-01'") from error
+    if "month" in step or "year" in step:
+        raise ValueError(f"units of a length that changes: {units!r}; expected days, hours, minutes or seconds since")
+    return seconds, np.datetime64(zero.replace(tzinfo=None), "ns")
+
+
+# --------------------------------------------------------------------------------------------------------------
+# Stamps to what the clock showed
+
+
+def clock_of_texts(stamps: Sequence[str] | NDArray[np.object_], time_format: str) -> tuple[Times, NDArray[np.bool_]]:
+    """Read stamps of a strptime format or ``"iso8601"``, which must name at least the day.
+
+    Returns
+    -------
+    clock : ndarray of datetime64[ns]
+        As the clock showed them, those with an offset of their own in UTC; NaT where one cannot be read.
+    is_utc : ndarray of bool
+        Which those are.
+    """
+    texts = np.array(stamps, dtype=object)
+    program = compiled(time_format)
+    if program is None or not texts.size:
+        return _read_slowly(texts, time_format), _with_offset(texts, time_format)
+    clock, is_utc = read_stamps(as_matrix(texts), program)
+    return finished(clock, is_utc, texts, time_format)
+
+
+def finished(
+    clock: NDArray[np.int64], is_utc: NDArray[np.bool_], texts: NDArray[np.object_], time_format: str
+) -> tuple[Times, NDArray[np.bool_]]:
+    """Read what :func:`profiles.ingest.stamps.read_stamps` left undecided; ``texts`` are of those only, or of all."""
+    left = np.flatnonzero(clock == NOT_DECIDED)
+    times = clock.view("datetime64[ns]").copy()
+    if left.size:
+        undecided = texts if texts.size == left.size else texts[left]
+        times[left] = _read_slowly(undecided, time_format)
+        is_utc[left] = _with_offset(undecided, time_format)
+    return times, is_utc
+
+
+def _read_slowly(texts: NDArray[np.object_], time_format: str) -> Times:
+    is_iso = time_format == ISO_8601
+    # pandas also reads words such as "now", whatever the format.
+    plausible = _ISO_DAY.match if is_iso else _DIGIT.search
+    guarded = [text if plausible(text) else None for text in texts]
+    read = pd.to_datetime(
+        pd.Series(guarded, dtype=object),
+        format="ISO8601" if is_iso else time_format,
+        errors="coerce",
+        utc=True,
+    )
+    clock = read.dt.tz_localize(None).to_numpy().astype("datetime64[us]")
+    return _in_range(clock)
+
+
+def _in_range(clock: Times) -> Times:
+    clock[~((clock >= _FIRST) & (clock < _LAST))] = _NAT
+    return clock.astype("datetime64[ns]")
+
+
+def _with_offset(texts: NDArray[np.object_], time_format: str) -> NDArray[np.bool_]:
+    if time_format != ISO_8601:
+        return np.full(texts.size, "%z" in time_format)
+    return np.fromiter((_WITH_OFFSET.search(text) is not None for text in texts), bool, texts.size)
+
+
+def clock_of_numbers(numbers: NDArray[np.float64], units: str) -> Times:
+    """Return numbers in ``units`` as times, to the millisecond; NaT for NaN and beyond 1678 to 2261."""
+    seconds, zero = parse_units(units)
+    return _after(np.full(numbers.shape, zero), numbers * seconds)
+
+
+def _after(start: Times, seconds: NDArray[np.float64]) -> Times:
+    """Return times so many seconds after others, to the millisecond; NaT where the sum is none."""
+    span = (_LAST - _FIRST).astype("timedelta64[s]").astype(float)
+    possible = np.isfinite(seconds) & (np.abs(seconds) < span)
+    whole = np.where(possible, np.round(np.where(possible, seconds, 0.0) * 1e3), 0.0).astype("timedelta64[ms]")
+    clock = start.astype("datetime64[us]") + whole.astype("timedelta64[us]")
+    clock[~possible] = np.datetime64("NaT")
+    return _in_range(clock)
+
+
+_DAY_SECONDS = 86_400.0
+
+#: Smallest and largest value of a number that makes part of a stamp, and the seconds of one unit of it.
+_PARTS: Mapping[str, tuple[int, int, float]] = {
+    "year": (1678, 2261, 0.0),
+    "month": (1, 12, 0.0),
+    "day": (1, 31, _DAY_SECONDS),
+    "day_of_year": (1, 366, _DAY_SECONDS),
+    "hour": (0, 24, 3_600.0),
+    "minute": (0, 59, 60.0),
+    "second": (0, 59, 1.0),
+    "hour_minute": (0, 2400, 0.0),
+}
+
+
+def clock_of_parts(parts: Mapping[str, NDArray[np.float64]]) -> Times:
+    """Return the times that numbers make together.
+
+    Parameters
+    ----------
+    parts : mapping
+        ``year`` with ``month`` and ``day``, or with ``day_of_year`` (from 1); then ``hour``, ``minute``, ``second``, or
+        ``hour_minute`` (1330 is half past one in the afternoon). Only the last of day, hour, minute and second may
+        have a fraction. The hour 24 is midnight at the end of the day.
+
+    Returns
+    -------
+    ndarray of datetime64[ns]
+        To the millisecond; NaT where a part is missing, or they name no time that exists.
+    """
+    parts = dict(parts)
+    wrong = np.zeros(parts["year"].shape, bool)
+    finest = [name for name in parts if name not in {"year", "month", "hour_minute"}][-1:]
+    for name, values in parts.items():
+        least, most, _ = _PARTS[name]
+        whole = np.floor(values)
+        wrong |= ~((whole >= least) & (whole <= most)) | ((values != whole) & (name not in finest))
+        parts[name] = np.where(wrong, np.maximum(least, 1), values)
+    if "hour_minute" in parts:
+        together = parts.pop("hour_minute")
+        parts |= {"hour": together // 100, "minute": together % 100}
+        wrong |= parts["minute"] >= 60
+    day, is_date = _day(parts)
+    seconds = parts["day_of_year" if "day_of_year" in parts else "day"] % 1.0 * _DAY_SECONDS
+    for name in ("hour", "minute", "second"):
+        if name in parts:
+            seconds = seconds + parts[name] * _PARTS[name][2]
+    wrong |= ~is_date | (seconds > _DAY_SECONDS)
+    return np.where(wrong, _NAT, _after(day, seconds))
+
+
+def _day(parts: Mapping[str, NDArray[np.float64]]) -> tuple[Times, NDArray[np.bool_]]:
+    """Return the day that parts name, and whether there is one."""
+    year = (parts["year"].astype(np.int64) - 1970).astype("datetime64[Y]")
+    if "day_of_year" in parts:
+        first, length_end = year.astype("datetime64[D]"), (year + 1).astype("datetime64[D]")
+        day = first + (np.floor(parts["day_of_year"]).astype(np.int64) - 1)
+    else:
+        month = year.astype("datetime64[M]") + (parts["month"].astype(np.int64) - 1)
+        length_end = (month + 1).astype("datetime64[D]")
+        day = month.astype("datetime64[D]") + (np.floor(parts["day"]).astype(np.int64) - 1)
+    return day.astype("datetime64[ns]"), day < length_end
+
+
+# --------------------------------------------------------------------------------------------------------------
+# What the clock showed to UTC
+
+
+@dataclass
+class Zone:
+    """From local time to UTC, in the order of a file.
+
+    Attributes
+    ----------
+    name : str
+        As :func:`parse_zone` takes it.
+    by_order : bool
+        Whether local times that the end of summer time repeats are told by their order: the first time round is
+        summer time, until a sensor's reading is not later than the one before it. Else they stay NaT.
+    """
+
+    name: str
+    by_order: bool = False
+    _last: dict[tuple[int, float], np.datetime64] = field(default_factory=dict)
+    _second_round: set[int] = field(default_factory=set)
+
+    def to_utc(self, clock: Times, sensor: NDArray[np.float64] | None = None) -> Times:
+        """Return UTC, NaT where the local time does not exist, or exists twice; ``sensor`` tells readings apart."""
+        local = pd.DatetimeIndex(clock)
+        zone = parse_zone(self.name)
+        times = local.tz_localize(zone, ambiguous="NaT", nonexistent="NaT")
+        utc: Times = times.tz_convert("UTC").tz_localize(None).to_numpy().astype("datetime64[ns]")
+        if self.by_order and isinstance(zone, ZoneInfo):
+            open_cases = np.flatnonzero(np.isnat(utc) & ~np.isnat(clock))
+            self._by_order(clock, utc, open_cases, sensor, zone)
+        return utc
+
+    def _by_order(
+        self, clock: Times, utc: Times, cases: NDArray[np.intp], sensor: NDArray[np.float64] | None, zone: ZoneInfo
+    ) -> None:
+        for case in cases:
+            stamp = clock[case]
+            local = stamp.astype("datetime64[us]").astype(datetime)
+            offsets = [local.replace(tzinfo=zone, fold=fold).utcoffset() or timedelta(0) for fold in (0, 1)]
+            if offsets[0] <= offsets[1]:  # a time that the clock skipped
+                continue
+            night = int(stamp.astype("datetime64[D]").astype(np.int64))
+            key = (night, float(sensor[case]) if sensor is not None else 0.0)
+            if key in self._last and stamp <= self._last[key]:
+                self._second_round.add(night)
+            self._last[key] = stamp
+            utc[case] = np.datetime64(local - offsets[night in self._second_round], "ns")
+
+
+def hours(length: float) -> np.timedelta64:
+    """Return so many hours, to the nanosecond."""
+    return np.timedelta64(round(length * 3_600e9), "ns")
+
+
 def parse_times(
     stamps: Sequence[str], *, time_format: str, zone: str, offset_hours: float = 0.0
-) -> tuple[NDArray[np.datetime64], NDArray[np.object_]]:
-    """Read stamps.
+) -> tuple[Times, NDArray[np.object_]]:
+    """Read stamps of text.
 
     Parameters
     ----------
@@ -73,40 +295,23 @@ def parse_times(
     reasons : ndarray of object
         Why not, or None.
     """
-    texts = np.array(stamps, dtype=object)
-    clock = _wall_clock(texts, time_format)
+    clock, is_utc = clock_of_texts(stamps, time_format)
+    return in_utc(clock, is_utc, Zone(zone), offset_hours)
+
+
+def in_utc(
+    clock: Times,
+    is_utc: NDArray[np.bool_],
+    zone: Zone,
+    offset_hours: float = 0.0,
+    sensor: NDArray[np.float64] | None = None,
+) -> tuple[Times, NDArray[np.object_]]:
+    """Return what a clock showed in UTC, and why not, or None; ``is_utc`` marks the stamps that need no zone."""
     reasons = np.full(clock.size, None, dtype=object)
     reasons[np.isnat(clock)] = UNREADABLE
     times = clock.copy()
-    naive = ~_with_offset(texts, time_format)
-    times[naive] = _from_zone(clock[naive], zone)
+    local = np.flatnonzero(~is_utc)
+    if local.size and zone.name.upper() not in {"UTC", "Z"}:
+        times[local] = zone.to_utc(clock[local], sensor[local] if sensor is not None else None)
     reasons[np.isnat(times) & ~np.isnat(clock)] = NOT_ON_THE_CLOCK
-    return times + np.timedelta64(round(offset_hours * 3_600e9), "ns"), reasons
-
-
-def _wall_clock(texts: NDArray[np.object_], time_format: str) -> NDArray[np.datetime64]:
-    """Return stamps as the clock showed them; those with an offset of their own are in UTC already."""
-    is_iso = time_format == ISO_8601
-    # pandas also reads words such as "now", whatever the format.
-    plausible = _ISO_DAY.match if is_iso else _DIGIT.search
-    guarded = [text if plausible(text) else None for text in texts]
-    read = pd.to_datetime(
-        pd.Series(guarded, dtype=object),
-        format="ISO8601" if is_iso else time_format,
-        errors="coerce",
-        utc=True,
-    )
-    clock = read.dt.tz_localize(None).to_numpy().astype("datetime64[us]")
-    clock[~((clock >= _FIRST) & (clock < _LAST))] = _NAT
-    return clock.astype("datetime64[ns]")
-
-
-def _with_offset(texts: NDArray[np.object_], time_format: str) -> NDArray[np.bool_]:
-    if time_format != ISO_8601:
-        return np.full(texts.size, "%z" in time_format)
-    return np.fromiter((_WITH_OFFSET.search(text) is not None for text in texts), bool, texts.size)
-
-
-def _from_zone(clock: NDArray[np.datetime64], zone: str) -> NDArray[np.datetime64]:
-    local = pd.DatetimeIndex(clock).tz_localize(parse_zone(zone), ambiguous="NaT", nonexistent="NaT")
-    return local.tz_convert("UTC").tz_localize(None).to_numpy().astype("datetime64[ns]")
+    return times + hours(offset_hours), reasons

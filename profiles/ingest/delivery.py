@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Collection, Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from pathlib import Path
 
 import numpy as np
@@ -12,13 +13,25 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from profiles.errors import DataError, RequestError
-from profiles.ingest.layout import Layout, LongLayout, NetcdfLayout, WideLayout, load_layout
+from profiles.ingest.blocked import read_blocked
+from profiles.ingest.counted import read_counted
+from profiles.ingest.layout import (
+    BlockedLayout,
+    CountedLayout,
+    Layout,
+    LongLayout,
+    NetcdfLayout,
+    WideLayout,
+    load_layout,
+)
 from profiles.ingest.lines import texts_of
 from profiles.ingest.long import read_long
 from profiles.ingest.netcdf import read_netcdf, step_text
-from profiles.ingest.record import Record, Rejected, reordered, verify_count
+from profiles.ingest.record import Record, Rejected
+from profiles.ingest.spool import Spool, Table
 from profiles.ingest.units import depth_of_pressure, to_its90
 from profiles.ingest.wide import read_wide
+from profiles.store import TIME_BLOCK
 from profiles.vocabulary import describe
 
 POSITION_TOLERANCE = 0.25  # degrees; a stated and a delivered position further apart are of two sites (ours)
@@ -27,36 +40,131 @@ QUARANTINE_COLUMNS = ("file", "line", "reason", "text")
 
 
 @dataclass(frozen=True)
+class Source:
+    """One file of a delivery: how it is written, its rows as they were read, and which of them were not kept."""
+
+    path: Path
+    layout: Layout
+    read: Spool
+    lost: frozenset[int]
+
+    def lines_at(self, times: NDArray[np.datetime64]) -> dict[int, np.datetime64]:
+        """Return the times of the rows that were kept and are of some times, by line."""
+        found: dict[int, np.datetime64] = {}
+        for rows in self.read.chunks():
+            chosen = rows[np.isin(rows["time"], times)]
+            found |= {int(row["line"]): row["time"] for row in chosen if int(row["line"]) not in self.lost}
+        return found
+
+    def texts(self, times: Mapping[int, np.datetime64]) -> dict[int, str]:
+        """Return what a quarantine entry shows of some lines, given with their times."""
+        if isinstance(self.layout, NetcdfLayout):
+            return {line: step_text(line, time) for line, time in times.items()}
+        return texts_of(self.path, self.layout, times) if times else {}
+
+
+@dataclass(frozen=True)
 class Delivery:
     """What was read, and what became of every row.
 
     Attributes
     ----------
-    chain : xarray.Dataset
-        ``temperature_raw`` (°C, on the scale it was delivered on), ``temperature`` (°C, ITS-90),
-        ``temperature_uncertainty``, ``deployment`` and, where the file has flags,
-        ``temperature_delivered_qc``.
+    mooring : str
+    position : mapping
+        ``latitude`` and ``longitude``, degrees north and east (0-360), where they are known.
+    depth : ndarray of float32, (depth,)
+        m, positive down, ascending.
+    table : Spool
+        A row per time; :meth:`blocks` makes a chain of it.
+    scales : tuple of str
+        Temperature scale of each piece, from the first; a piece is what one file gave to the table.
+    cell_methods : tuple of str or None
+        What a reading of each piece stands for, where that is known.
+    deployments : tuple of int
+        Number of the deployment that each piece is of.
+    uncertainty : ndarray of float32, (depth,)
+        °C, one standard deviation.
     rows_read, rows_kept, rows_quarantined : int
-        Data rows; in a NetCDF file, time steps. The first is the sum of the others.
+        Data rows, in text that is neither blank, comment nor header of the file; in a NetCDF file, time steps.
+        The first is the sum of the others.
     rows_reordered : int
         Kept rows that were earlier than a row before them.
     quarantine : pandas.DataFrame
         Columns ``file``, ``line`` (from 1; in a NetCDF file the number of the time step), ``reason``,
         ``text``.
-    rows : pandas.DataFrame
-        Columns ``source`` (place in ``sources``), ``time`` and ``line`` of every row kept.
-    sources : tuple
-        Files and their layouts.
+    sources : tuple of Source
     """
 
-    chain: xr.Dataset
+    mooring: str
+    position: Mapping[str, float]
+    depth: NDArray[np.float32]
+    table: Spool
+    scales: tuple[str, ...]
+    cell_methods: tuple[str | None, ...]
+    deployments: tuple[int, ...]
+    uncertainty: NDArray[np.float32]
     rows_read: int
     rows_kept: int
     rows_quarantined: int
     rows_reordered: int
     quarantine: pd.DataFrame
-    rows: pd.DataFrame
-    sources: tuple[tuple[Path, Layout], ...]
+    sources: tuple[Source, ...]
+
+    @cached_property
+    def chain(self) -> xr.Dataset:
+        """The whole chain, in memory; see :func:`read_delivery`."""
+        return self._block(self.table.rows(0, self.table.count))
+
+    def blocks(self, length: int = TIME_BLOCK) -> Iterator[xr.Dataset]:
+        """Yield the chain in blocks of time."""
+        for rows in self.table.chunks(length):
+            yield self._block(rows)
+
+    @property
+    def is_flagged(self) -> bool:
+        """Tell whether any file came with quality flags."""
+        return bool(self.table.row_type["flags"].shape[0])
+
+    def _block(self, rows: Table) -> xr.Dataset:
+        grid, raw = ("time", "depth"), rows["values"]
+        data = {
+            "temperature_raw": (grid, np.ascontiguousarray(raw)),
+            "temperature": (grid, self._on_its90(raw, rows["piece"])),
+            "temperature_uncertainty": ("depth", self.uncertainty),
+            "deployment": ("time", np.array(self.deployments, np.int16)[rows["piece"] - 1]),
+        }
+        if self.is_flagged:
+            data["temperature_delivered_qc"] = (grid, np.ascontiguousarray(rows["flags"]))
+        coords = {"time": rows["time"].copy(), "depth": self.depth, "mooring": self.mooring, **self.position}
+        return describe(
+            xr.Dataset(data, coords=coords),
+            temperature_raw=self._attributes,
+            temperature={name: text for name, text in self._attributes.items() if name == "cell_methods"},
+        )
+
+    @property
+    def _attributes(self) -> dict[str, str]:
+        """Scale and meaning of the raw readings: attributes where all pieces agree, else a comment that lists them."""
+        listed: list[str] = []
+        agreed: dict[str, str] = {}
+        for attribute, values in (("reference_scale", self.scales), ("cell_methods", self.cell_methods)):
+            if len(set(values)) > 1:
+                listed += _listed(self.deployments, [value or "time: not known" for value in values])
+            elif values[0] is not None:
+                agreed[attribute] = values[0]
+        return agreed | ({"comment": "; ".join(listed)} if listed else {})
+
+    def _on_its90(self, raw: NDArray[np.float32], piece: NDArray[np.int16]) -> NDArray[np.float32]:
+        if set(self.scales) == {"ITS-90"}:
+            return np.array(raw)
+        is_old = np.array([scale == "IPTS-68" for scale in self.scales])[piece - 1]
+        return np.where(is_old[:, None], to_its90(raw, "IPTS-68"), raw).astype(np.float32)
+
+
+def _listed(deployments: Sequence[int], values: Sequence[str]) -> list[str]:
+    """Return what each deployment has, in words, once each."""
+    said = dict.fromkeys(f"deployment {number} on {value}" for number, value in zip(deployments, values, strict=True))
+    return list(said)
 
 
 def read_delivery(
@@ -73,7 +181,7 @@ def read_delivery(
     Parameters
     ----------
     path : str or Path
-        Delimited text, plain or gzip, or NetCDF.
+        Text, plain, gzip or zip, or NetCDF.
     layout : str, Path or Layout
         How it is written: a layout file or its object, see :func:`load_layout`.
     mooring : str, optional
@@ -86,9 +194,11 @@ def read_delivery(
     Returns
     -------
     xarray.Dataset
-        A chain, (time, depth): time in UTC, strictly increasing; depth in m, positive down, ascending;
+        A chain, (time, depth): ``temperature_raw`` (°C, on the scale it was delivered on), ``temperature`` (°C,
+        ITS-90), ``temperature_uncertainty``, ``deployment`` and, where the file has flags,
+        ``temperature_delivered_qc``; time in UTC, strictly increasing; depth in m, positive down, ascending;
         missing readings are NaN. The attributes ``rows_read``, ``rows_kept`` and ``rows_quarantined`` account
-        for the rows; :func:`read` also gives those that were not kept.
+        for the rows; :func:`read` also gives those that were not kept, and the chain in blocks where it is long.
 
     Raises
     ------
@@ -129,36 +239,23 @@ def read(
             ("longitude", longitude, record.longitude),
         )
     }
-    rows = record.rows.assign(source=0)
-    return accounted(
-        _chain(record, mooring or record.mooring or _stem(file), position, sensor_accuracy),
-        record.rows_read,
-        reordered(record.rows["time"].to_numpy()),
-        _quarantine(file, layout, record.rejected),
-        rows,
-        ((file, layout),),
-    )
-
-
-def accounted(
-    chain: xr.Dataset,
-    rows_read: int,
-    rows_reordered: int,
-    quarantine: pd.DataFrame,
-    rows: pd.DataFrame,
-    sources: tuple[tuple[Path, Layout], ...],
-) -> Delivery:
-    """Return a delivery whose account is verified; ThermotiltError where rows were lost, a fault of ours."""
-    verify_count(rows_read, len(rows), len(quarantine), ", ".join(str(path) for path, _ in sources))
+    depth = _depth(record, position["latitude"]).astype(np.float32)
+    source = Source(file, layout, record.read, frozenset(row.line for row in record.rejected))
     return Delivery(
-        chain=chain,
-        rows_read=rows_read,
-        rows_kept=len(rows),
-        rows_quarantined=len(quarantine),
-        rows_reordered=rows_reordered,
-        quarantine=quarantine,
-        rows=rows,
-        sources=sources,
+        mooring=mooring or record.mooring or _stem(file),
+        position={role: value for role, value in position.items() if value is not None},
+        depth=depth,
+        table=record.table,
+        scales=(record.scale,),
+        cell_methods=(record.cell_methods,),
+        deployments=(1,),
+        uncertainty=np.full(depth.size, sensor_accuracy, np.float32),
+        rows_read=record.rows_read,
+        rows_kept=record.rows_read - len(record.rejected),
+        rows_quarantined=len(record.rejected),
+        rows_reordered=record.read.reordered,
+        quarantine=_quarantine(source, record.rejected),
+        sources=(source,),
     )
 
 
@@ -191,6 +288,10 @@ def _read_record(path: Path, layout: Layout) -> Record:
             return read_wide(path, layout)
         case LongLayout():
             return read_long(path, layout)
+        case BlockedLayout():
+            return read_blocked(path, layout)
+        case CountedLayout():
+            return read_counted(path, layout)
         case NetcdfLayout():
             return read_netcdf(path, layout)
 
@@ -223,23 +324,7 @@ def degrees_apart(one: float, other: float) -> float:
 
 
 def _stem(path: Path) -> str:
-    return path.name.removesuffix(".gz").rsplit(".", 1)[0]
-
-
-def _chain(record: Record, mooring: str, position: Mapping[str, float | None], sensor_accuracy: float) -> xr.Dataset:
-    grid = ("time", "depth")
-    known = {role: value for role, value in position.items() if value is not None}
-    depth = _depth(record, position["latitude"])
-    data = {
-        "temperature_raw": (grid, record.temperature),
-        "temperature": (grid, to_its90(record.temperature, record.scale).astype(np.float32)),
-        "temperature_uncertainty": ("depth", np.full(record.depth.size, sensor_accuracy, dtype=np.float32)),
-        "deployment": ("time", np.ones(record.time.size, dtype=np.int16)),
-    }
-    if record.delivered_qc is not None:
-        data["temperature_delivered_qc"] = (grid, record.delivered_qc)
-    coords = {"time": record.time, "depth": depth.astype(np.float32), "mooring": mooring, **known}
-    return describe(xr.Dataset(data, coords=coords), temperature_raw={"reference_scale": record.scale})
+    return path.name.removesuffix(".gz").removesuffix(".zip").rsplit(".", 1)[0]
 
 
 def _depth(record: Record, latitude: float | None) -> NDArray[np.float64]:
@@ -256,18 +341,12 @@ def _depth(record: Record, latitude: float | None) -> NDArray[np.float64]:
     return depth_of_pressure(record.depth, latitude)
 
 
-def _quarantine(path: Path, layout: Layout, rejected: Sequence[Rejected]) -> pd.DataFrame:
+def _quarantine(source: Source, rejected: Sequence[Rejected]) -> pd.DataFrame:
     """Return rejected rows as a table, looking up the texts that are not at hand."""
-    unknown = [row.line for row in rejected if row.text is None]
-    texts = row_texts(path, layout, unknown, {}) if unknown else {}
+    unknown = {row.line: np.datetime64("NaT") for row in rejected if row.text is None}
+    texts = source.texts(unknown)
     entries = [
-        (str(path), row.line, row.reason, row.text if row.text is not None else texts[row.line]) for row in rejected
+        (str(source.path), row.line, row.reason, row.text if row.text is not None else texts[row.line])
+        for row in rejected
     ]
     return pd.DataFrame(entries, columns=list(QUARANTINE_COLUMNS)).astype({"line": np.int64})
-
-
-def row_texts(path: Path, layout: Layout, lines: Collection[int], times: Mapping[int, np.datetime64]) -> dict[int, str]:
-    """Return what a quarantine entry shows of some lines; ``times`` by line serve for NetCDF files."""
-    if isinstance(layout, NetcdfLayout):
-        return {line: step_text(line, times[line]) for line in lines}
-    return texts_of(path, layout, lines)

@@ -2,11 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
+from dataclasses import replace
 
 import numpy as np
 import pandas as pd
-import xarray as xr
 from numpy.typing import NDArray
 
 from profiles.errors import DataError, RequestError
@@ -14,11 +14,12 @@ from profiles.ingest.delivery import (
     POSITION_TOLERANCE,
     QUARANTINE_COLUMNS,
     Delivery,
-    accounted,
+    Source,
     degrees_apart,
-    row_texts,
 )
-from profiles.vocabulary import Flag, describe
+from profiles.ingest.record import verify_count
+from profiles.ingest.spool import CHUNK_ROWS, Spool, Table, wide_type
+from profiles.vocabulary import Flag
 
 Mask = NDArray[np.bool_]
 
@@ -51,27 +52,65 @@ def join(deliveries: Sequence[Delivery]) -> Delivery:
         raise RequestError("there is no delivery to join", where="deliveries", expected="at least one")
     if len(deliveries) == 1:
         return deliveries[0]
-    chains = [delivery.chain for delivery in deliveries]
-    coords = _common_coords(deliveries)
-    winners = _winners(chains)
-    rows, lost = _divided(deliveries, winners)
-    chain = describe(_joined(chains, winners).assign_coords(coords), temperature_raw=_scales(chains))
-    return accounted(
-        chain,
-        sum(delivery.rows_read for delivery in deliveries),
-        sum(delivery.rows_reordered for delivery in deliveries),
-        pd.concat([*(delivery.quarantine for delivery in deliveries), lost], ignore_index=True),
-        rows,
-        tuple(source for delivery in deliveries for source in delivery.sources),
+    mooring, position = _common_coords(deliveries)
+    depth = np.unique(np.concatenate([delivery.depth for delivery in deliveries]))
+    table = Spool(wide_type(depth.size, flagged=any(delivery.is_flagged for delivery in deliveries)))
+    lost: list[list[NDArray[np.datetime64]]] = [[] for _ in deliveries]
+    for parts in _windows([delivery.table for delivery in deliveries]):
+        winners = _winners([part["time"] for part in parts], [delivery.depth for delivery in deliveries])
+        table.append(_joined(deliveries, parts, winners, depth, table.row_type))
+        for place, (part, wins) in enumerate(zip(parts, winners, strict=True)):
+            lost[place].append(part["time"][~wins])
+    divided = [
+        _divided(delivery, np.concatenate(times), number)
+        for number, (delivery, times) in enumerate(zip(deliveries, lost, strict=True), start=1)
+    ]
+    quarantine = pd.concat(
+        [*(delivery.quarantine for delivery in deliveries), *(entries for _, entries in divided)], ignore_index=True
     )
+    rows_read = sum(delivery.rows_read for delivery in deliveries)
+    rows_kept = sum(delivery.rows_kept for delivery in deliveries) - sum(len(entries) for _, entries in divided)
+    verify_count(rows_read, rows_kept, len(quarantine), mooring)
+    return Delivery(
+        mooring=mooring,
+        position=position,
+        depth=depth,
+        table=table,
+        scales=tuple(scale for delivery in deliveries for scale in delivery.scales),
+        cell_methods=tuple(method for delivery in deliveries for method in delivery.cell_methods),
+        deployments=_numbered(deliveries),
+        uncertainty=_largest_uncertainty(deliveries, depth),
+        rows_read=rows_read,
+        rows_kept=rows_kept,
+        rows_quarantined=len(quarantine),
+        rows_reordered=sum(delivery.rows_reordered for delivery in deliveries),
+        quarantine=quarantine,
+        sources=tuple(source for sources, _ in divided for source in sources),
+    )
+
+
+def _numbered(deliveries: Sequence[Delivery]) -> tuple[int, ...]:
+    """Number the deployments of deliveries one after another."""
+    numbers: list[int] = []
+    for delivery in deliveries:
+        numbers += [max(numbers, default=0) + number for number in delivery.deployments]
+    return tuple(numbers)
+
+
+def _largest_uncertainty(deliveries: Sequence[Delivery], depth: NDArray[np.float32]) -> NDArray[np.float32]:
+    uncertainty = np.zeros(depth.size, np.float32)
+    for delivery in deliveries:
+        at_depth = np.searchsorted(depth, delivery.depth)
+        uncertainty[at_depth] = np.maximum(uncertainty[at_depth], delivery.uncertainty)
+    return uncertainty
 
 
 # ------------------------------------------------------------------------------------------------------------
 # What must agree
 
 
-def _common_coords(deliveries: Sequence[Delivery]) -> dict[str, str | float]:
-    moorings = {str(delivery.chain["mooring"].item()) for delivery in deliveries}
+def _common_coords(deliveries: Sequence[Delivery]) -> tuple[str, dict[str, float]]:
+    moorings = {delivery.mooring for delivery in deliveries}
     if len(moorings) > 1:
         raise RequestError(
             "the deliveries are of different moorings",
@@ -81,103 +120,95 @@ def _common_coords(deliveries: Sequence[Delivery]) -> dict[str, str | float]:
             advice="join those of one mooring at a time, or name the mooring when reading",
         )
     positions = {role: _common_position(role, deliveries) for role in ("latitude", "longitude")}
-    return {
-        "mooring": moorings.pop(),
-        **{role: value for role, value in positions.items() if value is not None},
-    }
+    return moorings.pop(), {role: value for role, value in positions.items() if value is not None}
 
 
 def _common_position(role: str, deliveries: Sequence[Delivery]) -> float | None:
-    known = [(delivery, float(delivery.chain[role])) for delivery in deliveries if role in delivery.chain.coords]
+    known = [(delivery, delivery.position[role]) for delivery in deliveries if role in delivery.position]
     for delivery, value in known:
         first, common = known[0]
         if degrees_apart(value, common) > POSITION_TOLERANCE:
             raise DataError(
                 f"the deliveries differ in {role}",
-                where=str(delivery.sources[0][0]),
-                expected=f"{common:g} degrees as in {first.sources[0][0]}, within {POSITION_TOLERANCE:g}",
+                where=str(delivery.sources[0].path),
+                expected=f"{common:g} degrees as in {first.sources[0].path}, within {POSITION_TOLERANCE:g}",
                 found=f"{value:g} degrees",
                 advice="check that both belong to this mooring",
             )
     return known[0][1] if known else None
 
 
-def _scales(chains: Sequence[xr.Dataset]) -> dict[str, str]:
-    """Return the attribute that says which scale the raw temperature is on, by deployment if they differ."""
-    attributes = [chain["temperature_raw"].attrs for chain in chains]
-    scales = [str(held.get("reference_scale") or held["comment"]) for held in attributes]
-    if len(set(scales)) == 1:
-        return {"reference_scale": scales[0]}
-    return {"comment": "; ".join(f"deployment {number} on {scale}" for number, scale in enumerate(scales, start=1))}
-
-
 # ------------------------------------------------------------------------------------------------------------
 # Who wins
 
 
-def _winners(chains: Sequence[xr.Dataset]) -> list[Mask]:
-    """Return for each chain which of its times no earlier chain with a depth in common has."""
+def _windows(tables: Sequence[Spool]) -> Iterator[list[Table]]:
+    """Yield the rows of several tables span by span of time, so that rows of one time come together."""
+    places = [0] * len(tables)
+    while any(place < table.count for place, table in zip(places, tables, strict=True)):
+        ahead = [table.rows(place, place + CHUNK_ROWS) for place, table in zip(places, tables, strict=True)]
+        # Up to the earliest last row of those that go on: whatever has such a time is at hand.
+        unfinished = [
+            rows["time"][-1]
+            for rows, place, table in zip(ahead, places, tables, strict=True)
+            if place + len(rows) < table.count
+        ]
+        window = [rows[rows["time"] <= min(unfinished)] if unfinished else rows for rows in ahead]
+        places = [place + len(rows) for place, rows in zip(places, window, strict=True)]
+        yield window
+
+
+def _winners(times: Sequence[NDArray[np.datetime64]], depths: Sequence[NDArray[np.float32]]) -> list[Mask]:
+    """Return for each delivery which of its times no earlier one with a depth in common has."""
     winners: list[Mask] = []
-    for chain in chains:
-        wins = np.ones(chain.sizes["time"], dtype=bool)
-        for earlier, won in zip(chains, winners, strict=False):
-            if np.isin(chain["depth"], earlier["depth"]).any():
-                wins &= ~np.isin(chain["time"], earlier["time"].values[won])
+    for time, depth in zip(times, depths, strict=True):
+        wins = np.ones(time.size, dtype=bool)
+        for earlier, won, levels in zip(times, winners, depths, strict=False):
+            if np.isin(depth, levels).any():
+                wins &= ~np.isin(time, earlier[won])
         winners.append(wins)
     return winners
 
 
-def _divided(deliveries: Sequence[Delivery], winners: Sequence[Mask]) -> tuple[pd.DataFrame, pd.DataFrame]:
-    """Return the rows that stay, and the quarantine entries of those that lost."""
-    kept, lost, first_source = [], [], 0
-    for number, (delivery, wins) in enumerate(zip(deliveries, winners, strict=True), start=1):
-        has_won = delivery.rows["time"].isin(delivery.chain["time"].values[wins])
-        rows = delivery.rows[has_won]
-        kept.append(rows.assign(source=rows["source"] + first_source))
-        lost += _lost_entries(delivery, delivery.rows[~has_won], number)
-        first_source += len(delivery.sources)
-    return pd.concat(kept, ignore_index=True), pd.DataFrame(lost, columns=list(QUARANTINE_COLUMNS))
-
-
-def _lost_entries(delivery: Delivery, rows: pd.DataFrame, number: int) -> list[tuple[str, int, str, str]]:
+def _divided(delivery: Delivery, lost: NDArray[np.datetime64], number: int) -> tuple[list[Source], pd.DataFrame]:
+    """Return the files of a delivery without the rows that lost, and the quarantine entries of those."""
     reason = f"an earlier delivery has this time and comes first; this is number {number}"
-    entries = []
-    for place, (path, layout) in enumerate(delivery.sources):
-        of_source = rows[rows["source"] == place]
-        times = dict(zip(of_source["line"], of_source["time"].to_numpy(), strict=True))
-        texts = row_texts(path, layout, times, times) if times else {}
-        entries += [(str(path), line, reason, text) for line, text in texts.items()]
-    return entries
+    sources, entries = [], []
+    for source in delivery.sources:
+        lines = source.lines_at(lost) if lost.size else {}
+        texts = source.texts(lines)
+        entries += [(str(source.path), line, reason, texts[line]) for line in lines]
+        sources.append(replace(source, lost=source.lost | frozenset(lines)))
+    return sources, pd.DataFrame(entries, columns=list(QUARANTINE_COLUMNS))
 
 
 # ------------------------------------------------------------------------------------------------------------
 # One table
 
 
-def _joined(chains: Sequence[xr.Dataset], winners: Sequence[Mask]) -> xr.Dataset:
-    time = np.unique(np.concatenate([chain["time"].values[wins] for chain, wins in zip(chains, winners, strict=True)]))
-    depth = np.unique(np.concatenate([chain["depth"].values for chain in chains]))
-    joined = xr.Dataset(coords={"time": time, "depth": depth})
-    shape, grid = (time.size, depth.size), ("time", "depth")
-    tables = {name: np.full(shape, np.nan, np.float32) for name in ("temperature_raw", "temperature")}
-    if any("temperature_delivered_qc" in chain for chain in chains):
-        tables["temperature_delivered_qc"] = np.full(shape, Flag.MISSING, np.int8)
-    deployment = np.zeros(time.size, dtype=np.int16)
-    uncertainty = np.zeros(depth.size, dtype=np.float32)
-    # Last to first, so that a time that several chains complete carries the number of the first.
-    for number, chain, wins in reversed(list(zip(range(1, len(chains) + 1), chains, winners, strict=True))):
-        at_time = np.searchsorted(time, chain["time"].values[wins])
-        at_depth = np.searchsorted(depth, chain["depth"].values)
-        deployment[at_time] = number
-        uncertainty[at_depth] = np.maximum(uncertainty[at_depth], chain["temperature_uncertainty"].values)
-        for name, table in tables.items():
-            table[np.ix_(at_time, at_depth)] = _values(chain, name)[wins]
-    joined = joined.assign({name: (grid, table) for name, table in tables.items()})
-    return joined.assign(temperature_uncertainty=("depth", uncertainty), deployment=("time", deployment))
+def _joined(
+    deliveries: Sequence[Delivery],
+    parts: Sequence[Table],
+    winners: Sequence[Mask],
+    depth: NDArray[np.float32],
+    row_type: np.dtype[np.void],
+) -> Table:
+    time = np.unique(np.concatenate([part["time"][wins] for part, wins in zip(parts, winners, strict=True)]))
+    table = np.zeros(time.size, row_type)
+    table["time"], table["values"], table["flags"] = time, np.nan, Flag.MISSING
+    first_piece = np.cumsum([0, *(len(delivery.scales) for delivery in deliveries)])
+    # Last to first, so that a time that several deliveries complete carries the number of the first.
+    for delivery, part, wins, pieces in reversed(list(zip(deliveries, parts, winners, first_piece, strict=False))):
+        rows = part[wins]
+        at_time, at_depth = np.searchsorted(time, rows["time"]), np.searchsorted(depth, delivery.depth)
+        table["piece"][at_time] = rows["piece"] + pieces
+        table["values"][np.ix_(at_time, at_depth)] = rows["values"]
+        if table["flags"].shape[1]:
+            table["flags"][np.ix_(at_time, at_depth)] = _flags(rows)
+    return table
 
 
-def _values(chain: xr.Dataset, name: str) -> NDArray[np.floating] | NDArray[np.int8]:
-    if name in chain:
-        return np.asarray(chain[name].values)
-    is_missing = np.isnan(chain["temperature"].values)
-    return np.where(is_missing, Flag.MISSING, Flag.NOT_EVALUATED).astype(np.int8)
+def _flags(rows: Table) -> NDArray[np.int8]:
+    if rows["flags"].shape[1]:
+        return np.asarray(rows["flags"])
+    return np.where(np.isnan(rows["values"]), Flag.MISSING, Flag.NOT_EVALUATED).astype(np.int8)

@@ -1,211 +1,199 @@
-"""Text files line by line: plain or gzip, split into cells, in blocks."""
+"""Text files line by line: numbered from 1, without blank and comment lines, cut into cells."""
 
 from __future__ import annotations
 
-import csv
-import gzip
-import io
-import re
-import zlib
 from collections.abc import Collection, Iterator
-from contextlib import contextmanager
 from dataclasses import dataclass
-from itertools import islice
 from pathlib import Path
-from typing import IO
 
-from profiles.errors import DataError, MachineError, RequestError
+import numba
+import numpy as np
+from numpy.typing import NDArray
+
+from profiles.errors import DataError
+from profiles.ingest.cells import Cells, delimited_cells, fixed_cells
 from profiles.ingest.layout import WHITESPACE, TextLayout
-from profiles.ingest.record import Tally
-from profiles.ingest.wording import listed, nearest, printable
+from profiles.ingest.source import internal_encoding, line_blocks
+from profiles.ingest.wording import printable
 
-BLOCK_LINES = 100_000
-GZIP_MAGIC = b"\x1f\x8b"
-_SAMPLE = 4096  # bytes looked at to tell text from other files
-_BINARY_SHARE = 0.1  # of control characters and undecodable bytes in a sample; text has next to none (ours)
-_BLANK = " \t\r\n\f\v"
-_QUOTE = '"'
-_UNDECODED = re.compile("[\udc80-\udcff]")  # what the error handler surrogateescape leaves for such bytes
-_CONTROL = re.compile("[\x00-\x08\x0e-\x1f\udc80-\udcff]")
+Bytes = NDArray[np.uint8]
+Places = NDArray[np.int64]
+Mask = NDArray[np.bool_]
+
+FEED, RETURN, SPACE, TAB, FORM_FEED = 10, 13, 32, 9, 12
 
 
-def check_file(path: Path) -> bytes:
-    """Return the first bytes of a file that is there and not empty.
-
-    Raises
-    ------
-    RequestError
-        Where there is no such file, or it is a folder.
-    DataError
-        Where it is empty.
-    MachineError
-        Where it may not be read.
-    """
-    try:
-        with path.open("rb") as handle:
-            head = handle.read(_SAMPLE)
-    except FileNotFoundError:
-        near = nearest(path.name, [entry.name for entry in path.parent.glob("*")])
-        raise RequestError(
-            "no such file", where=str(path), expected="a delivery", advice=f"check the path{near}"
-        ) from None
-    except IsADirectoryError:
-        raise RequestError("is a folder", where=str(path), expected="a file", advice="name the file in it") from None
-    except OSError as error:
-        raise MachineError(
-            "cannot be read", where=str(path), found=error.strerror, advice="check its permissions"
-        ) from error
-    if not head:
-        raise DataError(
-            "the file is empty",
-            where=str(path),
-            expected="a delivery",
-            found="0 bytes",
-            advice="fetch it again",
-        )
-    return head
+# --------------------------------------------------------------------------------------------------------------
+# Kernels
 
 
-@contextmanager
-def open_text(path: Path, encoding: str) -> Iterator[IO[str]]:
-    """Open a text file, plain or gzip; what cannot be read on the way is reported as an error of the file."""
-    opener = gzip.open if check_file(path).startswith(GZIP_MAGIC) else open
-    try:
-        with opener(path, "rb") as raw, io.TextIOWrapper(raw, encoding, errors="surrogateescape") as text:
-            yield text
-    except (EOFError, gzip.BadGzipFile, zlib.error) as error:
-        raise DataError(
-            "the compressed file is damaged", where=str(path), found=str(error), advice="fetch it again"
-        ) from error
-    except UnicodeError as error:
-        raise DataError(
-            "the file is not in the layout's encoding", where=str(path), expected=encoding, found=str(error)
-        ) from error
+@numba.njit(cache=True)
+def find_lines(buffer: Bytes) -> tuple[Places, Places]:
+    """Return where lines start and end; a feed, a return, or both in this order end a line."""
+    count = 0
+    for place in range(buffer.size):
+        if buffer[place] == FEED or (
+            buffer[place] == RETURN and not (place + 1 < buffer.size and buffer[place + 1] == FEED)
+        ):
+            count += 1
+    if buffer.size and buffer[-1] != FEED and buffer[-1] != RETURN:
+        count += 1
+    starts, ends = np.empty(count, np.int64), np.empty(count, np.int64)
+    line, start, place = 0, 0, 0
+    while place < buffer.size:
+        if buffer[place] == FEED or buffer[place] == RETURN:
+            starts[line], ends[line] = start, place
+            if buffer[place] == RETURN and place + 1 < buffer.size and buffer[place + 1] == FEED:
+                place += 1
+            start = place + 1
+            line += 1
+        place += 1
+    if start < buffer.size:
+        starts[line], ends[line] = start, buffer.size
+    return starts, ends
 
 
-def check_text(path: Path, encoding: str) -> None:
-    """Raise DataError where a file is no text."""
-    with open_text(path, encoding) as text:
-        sample = text.read(_SAMPLE)
-    if not sample:
-        raise DataError("the file is empty", where=str(path), expected="text", found="nothing once unpacked")
-    if len(_CONTROL.findall(sample)) > _BINARY_SHARE * len(sample):
-        raise DataError(
-            "is a binary file",
-            where=str(path),
-            expected="delimited text, as the layout says",
-            found=f"it begins with {check_file(path)[:8]!r}",
-            advice='give the layout that fits it, for NetCDF one of kind = "netcdf"',
-        )
+@numba.njit(cache=True)
+def begin_with(buffer: Bytes, starts: Places, ends: Places, text: Bytes) -> Mask:
+    """Tell which lines begin with a text, after blanks; with an empty text, which are blank."""
+    found = np.zeros(starts.size, np.bool_)
+    for line in range(starts.size):
+        place = starts[line]
+        while place < ends[line] and (buffer[place] == SPACE or TAB <= buffer[place] <= RETURN):
+            place += 1
+        if text.size == 0:
+            found[line] = place == ends[line]
+        elif place + text.size <= ends[line]:
+            found[line] = True
+            for letter in range(text.size):
+                if buffer[place + letter] != text[letter]:
+                    found[line] = False
+                    break
+    return found
 
 
-def numbered_lines(text: IO[str], comment: str) -> Iterator[tuple[int, str]]:
-    """Yield lines with their number in the file, from 1, without blank and comment lines."""
-    for number, line in enumerate(text, start=1):
-        content = line.strip(_BLANK)
-        if content and not (comment and content.startswith(comment)):
-            yield number, line.rstrip("\n")
-
-
-def split(line: str, delimiter: str) -> list[str] | None:
-    """Return the cells of a line without blanks at their ends; None where its quotes do not pair."""
-    if delimiter == WHITESPACE:
-        return line.split()
-    if _QUOTE not in line:
-        return [cell.strip() for cell in line.split(delimiter)]
-    try:
-        return [cell.strip() for cell in next(csv.reader([line], delimiter=delimiter, strict=True))]
-    except csv.Error:
-        return None
+# --------------------------------------------------------------------------------------------------------------
+# Lines
 
 
 @dataclass(frozen=True)
-class Block:
-    """Rows with the right number of cells: their line numbers, cells and texts."""
+class Lines:
+    """Some lines of a file: the bytes, where each starts and ends in them, and its number in the file."""
 
-    lines: list[int]
-    cells: list[list[str]]
-    texts: list[str]
+    buffer: Bytes
+    starts: Places
+    ends: Places
+    number: Places
+    encoding: str
 
+    def where(self, chosen: Mask | Places | slice) -> Lines:
+        """Return some of the lines, by mask or by place."""
+        return Lines(self.buffer, self.starts[chosen], self.ends[chosen], self.number[chosen], self.encoding)
 
-@dataclass(frozen=True)
-class Table:
-    """A text file past its header: the column names, and the rows still to be read."""
+    def __len__(self) -> int:
+        return self.number.size
 
-    where: str
-    names: list[str]
-    rows: Iterator[tuple[int, str]]
-    layout: TextLayout
-
-    def column(self, name: str, role: str) -> int:
-        """Return the place of a column; raise DataError where it is missing or its name appears twice."""
-        count = self.names.count(name)
-        if count == 1:
-            return self.names.index(name)
-        raise DataError(
-            f"the {role} column is missing" if count == 0 else f"there are {count} columns of this name",
-            where=self.where,
-            expected=f"a column {name!r}",
-            found=listed(self.names),
-            advice=f"give the column's name in the layout{nearest(name, self.names) if count == 0 else ''}",
+    def behind(self, earlier: Lines) -> Lines:
+        """Return these lines behind those that stand before them in the file."""
+        shift = earlier.buffer.size
+        return Lines(
+            np.concatenate([earlier.buffer, self.buffer]),
+            np.concatenate([earlier.starts, self.starts + shift]),
+            np.concatenate([earlier.ends, self.ends + shift]),
+            np.concatenate([earlier.number, self.number]),
+            self.encoding,
         )
 
-    def blocks(self, tally: Tally) -> Iterator[Block]:
-        """Yield rows in blocks, counting each; those without a cell for every name are rejected."""
-        while taken := list(islice(self.rows, BLOCK_LINES)):
-            tally.rows_read += len(taken)
-            yield self._split(taken, tally)
+    def cut_loose(self) -> Lines:
+        """Return the lines without the bytes before them, for keeping."""
+        first = int(self.starts[0]) if len(self) else self.buffer.size
+        return Lines(self.buffer[first:].copy(), self.starts - first, self.ends - first, self.number, self.encoding)
 
-    def _split(self, taken: list[tuple[int, str]], tally: Tally) -> Block:
-        block = Block([], [], [])
-        for line, text in taken:
-            cells = split(text, self.layout.delimiter)
-            reason = self._problem(text, cells)
-            if cells is not None and reason is None:
-                block.lines.append(line)
-                block.cells.append(cells)
-                block.texts.append(text)
-            else:
-                tally.reject([line], [reason or "the quotes do not pair"], [text])
-        return block
+    def begin_with(self, text: str) -> Mask:
+        """Tell which lines begin with a text, after blanks."""
+        return begin_with(self.buffer, self.starts, self.ends, as_bytes(text, self.encoding))
 
-    def _problem(self, text: str, cells: list[str] | None) -> str | None:
-        if "\x00" in text:
-            return "the row holds a NUL byte"
-        if not text.isascii() and _UNDECODED.search(text):
-            return f"the row holds bytes that are not {self.layout.encoding}"
-        if cells is not None and len(cells) != len(self.names):
-            return f"{len(cells)} cells where there are {len(self.names)} columns"
-        return None
+    def texts(self) -> list[str]:
+        """Return the lines as text, bytes that are not in the encoding escaped as surrogates."""
+        return [
+            self.buffer[start:end].tobytes().decode(self.encoding, "surrogateescape")
+            for start, end in zip(self.starts, self.ends, strict=True)
+        ]
+
+    def cells(self, layout: TextLayout, columns: int) -> Cells:
+        """Cut the lines into ``columns`` cells each, as the layout says."""
+        if layout.fixed:
+            places = np.array(list(layout.fixed.values()), np.int64).reshape(-1, 2)
+            return fixed_cells(self.buffer, self.starts, self.ends, places, self.encoding == "utf-8", layout.trimmed)
+        delimiter = 0 if layout.delimiter == WHITESPACE else ord(layout.delimiter)
+        return delimited_cells(self.buffer, self.starts, self.ends, delimiter, columns, layout.ends_with_delimiter)
 
 
-@contextmanager
-def open_table(path: Path, layout: TextLayout) -> Iterator[Table]:
-    """Open a delimited text file and read its header.
+def as_bytes(text: str, encoding: str) -> Bytes:
+    """Return a text as the bytes that it has in a file."""
+    return np.frombuffer(text.encode(encoding, "surrogateescape"), np.uint8)
+
+
+def data_lines(path: Path, layout: TextLayout) -> Iterator[Lines]:
+    """Yield the lines of a file that are neither blank nor comment, in blocks, the header among them.
 
     Raises
     ------
     RequestError, DataError, MachineError
-        Where the file cannot be read, is no text, or ends before its header does.
+        Where the file cannot be read or is no text.
     """
-    check_text(path, layout.encoding)
-    with open_text(path, layout.encoding) as text:
-        rows = numbered_lines(text, layout.comment)
-        header = [line for _, line in islice(rows, layout.header_rows)]
-        if len(header) < layout.header_rows:
-            raise DataError(
-                "the file ends before its header does",
-                where=str(path),
-                expected=f"{layout.header_rows} header rows",
-                found=str(len(header)),
-                advice="check header_rows and comment in the layout",
-            )
-        names = list(layout.names) or split(header[layout.names_row - 1], layout.delimiter) or []
-        yield Table(str(path), names, rows, layout)
+    encoding = internal_encoding(layout.encoding)
+    passed = 0
+    for block in line_blocks(path, layout):
+        buffer = np.frombuffer(block, np.uint8)
+        starts, ends = find_lines(buffer)
+        lines = Lines(buffer, starts, ends, np.arange(passed + 1, passed + starts.size + 1), encoding)
+        passed += starts.size
+        skipped = lines.begin_with("")
+        if layout.comment:
+            skipped |= lines.begin_with(layout.comment)
+        yield lines.where(~skipped)
 
 
-def texts_of(path: Path, layout: TextLayout, lines: Collection[int]) -> dict[int, str]:
+def past_header(path: Path, layout: TextLayout) -> tuple[list[str], Iterator[Lines]]:
+    """Return the header rows of a file, and the lines behind them in blocks.
+
+    Raises
+    ------
+    DataError
+        Where the file ends before its header does; also what :func:`data_lines` raises.
+    """
+    blocks = data_lines(path, layout)
+    header: list[str] = []
+    rest: list[Lines] = []
+    for lines in blocks:
+        wanted = layout.header_rows - len(header)
+        header += lines.where(slice(None, wanted)).texts()
+        rest = [lines.where(slice(wanted, None))]
+        if len(header) == layout.header_rows:
+            break
+    if len(header) < layout.header_rows:
+        raise DataError(
+            "the file ends before its header does",
+            where=str(path),
+            expected=f"{layout.header_rows} header rows",
+            found=str(len(header)),
+            advice="check header_rows and comment in the layout",
+        )
+    return header, _chained(rest, blocks)
+
+
+def _chained(first: list[Lines], rest: Iterator[Lines]) -> Iterator[Lines]:
+    yield from first
+    yield from rest
+
+
+def texts_of(path: Path, layout: TextLayout, numbers: Collection[int]) -> dict[int, str]:
     """Return some lines by number, fit to print, reading the file once more."""
-    wanted = set(lines)
-    with open_text(path, layout.encoding) as text:
-        return {number: printable(line.rstrip("\n")) for number, line in enumerate(text, start=1) if number in wanted}
+    wanted = np.array(sorted(numbers), np.int64)
+    found: dict[int, str] = {}
+    for lines in data_lines(path, layout):
+        chosen = lines.where(np.isin(lines.number, wanted))
+        texts = map(printable, chosen.texts())
+        found |= dict(zip(chosen.number.tolist(), texts, strict=True))
+    return found

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import warnings
 from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
@@ -16,9 +17,13 @@ from numpy.typing import NDArray
 from scipy.io import netcdf_file
 
 from profiles.errors import DataError
+from profiles.ingest.clock import hours
 from profiles.ingest.layout import NetcdfLayout
-from profiles.ingest.lines import GZIP_MAGIC, check_file
 from profiles.ingest.record import Record, Tally, checked_depths, repeats
+from profiles.ingest.settling import settle_wide
+from profiles.ingest.source import GZIP_MAGIC, check_file
+from profiles.ingest.spool import Spool, wide_type
+from profiles.ingest.table import cell_methods
 from profiles.ingest.units import (
     METRE,
     is_pressure,
@@ -71,6 +76,7 @@ def read_netcdf(path: Path, layout: NetcdfLayout) -> Record:
         (stamps, metres, values, flags),
         scale=scale,
         depth_is_pressure=depth_is_pressure,
+        cell_methods=_cell_methods(source, temperature),
         mooring=str(mooring) if mooring else None,
         latitude=latitude,
         longitude=longitude,
@@ -243,7 +249,7 @@ def _stamps(source: Source, time: xr.DataArray) -> NDArray[np.datetime64]:
             advice="correct the attributes in the file",
         )
     stamps: NDArray[np.datetime64] = pd.DatetimeIndex(time.values).round("ms").to_numpy().astype("datetime64[ns]")
-    return stamps + np.timedelta64(round(source.layout.time.offset_hours * 3_600e9), "ns")
+    return stamps + hours(source.layout.time.to_centre_hours)
 
 
 def _depths(source: Source, depth: xr.DataArray) -> NDArray[np.float64]:
@@ -305,6 +311,12 @@ def _in_our_flags(
     return ours, ~(np.isnan(flags) | np.isin(flags, list(mapping)))
 
 
+def _cell_methods(source: Source, temperature: xr.DataArray) -> str | None:
+    """Return what a reading stands for: what the layout says, else the file's own words about time."""
+    stated = re.search(r"\btime: (?:mean|point)(?: \([^)]*\))?", str(temperature.attrs.get("cell_methods", "")))
+    return cell_methods(source.layout.time) or (stated.group() if stated is not None else None)
+
+
 Contents = tuple[NDArray[np.datetime64], NDArray[np.float64], NDArray[np.float64], NDArray[np.float64] | None]
 
 
@@ -323,19 +335,33 @@ def _record(source: Source, contents: Contents, **known: Any) -> Record:
     is_bad = pd.notna(reasons)
     kept, line = np.flatnonzero(~is_bad), np.arange(1, time.size + 1)
     tally.reject(line[is_bad], reasons[is_bad], [step_text(line, time[line - 1]) for line in line[is_bad]])
-    rejected = tally.settle(kept.size, source.where)
-    by_time, by_depth = kept[np.argsort(time[kept], kind="stable")], np.argsort(depth)
-    chosen = np.ix_(by_time, by_depth)
+    tally.rows_kept = kept.size
+    read = _spooled(time, temperature, ours, depth, kept)
     return Record(
-        time=time[by_time],
-        depth=depth[by_depth],
-        temperature=temperature[chosen].astype(np.float32),
-        delivered_qc=ours[chosen] if ours is not None else None,
-        rows=pd.DataFrame({"time": time[kept], "line": line[kept]}),
-        rejected=rejected,
+        read=read,
+        table=settle_wide(read, np.ones((1, depth.size), bool), tally),
+        depth=np.sort(depth),
+        rejected=tally.settle(source.where),
         rows_read=tally.rows_read,
         **known,
     )
+
+
+def _spooled(
+    time: NDArray[np.datetime64],
+    temperature: NDArray[np.float64],
+    flags: NDArray[np.int8] | None,
+    depth: NDArray[np.float64],
+    kept: NDArray[np.intp],
+) -> Spool:
+    spool = Spool(wide_type(depth.size, flagged=flags is not None))
+    rows, by_depth = np.zeros(kept.size, spool.row_type), np.argsort(depth)
+    rows["line"], rows["time"], rows["piece"] = kept + 1, time[kept], 1
+    rows["values"] = temperature[np.ix_(kept, by_depth)]
+    if flags is not None:
+        rows["flags"] = flags[np.ix_(kept, by_depth)]
+    spool.append(rows)
+    return spool
 
 
 def _name_repeats(time: NDArray[np.datetime64], reasons: NDArray[np.object_]) -> None:

@@ -3,14 +3,25 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Collection
+from collections.abc import Collection, Mapping, Sequence
+from dataclasses import dataclass
 from enum import IntEnum
+from functools import cached_property
 
+import numba
 import numpy as np
 from numpy.typing import NDArray
 
+from profiles.ingest.cells import Bytes
+
 _SYNTAX = r"[+-]?(?:[0-9]+(?:{mark}[0-9]*)?|{mark}[0-9]+)(?:[eE][+-]?[0-9]+)?"
-_LARGEST = float(np.finfo(np.float32).max)  # chains are stored in float32
+LARGEST = float(np.finfo(np.float32).max)  # chains are stored in float32
+
+ZERO, NINE, PLUS, MINUS, EXPONENTS = 48, 57, 43, 45, (69, 101)
+_EXACT_DIGITS = 15  # a whole number of so many digits is a float64, exactly
+_EXACT_POWER = 22  # and so is ten to at most this power: their quotient is rounded once, as it must be
+_POWERS: NDArray[np.float64] = np.array([10.0**power for power in range(_EXACT_POWER + 1)])
+_LARGEST_EXPONENT = 9999  # beyond any float64; more digits of an exponent change nothing
 
 
 class Problem(IntEnum):
@@ -19,6 +30,7 @@ class Problem(IntEnum):
     NONE = 0
     NOT_A_NUMBER = 1
     NOT_FINITE = 2
+    UNDECIDED = 3  # a number of more digits than the kernel rounds exactly
 
     def describe(self, cell: str) -> str:
         """Return the reason a row with this cell is quarantined."""
@@ -27,53 +39,217 @@ class Problem(IntEnum):
         return f"{cell[:40]!r} is neither a number nor a missing token"
 
 
-def parse_numbers(
-    cells: NDArray[np.object_], *, decimal: str, missing: Collection[str]
-) -> tuple[NDArray[np.float64], NDArray[np.int8]]:
-    """Read numbers.
+# --------------------------------------------------------------------------------------------------------------
+# Kernels
 
-    Parameters
+
+@numba.njit(cache=True, inline="always")  # as a call it takes three times as long
+def _mantissa(buffer: Bytes, place: int, end: int, mark: int) -> tuple[float, int, int, int, int]:
+    """Return sign, digits as a whole number, how many, how many of them behind the mark, and the place behind them."""
+    sign = 1.0
+    if place < end and (buffer[place] == PLUS or buffer[place] == MINUS):
+        sign = -1.0 if buffer[place] == MINUS else 1.0
+        place += 1
+    whole, digits, point = 0, 0, -1
+    while place < end:
+        digit = int(buffer[place]) - ZERO
+        if 0 <= digit <= 9:
+            whole = 10 * whole + digit
+            digits += 1
+        elif buffer[place] == mark and point < 0:
+            point = digits
+        else:
+            break
+        place += 1
+    return sign, whole, digits, (digits - point if point >= 0 else 0), place
+
+
+@numba.njit(cache=True)
+def _plain_numbers(
+    buffer: Bytes,
+    starts: NDArray[np.int32],
+    ends: NDArray[np.int32],
+    mark: int,
+    powers: NDArray[np.float64],
+) -> tuple[NDArray[np.float64], NDArray[np.int8]]:
+    """Return the numbers that have no exponent and few digits; what is none of them is undecided."""
+    values, problems = np.empty(starts.shape, np.float64), np.zeros(starts.shape, np.int8)
+    for line in range(starts.shape[0]):
+        for column in range(starts.shape[1]):
+            end = int(ends[line, column])
+            sign, whole, digits, behind, place = _mantissa(buffer, int(starts[line, column]), end, mark)
+            if place != end or digits == 0 or digits > _EXACT_DIGITS:
+                values[line, column], problems[line, column] = np.nan, 3
+            else:
+                values[line, column] = sign * (whole / powers[behind])
+    return values, problems
+
+
+@numba.njit(cache=True)
+def _exponent(buffer: Bytes, place: int, end: int) -> tuple[int, bool]:
+    """Return the exponent that begins at a place, and whether it is one up to the end of the cell."""
+    if place == end or (buffer[place] != EXPONENTS[0] and buffer[place] != EXPONENTS[1]):
+        return 0, place == end
+    place += 1
+    sign, exponent, digits = 1, 0, 0
+    if place < end and (buffer[place] == PLUS or buffer[place] == MINUS):
+        sign = -1 if buffer[place] == MINUS else 1
+        place += 1
+    while place < end and ZERO <= buffer[place] <= NINE:
+        exponent = min(10 * exponent + (buffer[place] - ZERO), _LARGEST_EXPONENT)
+        digits += 1
+        place += 1
+    return sign * exponent, digits > 0 and place == end
+
+
+@numba.njit(cache=True)
+def _number(buffer: Bytes, start: int, end: int, mark: int, powers: NDArray[np.float64]) -> tuple[float, int]:
+    """Return the number that a cell is, and a :class:`Problem`."""
+    sign, whole, digits, behind, place = _mantissa(buffer, int(start), int(end), mark)
+    exponent, is_whole = _exponent(buffer, place, end)
+    if digits == 0 or not is_whole:
+        return np.nan, 1
+    power = exponent - behind
+    if digits > _EXACT_DIGITS or abs(power) > _EXACT_POWER:
+        return np.nan, 3
+    return sign * (whole / powers[-power] if power < 0 else whole * powers[power]), 0
+
+
+@numba.njit(cache=True)
+def _same_text(buffer: Bytes, start: int, end: int, texts: Bytes, edges: NDArray[np.int64]) -> int:
+    """Return which of some texts, joined with their edges, a cell is; -1 for none."""
+    for text in range(edges.size - 1):
+        if edges[text + 1] - edges[text] == end - start:
+            same = True
+            for letter in range(end - start):
+                if buffer[start + letter] != texts[edges[text] + letter]:
+                    same = False
+                    break
+            if same:
+                return text
+    return -1
+
+
+@numba.njit(cache=True)
+def _decide(
+    buffer: Bytes,
+    starts: NDArray[np.int32],
+    ends: NDArray[np.int32],
+    mark: int,
+    powers: NDArray[np.float64],
+    texts: Bytes,
+    edges: NDArray[np.int64],
+    values: NDArray[np.float64],
+    problems: NDArray[np.int8],
+) -> None:
+    """Read the cells that are undecided so far: numbers with exponents, and tokens that are no numbers."""
+    for line in range(starts.shape[0]):
+        for column in range(starts.shape[1]):
+            if problems[line, column]:
+                start, end = starts[line, column], ends[line, column]
+                value, problem = _number(buffer, start, end, mark, powers)
+                if problem and _same_text(buffer, start, end, texts, edges) >= 0:
+                    problem = 0
+                values[line, column], problems[line, column] = value, problem
+
+
+@numba.njit(cache=True)
+def _marks(
+    buffer: Bytes,
+    starts: NDArray[np.int32],
+    ends: NDArray[np.int32],
+    texts: Bytes,
+    edges: NDArray[np.int64],
+    codes: NDArray[np.int8],
+) -> NDArray[np.int8]:
+    found = np.empty(starts.shape, np.int8)
+    for line in range(starts.shape[0]):
+        for column in range(starts.shape[1]):
+            place = _same_text(buffer, starts[line, column], ends[line, column], texts, edges)
+            found[line, column] = codes[place] if place >= 0 else -1
+    return found
+
+
+# --------------------------------------------------------------------------------------------------------------
+# Over cells
+
+
+def _joined(texts: Sequence[str], encoding: str) -> tuple[Bytes, NDArray[np.int64]]:
+    encoded = [text.encode(encoding, "surrogateescape") for text in texts]
+    edges = np.concatenate([[0], np.cumsum([len(text) for text in encoded])]).astype(np.int64)
+    return np.frombuffer(b"".join(encoded), np.uint8), edges
+
+
+@dataclass(frozen=True)
+class Numerals:
+    """How numbers are written in a file.
+
+    Attributes
     ----------
-    cells : ndarray of str, any shape
-        Without blanks at the ends.
     decimal : str
         The decimal mark.
     missing : collection of str
         Tokens that stand for no reading. A cell is one of them where the texts are equal or where both are
         numbers and these are equal.
-
-    Returns
-    -------
-    values : ndarray of float64
-        NaN where missing or wrong.
-    problems : ndarray of int8
-        :class:`Problem` of each cell.
+    encoding : str
+        Of the cells.
     """
-    syntax = re.compile(_SYNTAX.format(mark=re.escape(decimal)))
-    flat = cells.ravel()
-    is_number = np.fromiter((syntax.fullmatch(cell) is not None for cell in flat), bool, flat.size)
-    values = np.full(flat.size, np.nan)
-    values[is_number] = _floats(flat[is_number], decimal)
-    is_token = _are_tokens(flat, values, missing, decimal)
-    values[is_token] = np.nan
-    problems = np.where(is_number | is_token, Problem.NONE, Problem.NOT_A_NUMBER).astype(np.int8)
-    overflow = np.abs(values) > _LARGEST
-    problems[overflow] = Problem.NOT_FINITE
-    values[overflow] = np.nan
-    return values.reshape(cells.shape), problems.reshape(cells.shape)
+
+    decimal: str
+    missing: Collection[str]
+    encoding: str = "utf-8"
+
+    @cached_property
+    def _tokens(self) -> NDArray[np.float64]:
+        return np.array([number for token in self.missing for number in _numeric(token.strip(), self.decimal)], float)
+
+    @cached_property
+    def _texts(self) -> tuple[Bytes, NDArray[np.int64]]:
+        return _joined([token.strip() for token in self.missing], self.encoding)
+
+    def read(
+        self, buffer: Bytes, starts: NDArray[np.int32], ends: NDArray[np.int32]
+    ) -> tuple[NDArray[np.float64], NDArray[np.int8]]:
+        """Read numbers.
+
+        Parameters
+        ----------
+        buffer : ndarray of uint8
+        starts, ends : ndarray of int32, (line, column)
+            Where the cells are in it, without blanks at their ends.
+
+        Returns
+        -------
+        values : ndarray of float64, (line, column)
+            Rounded as Python rounds; NaN where missing or wrong.
+        problems : ndarray of int8, (line, column)
+            :class:`Problem` of each cell.
+        """
+        mark = ord(self.decimal)
+        values, problems = _plain_numbers(buffer, starts, ends, mark, _POWERS)
+        if problems.any():
+            _decide(buffer, starts, ends, mark, _POWERS, *self._texts, values, problems)
+        for line, column in zip(*np.nonzero(problems == Problem.UNDECIDED), strict=True):
+            text = buffer[starts[line, column] : ends[line, column]].tobytes().decode("ascii")
+            values[line, column] = float(text.replace(self.decimal, "."))
+        problems[problems == Problem.UNDECIDED] = Problem.NONE
+        for token in self._tokens:
+            values[values == token] = np.nan
+        is_beyond = np.abs(values) > LARGEST
+        values[is_beyond], problems[is_beyond] = np.nan, Problem.NOT_FINITE
+        return values, problems
 
 
-def _floats(cells: NDArray[np.object_], decimal: str) -> NDArray[np.float64]:
-    texts = cells if decimal == "." else [cell.replace(decimal, ".") for cell in cells]
-    return np.asarray(texts, dtype=object).astype(np.float64)
-
-
-def _are_tokens(
-    cells: NDArray[np.object_], values: NDArray[np.float64], missing: Collection[str], decimal: str
-) -> NDArray[np.bool_]:
-    tokens = frozenset(token.strip() for token in missing)
-    same_text = np.fromiter((cell in tokens for cell in cells), bool, cells.size)
-    return same_text | np.isin(values, [number for token in tokens for number in _numeric(token, decimal)])
+def read_marks(
+    buffer: Bytes,
+    starts: NDArray[np.int32],
+    ends: NDArray[np.int32],
+    codes: Mapping[str, int],
+    encoding: str,
+) -> NDArray[np.int8]:
+    """Return the code of each cell by its text, (line, column); -1 where there is none for it."""
+    ours = np.array(list(codes.values()), np.int8)
+    return _marks(buffer, starts, ends, *_joined(list(codes), encoding), ours)
 
 
 def _numeric(token: str, decimal: str) -> list[float]:

@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 
 from profiles.errors import DataError, ThermotiltError
 from profiles.ingest.layout import GREATEST_DEPTH
+from profiles.ingest.spool import Spool
 from profiles.ingest.wording import printable
 
 FIRST_REASONS = 3  # reasons that a message quotes
@@ -31,34 +32,32 @@ class Record:
 
     Attributes
     ----------
-    time : ndarray of datetime64[ns], (time,)
-        UTC, strictly increasing.
+    read : Spool
+        The rows that were understood, in file order; those that later went to quarantine are still there.
+    table : Spool
+        A row per time, strictly increasing in time; the readings are in the order of ``depth``, °C on the scale they
+        were delivered on, NaN missing.
     depth : ndarray of float64, (depth,)
         m, or dbar of sea pressure where ``depth_is_pressure``; positive down, ascending.
-    temperature : ndarray of float32, (time, depth)
-        °C on the scale it was delivered on, NaN missing.
-    delivered_qc : ndarray of int8, (time, depth), or None
-        Our flags for the delivered ones.
     scale : str
         ``"ITS-90"`` or ``"IPTS-68"``.
-    rows : pandas.DataFrame
-        Columns ``time`` and ``line`` of every row that was kept, in file order.
     rejected : tuple of Rejected
     rows_read : int
-        Counted while reading, apart from the two above.
+        Counted while reading, apart from the rows kept and the rows rejected.
+    cell_methods : str, optional
+        What a reading stands for, in the words of CF, where that is known.
     mooring, latitude, longitude
         Where the file says so.
     """
 
-    time: NDArray[np.datetime64]
+    read: Spool
+    table: Spool
     depth: NDArray[np.float64]
-    temperature: NDArray[np.float32]
     scale: str
-    rows: pd.DataFrame
     rejected: tuple[Rejected, ...]
     rows_read: int
-    delivered_qc: NDArray[np.int8] | None = None
     depth_is_pressure: bool = False
+    cell_methods: str | None = None
     mooring: str | None = None
     latitude: float | None = None
     longitude: float | None = None
@@ -66,9 +65,10 @@ class Record:
 
 @dataclass
 class Tally:
-    """Running count of the data rows of one file, and those of them that were rejected."""
+    """Running count of the data rows of one file: read, kept, rejected."""
 
     rows_read: int = 0
+    rows_kept: int = 0
     rejected: list[Rejected] = field(default_factory=list)
 
     def reject(self, lines: Iterable[int], reasons: Iterable[str], texts: Iterable[str] | None = None) -> None:
@@ -81,7 +81,12 @@ class Tally:
                 for line, reason, text in zip(lines, reasons, texts, strict=True)
             ]
 
-    def settle(self, kept: int, where: str) -> tuple[Rejected, ...]:
+    def take_back(self, lines: NDArray[np.int64], reasons: Sequence[str]) -> None:
+        """Move rows that were kept to the quarantine."""
+        self.rows_kept -= len(lines)
+        self.reject(lines, reasons)
+
+    def settle(self, where: str) -> tuple[Rejected, ...]:
         """Return the rejected rows in file order, once the count is right and something was kept.
 
         Raises
@@ -91,11 +96,11 @@ class Tally:
         ThermotiltError
             Where rows were lost on the way, which is a fault of ours.
         """
-        verify_count(self.rows_read, kept, len(self.rejected), where)
+        verify_count(self.rows_read, self.rows_kept, len(self.rejected), where)
         ordered = tuple(sorted(self.rejected, key=lambda row: row.line))
         if self.rows_read == 0:
             raise DataError("there are no data rows", where=where, expected="at least one", found="only a header")
-        if kept == 0:
+        if self.rows_kept == 0:
             raise DataError(
                 "no row could be understood",
                 where=where,
@@ -122,12 +127,6 @@ def repeats(keys: pd.DataFrame) -> tuple[NDArray[np.bool_], NDArray[np.intp]]:
     places = pd.Series(np.arange(len(keys)))
     first = places.groupby([keys[name].to_numpy() for name in keys], sort=False).transform("min").to_numpy()
     return first < places.to_numpy(), first
-
-
-def reordered(times: NDArray[np.datetime64]) -> int:
-    """Return how many rows are earlier than a row that stands before them."""
-    stamps = times.astype("datetime64[ns]").astype(np.int64)
-    return int((stamps < np.maximum.accumulate(stamps)).sum()) if stamps.size else 0
 
 
 def checked_depths(depths: Sequence[float] | NDArray[np.float64], labels: Sequence[str], where: str) -> None:

@@ -60,7 +60,7 @@ def ingest(config: Config, mooring: Mooring, folder: Folder) -> Report:
     if usable:
         joined = usable[0] if len(usable) == 1 else join(usable)
         _count_losses(account, quarantine, joined, usable)
-        store.write_dataset(folder.delivered(mooring.id), joined.chain, dict(joined.chain.attrs))
+        store.write_blocks(folder.delivered(mooring.id), joined.blocks(), {})
     else:
         folder.delivered(mooring.id).unlink(missing_ok=True)
     store.write_table(folder.part("deliveries", mooring.id), pd.DataFrame(account, columns=_DELIVERIES))
@@ -87,7 +87,7 @@ def _count_losses(
     if len(parts) == 1:
         return
     used = [row for row in account if row["outcome"] == "used"]
-    names = {str(part.sources[0][0]): row["file"] for part, row in zip(parts, used, strict=True)}
+    names = {str(part.sources[0].path): row["file"] for part, row in zip(parts, used, strict=True)}
     lost = joined.quarantine.assign(file=joined.quarantine["file"].map(lambda name: names.get(name, name)))
     for row in used:
         moved = int((lost["file"] == row["file"]).sum()) - row["rows_quarantined"]

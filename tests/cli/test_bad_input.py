@@ -107,7 +107,7 @@ def deliver_another_site(array: Path) -> None:
     [
         (remove, WIDE, ("no such file", "expected a delivery", "check the path")),
         (put_folder, WIDE, ("is a folder", "expected a file", "name the file in it")),
-        (put_binary, WIDE, ("is a binary file", "expected delimited text", "found it begins with", "give the layout")),
+        (put_binary, WIDE, ("is a binary file", "expected text", "found it begins with", "give the layout")),
         (put_nothing, WIDE, ("the file is empty", "expected a delivery", "found 0 bytes", "fetch it again")),
         (
             put_half_a_packed_file,

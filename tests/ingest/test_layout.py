@@ -44,10 +44,13 @@ def test_defaults_are_those_the_examples_state(layout_of):
     [
         ("delimeter = ';'\n" + WIDE, r"delimeter: this key is not known; did you mean 'delimiter'\?"),
         (WIDE + "patern = 'x'\n", r"depth.patern: this key is not known; did you mean 'pattern'\?"),
-        (WIDE.replace('"wide"', '"wied"'), r"no known kind.*expected wide, long, netcdf; found 'wied'.*'wide'\?"),
+        (
+            WIDE.replace('"wide"', '"wied"'),
+            r"no known kind.*expected wide, long, blocked, counted, netcdf; found 'wied'.*'wide'\?",
+        ),
         (WIDE.replace('kind = "wide"', ""), r"kind: this key is missing"),
         (WIDE.replace('column = "date"', ""), "time: expected either column or columns"),
-        (WIDE.replace("{depth}", "x"), r"depth: expected \{depth\} once in pattern"),
+        (WIDE.replace("{depth}", "x"), r"depth.pattern: expected \{depth\} once in pattern"),
         (WIDE + "columns = { a = 1.0, b = 1.0 }\n", "depth: expected either pattern or columns"),
         (WIDE.replace('pattern = "T_{depth}m"', "columns = { a = 1.0, b = 1.0 }"), "depth that appears twice: 1"),
         (WIDE + "units = 'furlongs per day'\n", "depth.units: unknown units: 'furlongs per day'"),

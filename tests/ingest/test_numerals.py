@@ -1,11 +1,17 @@
 import numpy as np
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
-from profiles.ingest.numerals import Problem, parse_numbers
+from profiles.ingest.numerals import Numerals, Problem
 
 
 def parsed(*cells, decimal=".", missing=("",)):
-    return parse_numbers(np.array(cells, dtype=object), decimal=decimal, missing=missing)
+    encoded = [cell.encode() for cell in cells]
+    edges = np.cumsum([0, *(len(cell) for cell in encoded)]).astype(np.int32)
+    buffer = np.frombuffer(b"".join(encoded), np.uint8)
+    values, problems = Numerals(decimal, missing).read(buffer, edges[None, :-1], edges[None, 1:])
+    return values[0], problems[0]
 
 
 @pytest.mark.parametrize("cell", ["1", "+1.", "1.0", "01.00", "10e-1", ".1E1"])
@@ -50,8 +56,17 @@ def test_decimal_commas_are_read_with_decimal_commas_only():
     np.testing.assert_array_equal(problems, [Problem.NONE, Problem.NOT_A_NUMBER, Problem.NONE])
 
 
-def test_the_shape_is_kept():
-    cells = np.array([["1", "2", "x"], ["4", "", "6"]], dtype=object)
-    values, problems = parse_numbers(cells, decimal=".", missing=("",))
-    np.testing.assert_array_equal(values, [[1, 2, np.nan], [4, np.nan, 6]])
-    np.testing.assert_array_equal(problems, [[0, 0, Problem.NOT_A_NUMBER], [0, 0, 0]])
+@settings(max_examples=500)
+@given(
+    st.one_of(
+        st.floats(allow_nan=False, allow_infinity=False).map(repr),
+        st.from_regex(r"[+-]?[0-9]{1,25}(\.[0-9]{0,25})?([eE][+-]?[0-9]{1,3})?", fullmatch=True),
+    )
+)
+def test_numbers_are_rounded_as_python_rounds_them(cell):
+    value, problem = (found[0] for found in parsed(cell))
+    expected = float(cell)
+    if abs(expected) > float(np.finfo(np.float32).max):
+        assert problem == Problem.NOT_FINITE
+    else:
+        assert (value, problem) == (expected, Problem.NONE)
