@@ -12,10 +12,11 @@ import textwrap
 import tomllib
 from collections import Counter
 from collections.abc import Sequence
+from datetime import UTC, datetime
 from pathlib import Path
 from typing import Annotated, Any, Literal, Self, TypeVar
 
-from pydantic import BaseModel, ConfigDict, Field, ValidationError, model_validator
+from pydantic import AfterValidator, BaseModel, ConfigDict, Field, ValidationError, model_validator
 
 from profiles.errors import ConfigError, RequestError
 
@@ -231,11 +232,47 @@ class SectionSettings(Settings):
 # The array
 
 
+def _with_zone(moment: datetime) -> datetime:
+    if moment.tzinfo is None:
+        raise ValueError(f"a time without its zone: {moment:%Y-%m-%dT%H:%M:%S}; add Z where it is UTC")
+    return moment.astimezone(UTC)
+
+
+Moment = Annotated[datetime, AfterValidator(_with_zone)]
+
+
+class ClockError(Settings):
+    """How far a logger's clock was ahead: all the time, or growing from when it was set to when it was checked."""
+
+    fast_seconds: Number = Field(description="s; negative where the clock was behind")
+    set: Moment | None = Field(None, description="when the clock was right")
+    checked: Moment | None = Field(None, description="when it was fast_seconds ahead")
+
+    @model_validator(mode="after")
+    def _between(self) -> Self:
+        if (self.set is None) != (self.checked is None):
+            raise ValueError("expected set and checked, or neither")
+        if self.set is not None and self.checked is not None:
+            length = (self.checked - self.set).total_seconds()
+            if length <= 0.0:
+                raise ValueError("the clock was checked before it was set")
+            if abs(self.fast_seconds) >= length:
+                raise ValueError(f"a clock cannot be {self.fast_seconds:g} s out after {length:g} s")
+        return self
+
+
 class Delivery(Settings):
-    """One file of a mooring and the layout it is written in; paths are relative to the configuration file."""
+    """One file of a mooring and the layout it is written in; paths are relative to the configuration file.
+
+    Where deliveries of one mooring have the same time and depth, delayed mode comes before real time, and of one mode
+    the one listed first.
+    """
 
     path: Path
     layout: Path
+    mode: Literal["delayed", "real-time"] = "delayed"
+    deployment: Count | None = Field(None, description="number; by default that of the place in the list")
+    clock: ClockError | None = None
 
 
 class Mooring(Settings):
@@ -246,6 +283,11 @@ class Mooring(Settings):
     longitude: Longitude
     deliveries: tuple[Delivery, ...] = Field(min_length=1)
     sensor_accuracy: Positive | None = Field(None, description="°C, one standard deviation")
+
+    @property
+    def by_precedence(self) -> tuple[Delivery, ...]:
+        """The deliveries in the order in which they win."""
+        return tuple(sorted(self.deliveries, key=lambda delivery: delivery.mode != "delayed"))
 
 
 class Description(Settings):
@@ -268,6 +310,7 @@ class Config(Settings):
 
     file: Path
     array: Description
+    recovery_log: Path | None = Field(None, description="CSV: mooring, deployment, deployed, recovered")
     moorings: tuple[Mooring, ...] = Field(min_length=1)
     qc: QualityControlSettings = QualityControlSettings()
     column: ColumnSettings = ColumnSettings()

@@ -61,6 +61,7 @@ TEST_BITS: Mapping[str, int] = {
     "rate_of_change": 4,
     "flat_line": 5,
     "delivered_flag": 6,
+    "water": 7,
 }
 
 
@@ -101,6 +102,14 @@ class MeanStatus(IntEnum):
     GIVEN = 1
     TOO_FEW_VALUES = 2
     CENSORED = 3  # too many of the profiles only say that the isotherm lies outside the chain
+
+
+class Water(IntEnum):
+    """Whether a chain was in the water."""
+
+    IN_WATER = 1
+    NOT_DEPLOYED = 2  # by the recovery log
+    AIR_FOUND = 3  # its readings are alike from top to bottom, as on deck
 
 
 # --------------------------------------------------------------------------------------------------------------
@@ -193,6 +202,8 @@ _CHAIN_VARIABLES = [
     Variable("sensor_depth", _CHAIN, "depth at which the sensor really was", "m", "depth", "float32", _AUXILIARY,
              {"positive": "down"}),
     Variable("deployment", ("time",), "number of the deployment that measured", "1", None, "int16", _AUXILIARY),
+    Variable("water_status", ("time",), "whether the chain was in the water", None, "status_flag", "int8", _QUALITY,
+             _flag_attributes(Water)),
 ]  # fmt: skip
 
 _COLUMN_VARIABLES = [

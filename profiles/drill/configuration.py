@@ -17,7 +17,8 @@ missing = ["-9.999"]
 [time]
 column = "date"
 format = "%Y-%m-%d"
-offset_hours = 12
+mean_hours = 24
+stamp = "start"
 [depth]
 pattern = "T_{depth}m"
 """
@@ -31,6 +32,7 @@ station = "station"
 column = "time_local"
 format = "%d.%m.%Y %H:%M"
 zone = "+10:00"
+mean_hours = 24
 [depth]
 column = "depth_m"
 [temperature]
@@ -52,7 +54,8 @@ missing = ["-99.99"]
 [time]
 columns = ["year", "day"]
 format = "%Y %j"
-offset_hours = 12
+mean_hours = 24
+stamp = "start"
 [depth]
 pattern = "P{depth}"
 units = "dbar"
@@ -98,7 +101,7 @@ def delivery_path(site: Site) -> str:
     return f"deliveries/{site.institute}/{site.id}.{FORMS[site.institute].ending}"
 
 
-def configuration_text(sites: tuple[Site, ...], *, head: str = "", below: str = "") -> str:
+def configuration_text(sites: tuple[Site, ...], *, head: str = "", below: str = "", log: str = "") -> str:
     """Return a configuration of ``sites`` as TOML.
 
     Parameters
@@ -109,7 +112,10 @@ def configuration_text(sites: tuple[Site, ...], *, head: str = "", below: str = 
     below : str, optional
         How the demo's folder is seen from the configuration, with a slash behind it; the layouts are always in
         ``layouts/`` beside the configuration.
+    log : str, optional
+        Name of the recovery log in the demo's folder; none if it is empty.
     """
+    named = f'recovery_log = "{below}{log}"\n\n' if log else ""
     tables = [
         f"""\
 [[moorings]]
@@ -120,4 +126,4 @@ deliveries = [{{ path = "{below}{delivery_path(site)}", layout = "layouts/{FORMS
 """
         for site in sites
     ]
-    return "\n".join([f"{head}{ARRAY}", *tables])
+    return "\n".join([f"{head}{named}{ARRAY}", *tables])

@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-from collections import Counter
 from collections.abc import Callable, Iterator, Mapping
-from dataclasses import dataclass
 from pathlib import Path
 
 import numpy as np
@@ -20,7 +18,7 @@ from profiles.drill.faults import event_table
 from profiles.drill.instruments import moor
 from profiles.drill.ocean import Columns, Ocean
 from profiles.drill.planting import FAULTS, plant_over_array
-from profiles.drill.service import visits
+from profiles.drill.recovery_log import berths, recovery_log
 from profiles.drill.streams import stream
 from profiles.drill.truth import array_truth, site_columns, site_truth
 from profiles.store import make_folder, write_dataset, write_table, write_text
@@ -30,7 +28,7 @@ FIRST, LAST = "2031-01-01", "2036-12-31"
 NOON = np.timedelta64(12, "h")  # a daily mean is stamped at the middle of its day
 DAMAGED_DELIVERIES = 3  # of each institute that delivers text
 
-CONFIGURATION = "array.toml"  # in the demo's folder
+CONFIGURATION, LOG = "array.toml", "recovery_log.csv"  # in the demo's folder
 _HEAD = """\
 # The deliveries in this folder as one array. Every threshold is left at its default.
 
@@ -63,7 +61,8 @@ def make_demo(
     Parameters
     ----------
     folder : Path
-        Gets ``deliveries/``, ``layouts/``, ``array.toml`` and ``truth/``; files of the same names are replaced.
+        Gets ``deliveries/``, ``layouts/``, ``array.toml``, ``recovery_log.csv`` and ``truth/``; files of the same
+        names are replaced.
     seed : int, optional
         The same seed gives the same bytes.
     time : ndarray of datetime64, shape (time,), optional
@@ -89,7 +88,8 @@ def make_demo(
     chains, events = plant_over_array(list(simulated_chains(ocean, sites, whole, seed)), sites, faults, seed)
     progress(f"chains with {len(events)} planted faults")
     damaged = write_deliveries(folder, sites, chains, seed)
-    write_configuration(folder, CONFIGURATION, configuration_text(sites, head=_HEAD))
+    write_configuration(folder, CONFIGURATION, configuration_text(sites, head=_HEAD, log=LOG))
+    write_table(folder / LOG, recovery_log(list(berths(ocean.time, sites, seed)), ocean.time[0], seed))
     progress(f"deliveries with {len(damaged)} damaged rows")
     truth = make_folder(folder / "truth")
     write_dataset(truth / "sites.nc", site_truth(ocean, sites, large, whole), TRUTH_ATTRIBUTES)
@@ -116,24 +116,6 @@ def write_configuration(folder: Path, name: str, text: str) -> None:
     layouts = make_folder(folder / "layouts")
     for form in FORMS.values():
         write_text(layouts / form.layout, form.text)
-
-
-@dataclass(frozen=True)
-class Berth:
-    """A site, its place on its line from 0 in the order of the ship, and the days on which the ship comes."""
-
-    site: Site
-    place: int
-    visited: NDArray[np.float64]
-
-
-def berths(time: NDArray[np.datetime64], sites: tuple[Site, ...], seed: int) -> Iterator[Berth]:
-    """Yield when each site is visited; days are since the first time."""
-    length = float((time[-1] - time[0]) / np.timedelta64(1, "D"))
-    lines: Counter[float] = Counter()
-    for site in sites:
-        yield Berth(site, lines[site.longitude], visits(length, stream(seed, "visits", f"{site.longitude:g}")))
-        lines[site.longitude] += 1
 
 
 def simulated_chains(ocean: Ocean, sites: tuple[Site, ...], columns: Columns, seed: int) -> Iterator[xr.Dataset]:

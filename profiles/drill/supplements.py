@@ -1,8 +1,8 @@
-"""What lies beside the daily deliveries: a log, casts, a year of 10-minute values, 40 years of monthly ones."""
+"""What lies beside the daily deliveries: casts, a year of 10-minute values, 40 years of monthly ones."""
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Callable
 from dataclasses import replace
 from pathlib import Path
 
@@ -15,11 +15,11 @@ from profiles.atlas import annual_mean
 from profiles.drill.array import SITES, Site, positions
 from profiles.drill.configuration import configuration_text, delivery_path
 from profiles.drill.deliveries import write_netcdf_delivery
-from profiles.drill.demo import SEED, TRUTH_ATTRIBUTES, Berth, berths, days, write_configuration
+from profiles.drill.demo import SEED, TRUTH_ATTRIBUTES, days, write_configuration
 from profiles.drill.faults import event_table, plant
 from profiles.drill.instruments import moor
 from profiles.drill.ocean import Ocean
-from profiles.drill.service import Deployment, Outage, deployments, outages
+from profiles.drill.recovery_log import Berth, berths
 from profiles.drill.streams import stream
 from profiles.drill.truth import LATITUDE, array_truth, cells, site_truth
 from profiles.store import make_folder, write_dataset, write_table
@@ -43,7 +43,7 @@ def make_supplements(
     Parameters
     ----------
     folder : Path
-        Gets ``recovery_log.csv``, ``ctd/``, ``deliveries/frigate_fast/``, ``fast.toml``, ``companion/`` and their
+        Gets ``ctd/``, ``deliveries/frigate_fast/``, ``fast.toml``, ``companion/`` and their
         truth in ``truth/``; files of the same names are replaced.
     seed : int, optional
         The same seed gives the same bytes.
@@ -60,67 +60,16 @@ def make_supplements(
     time = days()
     moored = list(berths(time, sites, seed))
     make_folder(folder / "truth")
-    write_table(folder / "recovery_log.csv", recovery_log(moored, time[0], seed))
     casts = make_folder(folder / "ctd")
     stations = cast_stations(moored, time, seed)
     write_table(casts / "stations.csv", stations)
     for name, _, when, latitude, longitude in stations.itertuples(index=False):
         write_table(casts / f"{name}.csv", cast(when, latitude, longitude, seed))
-    progress(f"recovery log and {len(stations)} casts")
+    progress(f"{len(stations)} casts")
     _make_fast_record(folder, seed)
     progress("a year of 10-minute values")
     _make_companion(folder, sites, seed)
     progress("40 years of monthly values")
-
-
-# --------------------------------------------------------------------------------------------------------------
-# The recovery log
-
-#: What the log says of an outage, {depths} being those of the silent sensors. What is not here nobody wrote down.
-REMARKS: Mapping[str, str] = {
-    "line not visited": "visit cancelled, batteries ran out",
-    "upper sensors vandalised": "line cut, sensors missing at {depths} m",
-    "buoy lost": "buoy not found",
-    "sensor dead": "nothing from {depths} m",
-}
-_MISSING_BUOY = "buoy lost"
-
-
-def recovery_log(moored: list[Berth], first: np.datetime64, seed: int) -> pd.DataFrame:
-    """Return a row a deployment: mooring, deployment from 1, deployed, recovered (NaT: not yet, or lost), remarks."""
-    rows = [row for berth in moored for row in _log_of(berth, seed)]
-    log = pd.DataFrame(rows, columns=["mooring", "deployment", "deployed", "recovered", "remarks"])
-    for name in ("deployed", "recovered"):
-        log[name] = (pd.Timestamp(first) + pd.to_timedelta(log[name], unit="D")).dt.floor("min")
-    return log
-
-
-def _log_of(berth: Berth, seed: int) -> Iterator[tuple[str, int, float, float, str]]:
-    name = berth.site.id
-    deployed = deployments(berth.visited, berth.place, berth.site.depths, stream(seed, "deployments", name))
-    befallen = outages(deployed, stream(seed, "outages", name))
-    for number, deployment in enumerate(deployed):
-        own = [outage for outage in befallen if deployment.start <= outage.start < deployment.end]
-        gone = number == len(deployed) - 1 or any(outage.cause == _MISSING_BUOY for outage in own)
-        before = deployed[number - 1] if number else deployment
-        remarks = "; ".join([*_moved_sensors(before, deployment), *_remarks(own)])
-        yield name, number + 1, deployment.start, np.nan if gone else deployment.end, remarks
-
-
-def _moved_sensors(before: Deployment, after: Deployment) -> list[str]:
-    return [
-        f"sensor of {old:g} m now at {new:g} m"
-        for old, new in zip(before.depths, after.depths, strict=True)
-        if old != new
-    ]
-
-
-def _remarks(befallen: list[Outage]) -> list[str]:
-    return [
-        REMARKS[outage.cause].format(depths=", ".join(f"{depth:g}" for depth in outage.depths))
-        for outage in befallen
-        if outage.cause in REMARKS
-    ]
 
 
 # --------------------------------------------------------------------------------------------------------------

@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from pathlib import Path
 
@@ -12,8 +13,10 @@ import pandas as pd
 import xarray as xr
 from numpy.typing import NDArray
 
+from profiles.config import ClockError
 from profiles.errors import DataError, RequestError
 from profiles.ingest.blocked import read_blocked
+from profiles.ingest.clock_error import in_words, retimed
 from profiles.ingest.counted import read_counted
 from profiles.ingest.layout import (
     BlockedLayout,
@@ -28,8 +31,10 @@ from profiles.ingest.lines import texts_of
 from profiles.ingest.long import read_long
 from profiles.ingest.netcdf import read_netcdf, step_text
 from profiles.ingest.record import Record, Rejected
+from profiles.ingest.recovery_log import Service
 from profiles.ingest.spool import Spool, Table
 from profiles.ingest.units import depth_of_pressure, to_its90
+from profiles.ingest.water import Immersion, immersion
 from profiles.ingest.wide import read_wide
 from profiles.store import TIME_BLOCK
 from profiles.vocabulary import describe
@@ -80,8 +85,12 @@ class Delivery:
         Temperature scale of each piece, from the first; a piece is what one file gave to the table.
     cell_methods : tuple of str or None
         What a reading of each piece stands for, where that is known.
+    clocks : tuple of str or None
+        How the clock of each piece was out, and was corrected.
     deployments : tuple of int
-        Number of the deployment that each piece is of.
+        Number of the deployment that each piece is of, where no recovery log says it; 0 where nobody said.
+    immersion : Immersion
+        How it is told whether the chain was in the water.
     uncertainty : ndarray of float32, (depth,)
         °C, one standard deviation.
     rows_read, rows_kept, rows_quarantined : int
@@ -101,7 +110,9 @@ class Delivery:
     table: Spool
     scales: tuple[str, ...]
     cell_methods: tuple[str | None, ...]
+    clocks: tuple[str | None, ...]
     deployments: tuple[int, ...]
+    immersion: Immersion
     uncertainty: NDArray[np.float32]
     rows_read: int
     rows_kept: int
@@ -113,25 +124,44 @@ class Delivery:
     @cached_property
     def chain(self) -> xr.Dataset:
         """The whole chain, in memory; see :func:`read_delivery`."""
-        return self._block(self.table.rows(0, self.table.count))
+        return self._block(0, self.table.count)
 
     def blocks(self, length: int = TIME_BLOCK) -> Iterator[xr.Dataset]:
         """Yield the chain in blocks of time."""
-        for rows in self.table.chunks(length):
-            yield self._block(rows)
+        for start in range(0, self.table.count, length):
+            yield self._block(start, start + length)
+
+    def with_service(self, service: Service | None) -> Delivery:
+        """Return the delivery with the deployments that a recovery log has of its mooring."""
+        return replace(self, immersion=replace(self.immersion, service=service))
+
+    def water_counts(self) -> dict[int, int]:
+        """Return how many times have each :class:`profiles.vocabulary.Water` status."""
+        counts: Counter[int] = Counter()
+        for block in self.blocks():
+            counts.update(block["water_status"].values.tolist())
+        return dict(counts)
+
+    def lost_by(self, part: Delivery) -> int:
+        """Return how many rows of a delivery that was joined into this one lost to others."""
+        paths = {str(source.path) for source in part.sources}
+        return int(self.quarantine["file"].isin(paths).sum()) - part.rows_quarantined
 
     @property
     def is_flagged(self) -> bool:
         """Tell whether any file came with quality flags."""
         return bool(self.table.row_type["flags"].shape[0])
 
-    def _block(self, rows: Table) -> xr.Dataset:
+    def _block(self, start: int, stop: int) -> xr.Dataset:
+        rows = self.table.rows(start, stop)
+        before, after = self.table.rows(max(start - 1, 0), start), self.table.rows(stop, stop + 1)
         grid, raw = ("time", "depth"), rows["values"]
         data = {
             "temperature_raw": (grid, np.ascontiguousarray(raw)),
             "temperature": (grid, self._on_its90(raw, rows["piece"])),
             "temperature_uncertainty": ("depth", self.uncertainty),
-            "deployment": ("time", np.array(self.deployments, np.int16)[rows["piece"] - 1]),
+            "deployment": ("time", self._deployment(rows)),
+            "water_status": ("time", self.immersion.status(rows, before, after)),
         }
         if self.is_flagged:
             data["temperature_delivered_qc"] = (grid, np.ascontiguousarray(rows["flags"]))
@@ -142,29 +172,41 @@ class Delivery:
             temperature={name: text for name, text in self._attributes.items() if name == "cell_methods"},
         )
 
+    def _deployment(self, rows: Table) -> NDArray[np.int16]:
+        logged = self.immersion.deployment(rows)
+        stated = np.maximum(self.deployments, 1).astype(np.int16)[rows["piece"] - 1]
+        return logged if logged is not None else stated
+
     @property
     def _attributes(self) -> dict[str, str]:
         """Scale and meaning of the raw readings: attributes where all pieces agree, else a comment that lists them."""
         listed: list[str] = []
         agreed: dict[str, str] = {}
-        for attribute, values in (("reference_scale", self.scales), ("cell_methods", self.cell_methods)):
+        for attribute, words, values in (
+            ("reference_scale", "on {}", self.scales),
+            ("cell_methods", "has {}", self.cell_methods),
+        ):
             if len(set(values)) > 1:
-                listed += _listed(self.deployments, [value or "time: not known" for value in values])
+                listed += self._listed(words, values)
             elif values[0] is not None:
                 agreed[attribute] = values[0]
+        if any(self.clocks):
+            listed += self._listed("had its stamps corrected for a clock {}", self.clocks)
         return agreed | ({"comment": "; ".join(listed)} if listed else {})
+
+    def _listed(self, words: str, values: Sequence[str | None]) -> list[str]:
+        """Return what each deployment has, in words, once each."""
+        numbers = np.maximum(self.deployments, 1).tolist()
+        said = [
+            f"deployment {number} {words.format(value)}" for number, value in zip(numbers, values, strict=True) if value
+        ]
+        return list(dict.fromkeys(said))
 
     def _on_its90(self, raw: NDArray[np.float32], piece: NDArray[np.int16]) -> NDArray[np.float32]:
         if set(self.scales) == {"ITS-90"}:
             return np.array(raw)
         is_old = np.array([scale == "IPTS-68" for scale in self.scales])[piece - 1]
         return np.where(is_old[:, None], to_its90(raw, "IPTS-68"), raw).astype(np.float32)
-
-
-def _listed(deployments: Sequence[int], values: Sequence[str]) -> list[str]:
-    """Return what each deployment has, in words, once each."""
-    said = dict.fromkeys(f"deployment {number} on {value}" for number, value in zip(deployments, values, strict=True))
-    return list(said)
 
 
 def read_delivery(
@@ -195,9 +237,9 @@ def read_delivery(
     -------
     xarray.Dataset
         A chain, (time, depth): ``temperature_raw`` (°C, on the scale it was delivered on), ``temperature`` (°C,
-        ITS-90), ``temperature_uncertainty``, ``deployment`` and, where the file has flags,
-        ``temperature_delivered_qc``; time in UTC, strictly increasing; depth in m, positive down, ascending;
-        missing readings are NaN. The attributes ``rows_read``, ``rows_kept`` and ``rows_quarantined`` account
+        ITS-90), ``temperature_uncertainty``, ``deployment``, ``water_status`` (which tells readings on deck) and, where
+        the file has flags, ``temperature_delivered_qc``; time in UTC, strictly increasing; depth in m, positive down,
+        ascending; missing readings are NaN. The attributes ``rows_read``, ``rows_kept``, ``rows_quarantined`` account
         for the rows; :func:`read` also gives those that were not kept, and the chain in blocks where it is long.
 
     Raises
@@ -226,12 +268,20 @@ def read(
     latitude: float | None = None,
     longitude: float | None = None,
     sensor_accuracy: float = SENSOR_ACCURACY,
+    clock: ClockError | None = None,
+    deployment: int | None = None,
 ) -> Delivery:
-    """Read one file with the account of its rows; arguments and errors as :func:`read_delivery`."""
+    """Read one file with the account of its rows.
+
+    Arguments and errors as :func:`read_delivery`; further how the clock of the logger was out, and the number of the
+    deployment.
+    """
     _check_arguments(latitude, longitude, sensor_accuracy)
     file = Path(path)
     layout = load_layout(layout) if isinstance(layout, str | Path) else layout
     record = _read_record(file, layout)
+    if clock is not None:
+        record = _corrected(record, clock)
     position = {
         role: _position(role, stated, found, str(file))
         for role, stated, found in (
@@ -248,7 +298,9 @@ def read(
         table=record.table,
         scales=(record.scale,),
         cell_methods=(record.cell_methods,),
-        deployments=(1,),
+        deployments=(deployment or 0,),
+        immersion=immersion(record.table, depth, None),
+        clocks=(in_words(clock) if clock is not None else None,),
         uncertainty=np.full(depth.size, sensor_accuracy, np.float32),
         rows_read=record.rows_read,
         rows_kept=record.rows_read - len(record.rejected),
@@ -294,6 +346,11 @@ def _read_record(path: Path, layout: Layout) -> Record:
             return read_counted(path, layout)
         case NetcdfLayout():
             return read_netcdf(path, layout)
+
+
+def _corrected(record: Record, clock: ClockError) -> Record:
+    table = retimed(record.table, clock)
+    return replace(record, table=table, read=table if record.read is record.table else retimed(record.read, clock))
 
 
 def _position(role: str, stated: float | None, found: float | None, where: str) -> float | None:

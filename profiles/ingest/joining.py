@@ -19,6 +19,7 @@ from profiles.ingest.delivery import (
 )
 from profiles.ingest.record import verify_count
 from profiles.ingest.spool import CHUNK_ROWS, Spool, Table, wide_type
+from profiles.ingest.water import immersion
 from profiles.vocabulary import Flag
 
 Mask = NDArray[np.bool_]
@@ -30,8 +31,8 @@ def join(deliveries: Sequence[Delivery]) -> Delivery:
     Parameters
     ----------
     deliveries : sequence of Delivery
-        As :func:`profiles.ingest.read` returned them. Their order is their precedence, and numbers the
-        deployments from 1.
+        As :func:`profiles.ingest.read` returned them. Their order is their precedence, and the number of their
+        deployment where none was stated.
 
     Returns
     -------
@@ -78,7 +79,11 @@ def join(deliveries: Sequence[Delivery]) -> Delivery:
         table=table,
         scales=tuple(scale for delivery in deliveries for scale in delivery.scales),
         cell_methods=tuple(method for delivery in deliveries for method in delivery.cell_methods),
-        deployments=_numbered(deliveries),
+        clocks=tuple(clock for delivery in deliveries for clock in delivery.clocks),
+        deployments=tuple(
+            number or place for place, delivery in enumerate(deliveries, start=1) for number in delivery.deployments
+        ),
+        immersion=immersion(table, depth, deliveries[0].immersion.service),
         uncertainty=_largest_uncertainty(deliveries, depth),
         rows_read=rows_read,
         rows_kept=rows_kept,
@@ -87,14 +92,6 @@ def join(deliveries: Sequence[Delivery]) -> Delivery:
         quarantine=quarantine,
         sources=tuple(source for sources, _ in divided for source in sources),
     )
-
-
-def _numbered(deliveries: Sequence[Delivery]) -> tuple[int, ...]:
-    """Number the deployments of deliveries one after another."""
-    numbers: list[int] = []
-    for delivery in deliveries:
-        numbers += [max(numbers, default=0) + number for number in delivery.deployments]
-    return tuple(numbers)
 
 
 def _largest_uncertainty(deliveries: Sequence[Delivery], depth: NDArray[np.float32]) -> NDArray[np.float32]:

@@ -14,6 +14,7 @@ from profiles import store
 from profiles.config import Config, Mooring
 from profiles.errors import EXIT_DONE, EXIT_PARTIAL, DataError, RequestError, ThermotiltError
 from profiles.pipeline import stages
+from profiles.pipeline.listed import read_log
 from profiles.pipeline.paths import Folder
 from profiles.pipeline.task import (
     STAGES,
@@ -94,6 +95,7 @@ def run(
         Where the folder cannot be written.
     """
     _check_request(until, workers)
+    read_log(config)  # what is wrong with it is told before any work that needs it
     folder = Folder(out)
     for path in folder.folders():
         store.make_folder(path)

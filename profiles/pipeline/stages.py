@@ -13,7 +13,7 @@ from profiles import store
 from profiles.config import Config, Mooring
 from profiles.errors import DataError
 from profiles.pipeline.attributes import global_attributes
-from profiles.pipeline.listed import read_listed
+from profiles.pipeline.listed import join_listed, read_listed
 from profiles.pipeline.paths import Folder
 from profiles.pipeline.task import Report, Task
 
@@ -31,6 +31,8 @@ _QUARANTINE = ("file", "line", "reason", "text")
 def ingest_task(config: Config, mooring: Mooring, folder: Folder) -> Task:
     """Deliveries of one mooring to one chain."""
     files = [config.resolve(path) for delivery in mooring.deliveries for path in (delivery.path, delivery.layout)]
+    if config.recovery_log is not None:
+        files.append(config.resolve(config.recovery_log))
     return Task(
         stage="ingest",
         name=mooring.id,
@@ -44,12 +46,10 @@ def ingest_task(config: Config, mooring: Mooring, folder: Folder) -> Task:
 
 def ingest(config: Config, mooring: Mooring, folder: Folder) -> Report:
     """Read a mooring's deliveries; one that cannot be used is reported, and the others still are."""
-    from profiles.ingest import join
-
     account: list[dict[str, Any]] = []
     quarantine: list[pd.DataFrame] = []
     usable: list[Any] = []
-    for listed in mooring.deliveries:
+    for listed in mooring.by_precedence:
         delivery = read_listed(config, mooring, listed)
         if isinstance(delivery, str):
             account.append(_account(mooring, listed.path, problem=delivery))
@@ -57,16 +57,18 @@ def ingest(config: Config, mooring: Mooring, folder: Folder) -> Report:
         usable.append(delivery)
         account.append(_account(mooring, listed.path, delivery))
         quarantine.append(delivery.quarantine.assign(file=listed.path.as_posix()))
-    if usable:
-        joined = usable[0] if len(usable) == 1 else join(usable)
+    joined = join_listed(config, mooring, usable) if usable else ""
+    if isinstance(joined, str):
+        folder.delivered(mooring.id).unlink(missing_ok=True)
+        account = [row if row["problem"] else _account(mooring, Path(row["file"]), problem=joined) for row in account]
+        quarantine = []
+    else:
         _count_losses(account, quarantine, joined, usable)
         store.write_blocks(folder.delivered(mooring.id), joined.blocks(), {})
-    else:
-        folder.delivered(mooring.id).unlink(missing_ok=True)
     store.write_table(folder.part("deliveries", mooring.id), pd.DataFrame(account, columns=_DELIVERIES))
     rejected = pd.concat(quarantine) if quarantine else pd.DataFrame(columns=_QUARANTINE)
     store.write_table(folder.part("quarantine", mooring.id), rejected)
-    return {"usable": bool(usable), "deliveries": account}
+    return {"usable": not isinstance(joined, str), "deliveries": account}
 
 
 def _account(mooring: Mooring, path: Path, delivery: Any = None, problem: str = "") -> dict[str, Any]:

@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any, Literal
 
 from profiles.config import Config, Delivery, Mooring
-from profiles.pipeline.listed import read_listed
+from profiles.pipeline.listed import join_listed, read_listed, read_log
+from profiles.vocabulary import Water
 
 SHOWN = 3  # rows that a finding quotes
 
@@ -26,23 +27,59 @@ class Finding:
 
 
 def survey(config: Config, progress: Callable[[Finding], None] | None = None) -> list[Finding]:
-    """Read every delivery of a configuration once and return what was found, in the order of the file."""
+    """Read every delivery of a configuration once, join those of a mooring, and return what was found.
+
+    Raises
+    ------
+    RequestError, DataError, MachineError
+        Where the recovery log cannot be used.
+    """
+    log = read_log(config)
     findings = []
     for mooring in config.moorings:
-        for delivery in mooring.deliveries:
-            findings.append(_inspect(config, mooring, delivery))
+        for finding in _of_mooring(config, mooring, log is None or mooring.id in log):
+            findings.append(finding)
             if progress is not None:
-                progress(findings[-1])
+                progress(finding)
     return findings
 
 
-def _inspect(config: Config, mooring: Mooring, delivery: Delivery) -> Finding:
-    found = read_listed(config, mooring, delivery)
-    if isinstance(found, str):
-        return Finding(mooring.id, delivery.path, "not usable", 0, 0, found)
+def _of_mooring(config: Config, mooring: Mooring, is_logged: bool) -> list[Finding]:
+    read = {listed: read_listed(config, mooring, listed) for listed in mooring.by_precedence}
+    usable = {listed: found for listed, found in read.items() if not isinstance(found, str)}
+    joined = join_listed(config, mooring, list(usable.values())) if usable else ""
+    findings = [_finding(mooring, listed, read[listed], joined) for listed in mooring.deliveries]
+    if findings and not isinstance(joined, str):
+        notes = [*_water_notes(joined), *([] if is_logged else ["the recovery log does not have this mooring"])]
+        findings[-1] = _with_notes(findings[-1], notes)
+    return findings
+
+
+def _finding(mooring: Mooring, listed: Delivery, found: Any, joined: Any) -> Finding:
+    if isinstance(found, str) or isinstance(joined, str):
+        message = found if isinstance(found, str) else joined
+        return Finding(mooring.id, listed.path, "not usable", 0, 0, message)
+    lost = joined.lost_by(found)
     notes = _notes(found)
-    outcome: Any = "rows quarantined" if found.rows_quarantined else "rows sorted" if notes else "clean"
-    return Finding(mooring.id, delivery.path, outcome, found.rows_read, found.rows_kept, "; ".join(notes))
+    if lost:
+        notes.append(f"{lost} rows are of times that a delivery before it has; they go to quarantine")
+    outcome: Any = "rows quarantined" if found.rows_quarantined + lost else "rows sorted" if notes else "clean"
+    return Finding(mooring.id, listed.path, outcome, found.rows_read, found.rows_kept - lost, "; ".join(notes))
+
+
+def _with_notes(finding: Finding, notes: list[str]) -> Finding:
+    return replace(finding, message="; ".join(filter(None, [finding.message, *notes]))) if notes else finding
+
+
+def _water_notes(joined: Any) -> list[str]:
+    """Say how much of a record was not measured in the water."""
+    counts = joined.water_counts()
+    words = {
+        Water.NOT_DEPLOYED: "are outside the deployments of the recovery log",
+        Water.AIR_FOUND: "read the same from top to bottom, as on deck",
+    }
+    return [f"{counts[status]} times {said}; they are kept and flagged bad" for status, said in words.items()
+            if counts.get(status)]  # fmt: skip
 
 
 def _notes(found: Any) -> list[str]:

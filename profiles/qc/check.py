@@ -3,13 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from profiles.config import QualityControlSettings
-from profiles.vocabulary import Flag
+from profiles.vocabulary import Flag, Water
 
 Floats = NDArray[np.float64]
 Mask = NDArray[np.bool_]
@@ -35,6 +35,8 @@ class Segment:
         Degrees north and degrees east, 0-360.
     delivered : ndarray of int, shape (time, depth), optional
         Flags that came with the delivery.
+    water : ndarray of int, shape (time,), optional
+        :class:`profiles.vocabulary.Water`.
     """
 
     time: Times
@@ -43,6 +45,14 @@ class Segment:
     previous: Times
     position: tuple[float, float] | None = None
     delivered: NDArray[np.integer] | None = None
+    water: NDArray[np.integer] | None = None
+
+    def in_water(self) -> Segment:
+        """Return the segment without the values that were not measured in the water."""
+        if self.water is None or (self.water == Water.IN_WATER).all():
+            return self
+        wet = (self.water == Water.IN_WATER)[:, None]
+        return replace(self, temperature=np.where(wet, self.temperature, np.nan))
 
 
 @dataclass(frozen=True)

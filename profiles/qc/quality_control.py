@@ -12,13 +12,13 @@ from numpy.typing import NDArray
 
 from profiles.config import QualityControlSettings
 from profiles.errors import DataError, RequestError
-from profiles.qc import climatology, delivered_flag, flat_line, gap, gross_range, rate_of_change, spike
-from profiles.qc.check import Check, Segment, Survey, Times
+from profiles.qc import climatology, delivered_flag, flat_line, gap, gross_range, rate_of_change, spike, water
+from profiles.qc.check import Check, Outcomes, Segment, Survey, Times
 from profiles.qc.neighbours import step_seconds
 from profiles.qc.roll_up import roll_up
 from profiles.statistics import SpreadSurvey
 from profiles.store import TIME_BLOCK, padded_blocks
-from profiles.vocabulary import describe
+from profiles.vocabulary import Flag, describe
 
 #: The tests, in the order of their bits.
 CHECKS: tuple[Check, ...] = (
@@ -29,9 +29,12 @@ CHECKS: tuple[Check, ...] = (
     rate_of_change.CHECK,
     flat_line.CHECK,
     delivered_flag.CHECK,
+    water.CHECK,
 )
 
-_INPUTS = ("temperature", "sensor_depth", "temperature_delivered_qc")
+_INPUTS = ("temperature", "sensor_depth", "temperature_delivered_qc", "water_status")
+#: Tests that judge a value whether or not it was measured in the water; the others see the water only.
+_OF_ANY_VALUE = {delivered_flag.CHECK, water.CHECK}
 
 
 def quality_control(chain: xr.Dataset, settings: QualityControlSettings | None = None) -> xr.Dataset:
@@ -41,8 +44,8 @@ def quality_control(chain: xr.Dataset, settings: QualityControlSettings | None =
     ----------
     chain : xarray.Dataset
         ``temperature(time, depth)``, °C; optional ``sensor_depth`` and ``temperature_delivered_qc`` (time,
-        depth), scalar coordinates ``latitude`` and ``longitude`` (without them the climatology cannot judge).
-        May be lazy.
+        depth), ``water_status`` (time), scalar coordinates ``latitude`` and ``longitude`` (without them the
+        climatology cannot judge). May be lazy.
     settings : QualityControlSettings, optional
         Thresholds; the defaults where None.
 
@@ -117,7 +120,7 @@ def survey_record(chain: xr.Dataset, settings: QualityControlSettings, *, block_
         segment = segment_of(chain.isel(time=block.padded).compute(), unknown)
         for check, spread in surveys.items():
             if check.survey is not None:
-                spread.add(check.survey(segment, interval, settings)[block.inner])
+                spread.add(check.survey(segment.in_water(), interval, settings)[block.inner])
     return Survey(interval, {check.name: spread.sd() for check, spread in surveys.items()})
 
 
@@ -135,19 +138,19 @@ def check_chain(chain: xr.Dataset) -> None:
         raise DataError("the chain has no temperature", where="chain", expected="temperature(time, depth)", found=found)
     for name in _INPUTS:
         if name in chain:
-            _check_dims(chain[name])
+            _check_dims(chain[name], ("time",) if name == "water_status" else ("time", "depth"))
     _check_temperature(chain["temperature"])
     _check_time(chain)
     _check_depth(chain)
     _check_position(chain)
 
 
-def _check_dims(variable: xr.DataArray) -> None:
-    if variable.dims != ("time", "depth"):
+def _check_dims(variable: xr.DataArray, dims: tuple[str, ...]) -> None:
+    if variable.dims != dims:
         raise DataError(
             "the dimensions are not those of a chain",
             where=str(variable.name),
-            expected="(time, depth)",
+            expected=f"({', '.join(dims)})",
             found=f"({', '.join(str(dim) for dim in variable.dims)})",
             advice="rename or transpose them",
         )
@@ -239,11 +242,21 @@ def _flagged_pieces(
     for block, following in zip_longest(blocks, blocks[1:]):
         piece = chain.isel(time=block.padded).compute()
         segment = segment_of(piece, previous)
-        found = {check.name: check.outcome(segment, survey, settings)[block.inner] for check in CHECKS}
+        found = {check.name: _outcome(check, segment, survey, settings)[block.inner] for check in CHECKS}
         yield piece.isel(time=block.inner), roll_up(found)
         if following is not None:
-            present = ~np.isnan(segment.temperature)
+            present = ~np.isnan(segment.in_water().temperature)
             previous = gap.last_value_times(segment.time, present, previous)[following.first - block.first]
+
+
+def _outcome(check: Check, segment: Segment, survey: Survey, settings: QualityControlSettings) -> Outcomes:
+    """Return what a test says; one that sees only the water has nothing to say of other values."""
+    if check in _OF_ANY_VALUE:
+        return check.outcome(segment, survey, settings)
+    wet = segment.in_water()
+    found = check.outcome(wet, survey, settings)
+    unseen = np.isnan(wet.temperature) & ~np.isnan(segment.temperature)
+    return np.where(unseen, np.int8(Flag.NOT_EVALUATED), found)
 
 
 def _no_value_yet(chain: xr.Dataset) -> Times:
@@ -265,6 +278,7 @@ def segment_of(piece: xr.Dataset, previous: Times) -> Segment:
         previous=previous,
         position=(float(piece["latitude"]), float(piece["longitude"])) if known else None,
         delivered=piece["temperature_delivered_qc"].values if "temperature_delivered_qc" in piece else None,
+        water=piece["water_status"].values if "water_status" in piece else None,
     )
 
 

@@ -88,8 +88,10 @@ def test_layouts_beside_a_demo_say_what_the_commented_ones_say(tmp_path: Path) -
         assert load_layout(tmp_path / form.layout) == load_layout(ROOT / "config" / "layouts" / form.layout)
 
 
-@pytest.mark.parametrize(("name", "sites"), [("tropicbird", SITES), ("tropicbird_fast", (FAST_SITE,))])
-def test_committed_configuration_is_the_one_that_the_code_writes(name: str, sites: tuple[Site, ...]) -> None:
+@pytest.mark.parametrize(
+    ("name", "sites", "log"), [("tropicbird", SITES, "recovery_log.csv"), ("tropicbird_fast", (FAST_SITE,), "")]
+)
+def test_committed_configuration_is_the_one_that_the_code_writes(name: str, sites: tuple[Site, ...], log: str) -> None:
     committed = (ROOT / "config" / f"{name}.toml").read_text(encoding="utf-8")
     head = "".join(line for line in committed.splitlines(keepends=True) if line.startswith("#"))
-    assert committed == configuration_text(sites, head=f"{head}\n", below="../data_demo/")
+    assert committed == configuration_text(sites, head=f"{head}\n", below="../data_demo/", log=log)

@@ -10,9 +10,10 @@ import pytest
 import xarray as xr
 
 from profiles.drill.array import SITES
-from profiles.drill.demo import SEED, berths, days
+from profiles.drill.demo import SEED, days
 from profiles.drill.ocean import Ocean
-from profiles.drill.supplements import cast, cast_stations, recovery_log
+from profiles.drill.recovery_log import berths, recovery_log
+from profiles.drill.supplements import cast, cast_stations
 
 DEMO = Path(__file__).parents[2] / "data_demo"
 
