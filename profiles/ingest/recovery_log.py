@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import csv
 from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
@@ -67,10 +68,7 @@ def read_recovery_log(path: Path) -> dict[str, Service]:
         Where there is no such file, or it is no such table; all wrong rows are named.
     """
     check_file(path)
-    try:
-        table = pd.read_csv(path, dtype=str, keep_default_na=False, comment="#", skip_blank_lines=False)
-    except (ValueError, UnicodeDecodeError) as error:
-        raise DataError("is no table", where=str(path), expected="CSV", found=" ".join(str(error).split())) from None
+    table = _table(path)
     missing = [name for name in COLUMNS if name not in table]
     if missing:
         raise DataError(
@@ -80,14 +78,30 @@ def read_recovery_log(path: Path) -> dict[str, Service]:
             found=listed(str(name) for name in table),
             advice=f"add {listed(missing)}",
         )
-    table = table[(table != "").any(axis=1)].assign(line=lambda rows: rows.index + 2)
     return {str(name): _service(rows, path) for name, rows in _checked(table, path).groupby("mooring", sort=False)}
+
+
+def _table(path: Path) -> pd.DataFrame:
+    """Return the rows as text, with the number of the line in the column ``line``."""
+    try:
+        with path.open(encoding="utf-8-sig", newline="") as file:
+            reader = csv.reader(file, strict=True)
+            rows = [(reader.line_num, row) for row in reader if row and not row[0].lstrip().startswith("#")]
+    except (csv.Error, UnicodeDecodeError) as error:
+        raise DataError("is no table", where=str(path), expected="CSV", found=str(error)) from None
+    names = [name.strip() for name in rows[0][1]] if rows else []
+    ragged = [RequestError("a row of another length", where=f"line {line}", expected=f"{len(names)} cells",
+                           found=str(len(row))) for line, row in rows[1:] if len(row) != len(names)]  # fmt: skip
+    if ragged:
+        raise ConfigError(str(path), ragged)
+    cells = [[cell.strip() for cell in row] for _, row in rows[1:]]
+    return pd.DataFrame(cells, columns=names, dtype=str).assign(line=[line for line, _ in rows[1:]])
 
 
 def _checked(table: pd.DataFrame, path: Path) -> pd.DataFrame:
     deployed, wrong_start = parse_times(list(table["deployed"]), time_format="iso8601", zone="UTC")
     recovered, wrong_end = parse_times(list(table["recovered"]), time_format="iso8601", zone="UTC")
-    is_open = (table["recovered"].str.strip() == "").to_numpy()
+    is_open = (table["recovered"] == "").to_numpy()
     number = pd.to_numeric(table["deployment"], errors="coerce")
     problems = [
         RequestError(reason, where=f"line {line}", found=found)
