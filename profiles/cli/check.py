@@ -50,7 +50,7 @@ def _row(finding: Finding) -> dict[str, object]:
 
 def _print(findings: list[Finding], *, quiet: bool) -> None:
     for finding in findings:
-        if finding.outcome != "clean":
+        if finding.message:
             typer.echo(f"{finding.mooring}: {finding.outcome}: {finding.file.as_posix()}\n    {finding.message}")
     if quiet:
         return
