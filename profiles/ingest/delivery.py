@@ -136,10 +136,11 @@ class Delivery:
         return replace(self, immersion=replace(self.immersion, service=service))
 
     def water_counts(self) -> dict[int, int]:
-        """Return how many times have each :class:`profiles.vocabulary.Water` status."""
+        """Return how many times with a reading have each :class:`profiles.vocabulary.Water` status."""
         counts: Counter[int] = Counter()
         for block in self.blocks():
-            counts.update(block["water_status"].values.tolist())
+            has_reading = block["temperature"].notnull().any("depth").values
+            counts.update(block["water_status"].values[has_reading].tolist())
         return dict(counts)
 
     def lost_by(self, part: Delivery) -> int:
