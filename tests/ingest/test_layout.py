@@ -1,10 +1,12 @@
 from pathlib import Path
 
+import numpy as np
 import pytest
 
 from profiles.errors import ConfigError, RequestError
-from profiles.ingest import load_layout
-from profiles.ingest.layout import LongLayout, NetcdfLayout, WideLayout
+from profiles.ingest import load_layout, read
+from profiles.ingest.layout import BlockedLayout, CountedLayout, LongLayout, NetcdfLayout, WideLayout
+from profiles.ingest.layout.parts import WideQuality
 
 LAYOUTS = Path(__file__).parents[2] / "config" / "layouts"
 WIDE = 'kind = "wide"\n[time]\ncolumn = "date"\n[depth]\npattern = "T_{depth}m"\n'
@@ -17,18 +19,73 @@ WIDE = 'kind = "wide"\n[time]\ncolumn = "date"\n[depth]\npattern = "T_{depth}m"\
         ("marlin_long", LongLayout),
         ("frigate_netcdf", NetcdfLayout),
         ("shearwater_wide", WideLayout),
+        ("heron_fixed", WideLayout),
+        ("petrel_blocked", BlockedLayout),
+        ("curlew_counted", CountedLayout),
     ],
 )
 def test_the_example_layouts_load(name, model):
     assert isinstance(load_layout(LAYOUTS / f"{name}.toml"), model)
 
 
-def test_every_key_of_a_wide_layout_stands_in_its_example():
-    text = (LAYOUTS / "halcyon_wide.toml").read_text(encoding="utf-8")
-    table = load_layout(LAYOUTS / "halcyon_wide.toml")
-    for part in (table, table.time, table.depth, table.temperature):
-        for key in type(part).model_fields:
+def keys_of(model):
+    """Return the keys of a layout, those of its tables among them."""
+    for key, field in model.model_fields.items():
+        yield key
+        annotation = field.annotation
+        yield from keys_of(annotation) if hasattr(annotation, "model_fields") else ()
+
+
+@pytest.mark.parametrize(
+    ("name", "models"),
+    [
+        ("halcyon_wide", [WideLayout, WideQuality]),
+        ("petrel_blocked", [BlockedLayout]),
+        ("curlew_counted", [CountedLayout]),
+    ],
+)
+def test_every_key_of_a_kind_stands_in_its_example(name, models):
+    common = (LAYOUTS / "halcyon_wide.toml").read_text(encoding="utf-8")
+    text = common + (LAYOUTS / f"{name}.toml").read_text(encoding="utf-8")
+    for model in models:
+        for key in keys_of(model):
             assert key in text, key
+
+
+def example(name):
+    """Return the delivery that stands in a layout's first comment, and how many rows of data it shows."""
+    text = (LAYOUTS / f"{name}.toml").read_text(encoding="utf-8")
+    shown = text.split("#\n", 2)[2].split("\n\n", 1)[0].splitlines()
+    return [line.removeprefix("#   ") for line in shown]
+
+
+@pytest.mark.parametrize(
+    ("name", "kept", "depths", "first", "last"),
+    [
+        ("halcyon_wide", 1, [1, 10, 25], [29.312, 29.27, None], "2031-01-01T12:00"),
+        ("marlin_long", 2, [1, 10], [29.312, None], "2031-01-01T12:00"),
+        ("heron_fixed", 2, [1, 10, 25.5], [29.312, 29.27, 28.115], "2031-01-01T00:10"),
+        # the first and the second block have 1 m in common, and headers of two lines each
+        ("petrel_blocked", 7, [1, 10, 12, 25.5], [29.312, 29.27, None, 28.115], "2031-01-02T07:00"),
+        ("curlew_counted", 7, [1, 10, 25.5], [29.312, 29.27, 28.115], "2031-01-01T01:30"),
+    ],
+)
+def test_each_example_reads_the_delivery_that_stands_in_it(write, name, kept, depths, first, last):
+    delivery = read(write("\n".join(example(name))), LAYOUTS / f"{name}.toml")
+    assert (delivery.rows_kept, delivery.rows_quarantined) == (kept, 0)
+    np.testing.assert_array_equal(delivery.chain["depth"], np.float32(depths))
+    np.testing.assert_array_equal(delivery.chain["temperature"][0], np.array(first, np.float32))
+    assert delivery.chain["time"].values[-1] == np.datetime64(last)
+
+
+def test_pressures_and_kelvin_of_the_example_are_converted(write):
+    path = write("\n".join(line.replace("  ", "\t") for line in example("shearwater_wide")[:2]))
+    rows = [line.split() for line in example("shearwater_wide")[2:]]
+    path.write_text(path.read_text() + "\n" + "\n".join("\t".join(row) for row in rows))
+    chain = read(path, LAYOUTS / "shearwater_wide.toml", latitude=0.0).chain
+    # 298.012 K = 24.862 °C; 5 dbar are 4.97 m at the equator (gsw.z_from_p)
+    np.testing.assert_allclose(chain["temperature"][0], [24.862, 24.72, np.nan], rtol=1e-6)
+    np.testing.assert_allclose(chain["depth"], [0.995, 4.973, 10.044], atol=2e-3)
 
 
 def test_defaults_are_those_the_examples_state(layout_of):
