@@ -1,3 +1,4 @@
+import re
 from pathlib import Path
 
 import numpy as np
@@ -5,7 +6,7 @@ import pytest
 
 from profiles.errors import ConfigError, RequestError
 from profiles.ingest import load_layout, read
-from profiles.ingest.layout import BlockedLayout, CountedLayout, LongLayout, NetcdfLayout, WideLayout
+from profiles.ingest.layout import KINDS, BlockedLayout, CountedLayout, LongLayout, NetcdfLayout, WideLayout
 from profiles.ingest.layout.parts import WideQuality
 
 LAYOUTS = Path(__file__).parents[2] / "config" / "layouts"
@@ -76,6 +77,22 @@ def test_each_example_reads_the_delivery_that_stands_in_it(write, name, kept, de
     np.testing.assert_array_equal(delivery.chain["depth"], np.float32(depths))
     np.testing.assert_array_equal(delivery.chain["temperature"][0], np.array(first, np.float32))
     assert delivery.chain["time"].values[-1] == np.datetime64(last)
+
+
+GUIDE = (LAYOUTS.parents[1] / "DEVELOPERS.md").read_text(encoding="utf-8")
+WORKED = re.findall(r"```text\n(.*?)```\n\n```toml\n(.*?)```", GUIDE, flags=re.DOTALL)
+
+
+@pytest.mark.parametrize(("delivery", "layout"), WORKED)
+def test_the_worked_examples_of_the_guide_are_read(write, layout_of, delivery, layout):
+    read_back = read(write(delivery), layout_of(layout))
+    assert read_back.rows_quarantined == 0
+    coldest = {"wide": 28.1, "long": 28.1, "blocked": 28.1, "counted": 29.2}[layout_of(layout).kind]
+    assert read_back.chain["temperature"].min().item() == pytest.approx(coldest)
+
+
+def test_the_guide_has_a_worked_example_of_each_kind_of_text(layout_of):
+    assert {layout_of(layout).kind for _, layout in WORKED} == {kind for kind in KINDS if kind != "netcdf"}
 
 
 def test_pressures_and_kelvin_of_the_example_are_converted(write):
