@@ -75,6 +75,8 @@ class IsothermStatus(IntEnum):
     GAP = 5  # the bracketing sensors are further apart than allowed
     SEVERAL_CROSSINGS = 6  # a depth is given, by the stated rule, but the profile crosses more than once
     TOO_FEW_SENSORS = 7  # fewer than two good sensors
+    NOT_DELIVERED = 8  # a series from elsewhere has no value and does not say why
+    NOT_USED = 9  # a series from elsewhere has a value with a quality flag that is not used
 
 
 class MixedLayerStatus(IntEnum):
@@ -84,6 +86,8 @@ class MixedLayerStatus(IntEnum):
     BELOW_CHAIN = 2  # mixed down to the deepest good sensor
     NO_REFERENCE = 3  # no good sensors at or around the reference depth
     TOO_FEW_SENSORS = 4
+    NOT_DELIVERED = 5  # as of the isotherm
+    NOT_USED = 6
 
 
 class LayerMeanStatus(IntEnum):
@@ -94,6 +98,8 @@ class LayerMeanStatus(IntEnum):
     OPEN_BOTTOM = 3  # no good sensor at or below the bottom of the layer
     GAP = 4  # neighbouring good sensors further apart than allowed
     TOO_FEW_SENSORS = 5
+    NOT_DELIVERED = 6  # as of the isotherm
+    NOT_USED = 7
 
 
 class MeanStatus(IntEnum):
@@ -102,6 +108,14 @@ class MeanStatus(IntEnum):
     GIVEN = 1
     TOO_FEW_VALUES = 2
     CENSORED = 3  # too many of the profiles only say that the isotherm lies outside the chain
+
+
+class ColumnSource(IntEnum):
+    """Where a mooring's column of a day or a month comes from."""
+
+    NEITHER = 0
+    CHAIN = 1
+    SERIES = 2  # computed by somebody else
 
 
 class Water(IntEnum):
@@ -238,6 +252,8 @@ _COLUMN_VARIABLES = [
              "number_of_observations", "int16", _QUALITY),
     Variable("isotherm_day_spread", ("time",), "standard deviation of the daily means of isotherm_depth in the month",
              "m", None, "float32", _QUALITY),
+    Variable("column_source", ("time",), "where the columns of the day or month come from", None, "status_flag", "int8",
+             _AUXILIARY, _flag_attributes(ColumnSource)),
 ]  # fmt: skip
 
 _SECTION_VARIABLES = [

@@ -35,6 +35,8 @@ STATUSES = {
     IsothermStatus.GAP: ("sensors too far apart", style.VERMILION),
     IsothermStatus.SEVERAL_CROSSINGS: ("several crossings", style.GREEN),
     IsothermStatus.TOO_FEW_SENSORS: ("too few sensors", style.LACKING),
+    IsothermStatus.NOT_DELIVERED: ("not delivered", style.PURPLE),
+    IsothermStatus.NOT_USED: ("delivered, not used", style.SKY),
 }
 _NO_PROFILE = 0  # beside the statuses, which begin at 1
 
