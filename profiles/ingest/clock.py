@@ -27,6 +27,8 @@ _FIRST, _LAST = (
     np.datetime64("2262-01-01", "us"),
 )  # what datetime64[ns] holds
 _NAT = np.datetime64("NaT", "ns")
+_SINCE_1970 = "seconds since 1970-01-01"
+_LONGEST_SECONDS = 1e12  # from the zero of some units; in microseconds it fits into 64 bits
 
 UNREADABLE = "the time cannot be read"
 NOT_ON_THE_CLOCK = "this local time does not exist, or exists twice, in the layout's zone"
@@ -63,18 +65,19 @@ def _offset_zone(name: str) -> tzinfo:
 def parse_units(units: str) -> tuple[float, np.datetime64]:
     """Return the seconds of one unit and the time of zero, for units like ``"seconds since 1970-01-01"``.
 
-    ValueError where they are no such units, or of a length that changes, as months and years do.
+    Zero may lie before 1582-10-15, where dates are Julian (CF-1.11, section 4.4.1), and before Christ, the year -4713 being
+    4713 before. ValueError where they are no such units, or of a length that changes, as months and years do.
     """
     step = units.partition(" since ")[0].strip()
     try:
         known = cf_units.Unit(units, calendar=cf_units.CALENDAR_STANDARD)
         seconds = float(cf_units.Unit(step).convert(1.0, "second"))
-        zero = known.num2date(0.0, only_use_cftime_datetimes=False, only_use_python_datetimes=True)
+        zero = float(known.convert(0.0, cf_units.Unit(_SINCE_1970, calendar=cf_units.CALENDAR_STANDARD)))
     except ValueError as error:
         raise ValueError(f"no units of time: {units!r}; expected for example 'seconds since 1970-01-01'") from error
     if "month" in step or "year" in step:
         raise ValueError(f"units of a length that changes: {units!r}; expected days, hours, minutes or seconds since")
-    return seconds, np.datetime64(zero.replace(tzinfo=None), "ns")
+    return seconds, np.datetime64(round(zero * 1e6), "us")
 
 
 # --------------------------------------------------------------------------------------------------------------
@@ -146,8 +149,7 @@ def clock_of_numbers(numbers: NDArray[np.float64], units: str) -> Times:
 
 def _after(start: Times, seconds: NDArray[np.float64]) -> Times:
     """Return times so many seconds after others, to the millisecond; NaT where the sum is none."""
-    span = (_LAST - _FIRST).astype("timedelta64[s]").astype(float)
-    possible = np.isfinite(seconds) & (np.abs(seconds) < span)
+    possible = np.isfinite(seconds) & (np.abs(seconds) < _LONGEST_SECONDS)
     whole = np.where(possible, np.round(np.where(possible, seconds, 0.0) * 1e3), 0.0).astype("timedelta64[ms]")
     clock = start.astype("datetime64[us]") + whole.astype("timedelta64[us]")
     clock[~possible] = np.datetime64("NaT")
@@ -158,14 +160,16 @@ _DAY_SECONDS = 86_400.0
 
 #: Smallest and largest value of a number that makes part of a stamp, and the seconds of one unit of it.
 _PARTS: Mapping[str, tuple[int, int, float]] = {
+    "year_month_day": (1678_01_01, 2261_12_31, 0.0),
     "year": (1678, 2261, 0.0),
     "month": (1, 12, 0.0),
     "day": (1, 31, _DAY_SECONDS),
     "day_of_year": (1, 366, _DAY_SECONDS),
     "hour": (0, 24, 3_600.0),
+    "hour_minute": (0, 2400, 0.0),
+    "hour_minute_second": (0, 24_00_00, 0.0),
     "minute": (0, 59, 60.0),
     "second": (0, 59, 1.0),
-    "hour_minute": (0, 2400, 0.0),
 }
 
 
@@ -175,27 +179,25 @@ def clock_of_parts(parts: Mapping[str, NDArray[np.float64]]) -> Times:
     Parameters
     ----------
     parts : mapping
-        ``year`` with ``month`` and ``day``, or with ``day_of_year`` (from 1); then ``hour``, ``minute``, ``second``, or
-        ``hour_minute`` (1330 is half past one in the afternoon). Only the last of day, hour, minute and second may
-        have a fraction. The hour 24 is midnight at the end of the day.
+        ``year`` with ``month`` and ``day``, or with ``day_of_year`` (from 1), or ``year_month_day`` (20310723); then
+        ``hour``, ``minute``, ``second``, or ``hour_minute`` (1330 is half past one in the afternoon), or
+        ``hour_minute_second`` (133000). Only the finest may have a fraction, and only where it is a number of its own.
+        The hour 24 is midnight at the end of the day.
 
     Returns
     -------
     ndarray of datetime64[ns]
         To the millisecond; NaT where a part is missing, or they name no time that exists.
     """
-    parts = dict(parts)
-    wrong = np.zeros(parts["year"].shape, bool)
-    finest = [name for name in parts if name not in {"year", "month", "hour_minute"}][-1:]
+    parts = {name: parts[name] for name in _PARTS if name in parts}
+    wrong = np.zeros(next(iter(parts.values())).shape, bool)
+    finest = [name for name in [*parts][-1:] if _PARTS[name][2]]
     for name, values in parts.items():
         least, most, _ = _PARTS[name]
         whole = np.floor(values)
         wrong |= ~((whole >= least) & (whole <= most)) | ((values != whole) & (name not in finest))
         parts[name] = np.where(wrong, np.maximum(least, 1), values)
-    if "hour_minute" in parts:
-        together = parts.pop("hour_minute")
-        parts |= {"hour": together // 100, "minute": together % 100}
-        wrong |= parts["minute"] >= 60
+    wrong |= _taken_apart(parts)
     day, is_date = _day(parts)
     seconds = parts["day_of_year" if "day_of_year" in parts else "day"] % 1.0 * _DAY_SECONDS
     for name in ("hour", "minute", "second"):
@@ -203,6 +205,20 @@ def clock_of_parts(parts: Mapping[str, NDArray[np.float64]]) -> Times:
             seconds = seconds + parts[name] * _PARTS[name][2]
     wrong |= ~is_date | (seconds > _DAY_SECONDS)
     return np.where(wrong, _NAT, _after(day, seconds))
+
+
+def _taken_apart(parts: dict[str, NDArray[np.float64]]) -> NDArray[np.bool_]:
+    """Put numbers that hold several parts as those; return where that gives none."""
+    wrong = np.zeros(next(iter(parts.values())).shape, bool)
+    for together in ("year_month_day", "hour_minute", "hour_minute_second"):
+        if together in parts:
+            rest = parts.pop(together)
+            for name in reversed(together.split("_")[1:]):
+                rest, parts[name] = rest // 100, rest % 100
+                wrong |= (parts[name] < _PARTS[name][0]) | (parts[name] > _PARTS[name][1])
+                parts[name] = np.where(wrong, np.maximum(_PARTS[name][0], 1), parts[name])
+            parts[together.partition("_")[0]] = rest
+    return wrong
 
 
 def _day(parts: Mapping[str, NDArray[np.float64]]) -> tuple[Times, NDArray[np.bool_]]:

@@ -144,7 +144,7 @@ def data_lines(path: Path, layout: TextLayout) -> Iterator[Lines]:
     """
     encoding = internal_encoding(layout.encoding)
     passed = 0
-    for block in line_blocks(path, layout):
+    for block in line_blocks(path, layout.encoding, layout.member):
         buffer = np.frombuffer(block, np.uint8)
         starts, ends = find_lines(buffer)
         lines = Lines(buffer, starts, ends, np.arange(passed + 1, passed + starts.size + 1), encoding)

@@ -14,7 +14,6 @@ from pathlib import Path
 from typing import IO, cast
 
 from profiles.errors import DataError, MachineError, RequestError
-from profiles.ingest.layout import TextLayout
 from profiles.ingest.wording import listed, nearest
 
 BLOCK_BYTES = 4 << 20
@@ -71,16 +70,24 @@ def internal_encoding(encoding: str) -> str:
     return encoding.removesuffix("-sig") if _KEEPS_ASCII.fullmatch(encoding) else "utf-8"
 
 
-def line_blocks(path: Path, layout: TextLayout) -> Iterator[bytes]:
+def line_blocks(path: Path, encoding: str, member: str = "*") -> Iterator[bytes]:
     """Yield a text file in blocks of whole lines, without its byte order mark.
+
+    Parameters
+    ----------
+    path : Path
+    encoding : str
+        Of the file; that of the blocks is :func:`internal_encoding`.
+    member : str
+        Which file of a zip archive, as a pattern; one must fit.
 
     Raises
     ------
     RequestError, DataError, MachineError
         Where the file cannot be read, is no text or is not in the layout's encoding.
     """
-    with _opened(path, layout) as raw:
-        text = _transcoded(raw, path, layout.encoding)
+    with opened(path, member) as raw:
+        text = _transcoded(raw, path, encoding)
         first = next(text, b"")
         _check_text(first, path)
         yield from _whole_lines(first.removeprefix(_BYTE_ORDER_MARK), text, path)
@@ -91,12 +98,12 @@ def line_blocks(path: Path, layout: TextLayout) -> Iterator[bytes]:
 
 
 @contextmanager
-def _opened(path: Path, layout: TextLayout) -> Iterator[IO[bytes]]:
+def opened(path: Path, member: str = "*") -> Iterator[IO[bytes]]:
     """Open a file, plain or packed as its first bytes say; damage found on the way is an error of the file."""
     head = check_file(path)
     try:
         if head.startswith(ZIP_MAGIC):
-            with zipfile.ZipFile(path) as archive, archive.open(_member(archive, path, layout.member)) as raw:
+            with zipfile.ZipFile(path) as archive, archive.open(_member(archive, path, member)) as raw:
                 yield raw
         else:
             with open_binary(path, head) as raw:
