@@ -24,6 +24,7 @@ from profiles.ingest.layout import (
     Layout,
     LongLayout,
     NetcdfLayout,
+    SeriesLayout,
     WideLayout,
     load_layout,
 )
@@ -347,6 +348,14 @@ def _read_record(path: Path, layout: Layout) -> Record:
             return read_counted(path, layout)
         case NetcdfLayout():
             return read_netcdf(path, layout)
+        case SeriesLayout():
+            raise RequestError(
+                "this is the layout of a series, not of a chain",
+                where=str(path),
+                expected="a layout of temperatures",
+                found='kind = "series"',
+                advice="list the file under [[series]] of the configuration",
+            )
 
 
 def _corrected(record: Record, clock: ClockError) -> Record:

@@ -57,6 +57,8 @@ class Columns:
         Columns of numbers.
     marks : sequence of int
         Columns of quality marks; or one, ``per_character``, of which each character is a mark.
+    tables : sequence of mapping
+        What the marks mean, where that differs from column to column; else as :class:`Understanding` has it.
     label : int, optional
         Column of a text that is kept as a number, see :class:`Understanding`.
     """
@@ -66,6 +68,7 @@ class Columns:
     numbers: Sequence[int] = ()
     marks: Sequence[int] = ()
     per_character: bool = False
+    tables: Sequence[Mapping[str, int]] = ()
     label: int | None = None
 
     def place(self, name: str, role: str) -> int:
@@ -125,7 +128,7 @@ class Understanding:
         lines : Lines
         columns : Columns
         sensor : int, optional
-            Which of the numbers tells the readings of one time apart.
+            Which of the numbers tells the readings of one time apart; without one, the label does, if there is one.
         time : ndarray of datetime64[ns], optional
             Of the lines, where they have no stamp themselves.
         """
@@ -133,14 +136,18 @@ class Understanding:
         cells = lines.cells(self.layout, len(columns.names))
         reasons = damage_reasons(lines, cells, len(columns.names), self.layout.encoding)
         values, problems = self._numerals.read(cells.buffer, *_spans(cells, columns.numbers))
+        label = self._labels(cells, columns)
         if time is None:
-            time = self._times(cells, columns, reasons, values[:, sensor] if sensor is not None else None)
+            apart = (
+                values[:, sensor] if sensor is not None else label.astype(float) if columns.label is not None else None
+            )
+            time = self._times(cells, columns, reasons, apart)
         self._name_problems(cells, columns, problems, reasons)
         flags = self._flags(cells, columns, reasons)
         is_bad = pd.notna(reasons)
         bad = lines.where(is_bad)
         self.tally.reject(bad.number, reasons[is_bad], bad.texts())
-        rows = Rows(lines.number, time, values, flags, self._labels(cells, columns))
+        rows = Rows(lines.number, time, values, flags, label)
         return rows.where(~is_bad) if is_bad.any() else rows
 
     def are_readings(self, lines: Lines, columns: Columns) -> tuple[NDArray[np.bool_], NDArray[np.float64]]:
@@ -223,11 +230,16 @@ class Understanding:
             self._check_lengths(ends - starts, columns, reasons)
             starts = np.minimum(starts + np.arange(columns.flags, dtype=np.int32), ends)
             ends = np.minimum(starts + 1, ends)
-        flags = read_marks(cells.buffer, starts, ends, self.marks, self.encoding)
+        tables = columns.tables or [self.marks] * starts.shape[1]
+        if all(table is tables[0] for table in tables):
+            flags = read_marks(cells.buffer, starts, ends, tables[0], self.encoding)
+        else:
+            parts = zip(_single(starts), _single(ends), tables, strict=True)
+            flags = np.hstack([read_marks(cells.buffer, *part, self.encoding) for part in parts])
         for row in np.flatnonzero((flags == NO_MARK).any(axis=1) & pd.isna(reasons)):
             place = int(np.flatnonzero(flags[row] == NO_MARK)[0])
             mark = cells.buffer[starts[row, place] : ends[row, place]].tobytes().decode(self.encoding, "replace")
-            reasons[row] = f"the quality mark {mark!r} is in no table; say in [quality] flags what it means"
+            reasons[row] = _no_such_mark(mark, columns.names[columns.marks[place]] if columns.tables else None)
         return flags
 
     def _check_lengths(self, lengths: NDArray[np.int32], columns: Columns, reasons: NDArray[np.object_]) -> None:
@@ -239,6 +251,17 @@ class Understanding:
             return np.zeros(cells.count.size, np.int32)
         texts = [cells.text(line, columns.label, self.encoding) for line in range(cells.count.size)]
         return np.array([self.labels.setdefault(text, len(self.labels)) for text in texts], np.int32)
+
+
+def _no_such_mark(mark: str, column: str | None) -> str:
+    if column is None:
+        return f"the quality mark {mark!r} is in no table; say in [quality] flags what it means"
+    return f"column {column!r}: the mark {mark!r} is in no table; say in the layout what it means"
+
+
+def _single(edges: NDArray[np.int32]) -> list[NDArray[np.int32]]:
+    """Return the columns one by one, (line, 1)."""
+    return [np.ascontiguousarray(edges[:, place : place + 1]) for place in range(edges.shape[1])]
 
 
 def _are_whole(cells: Cells, columns: Columns) -> NDArray[np.bool_]:

@@ -36,6 +36,11 @@ def require_depth_units(units: str) -> str:
     return _require(units, (METRE, DECIBAR), "m or dbar")
 
 
+def require_length_units(units: str) -> str:
+    """Return ``units`` if they are of length, else raise ValueError."""
+    return _require(units, (METRE,), "m or cm")
+
+
 def is_pressure(units: str) -> bool:
     """Tell whether ``units`` are of pressure."""
     return _fits(units, DECIBAR)
@@ -45,6 +50,11 @@ def to_celsius(temperature: ArrayLike, units: str) -> NDArray[np.float64]:
     """Return temperature in °C on the scale it was given on; NaN stays NaN."""
     values = np.array(temperature, dtype=np.float64)
     return np.asarray(cf_units.Unit(units).convert(values, cf_units.Unit(CELSIUS)))
+
+
+def to_metres(length: ArrayLike, units: str) -> NDArray[np.float64]:
+    """Return lengths in m."""
+    return np.asarray(cf_units.Unit(units).convert(np.array(length, dtype=np.float64), cf_units.Unit(METRE)))
 
 
 def to_downward(depth: ArrayLike, units: str, positive: str) -> NDArray[np.float64]:

@@ -11,12 +11,14 @@ from profiles.ingest.layout.kinds import (
     load_layout,
 )
 from profiles.ingest.layout.parts import GREATEST_DEPTH, WHITESPACE, Quality, Scale
+from profiles.ingest.layout.series import MOORING_MARK, SeriesLayout
 from profiles.ingest.layout.text import TextLayout
 from profiles.ingest.layout.time import TimeSettings
 
 __all__ = [
     "GREATEST_DEPTH",
     "KINDS",
+    "MOORING_MARK",
     "WHITESPACE",
     "BlockedLayout",
     "CountedLayout",
@@ -25,6 +27,7 @@ __all__ = [
     "NetcdfLayout",
     "Quality",
     "Scale",
+    "SeriesLayout",
     "TextLayout",
     "TimeSettings",
     "WideLayout",

@@ -22,6 +22,7 @@ from profiles.ingest.layout.parts import (
     WideDepth,
     WideQuality,
 )
+from profiles.ingest.layout.series import SeriesLayout
 from profiles.ingest.layout.text import TextLayout
 from profiles.ingest.layout.time import Meaning
 from profiles.ingest.wording import nearest
@@ -172,7 +173,7 @@ class NetcdfLayout(Settings):
 # --------------------------------------------------------------------------------------------------------------
 # A layout file
 
-Layout = WideLayout | LongLayout | BlockedLayout | CountedLayout | NetcdfLayout
+Layout = WideLayout | LongLayout | BlockedLayout | CountedLayout | NetcdfLayout | SeriesLayout
 
 #: The discriminator: which model reads a layout of which kind.
 KINDS: dict[str, type[Layout]] = {
@@ -181,6 +182,7 @@ KINDS: dict[str, type[Layout]] = {
     "blocked": BlockedLayout,
     "counted": CountedLayout,
     "netcdf": NetcdfLayout,
+    "series": SeriesLayout,
 }
 
 

@@ -16,8 +16,9 @@ Place = tuple[Count, Count]
 
 def _known_encoding(name: str) -> str:
     try:
+        "".encode(name)  # tells encodings of text from others, such as hex
         return "utf-8-sig" if codecs.lookup(name).name == "utf-8" else codecs.lookup(name).name
-    except LookupError:
+    except (LookupError, UnicodeError):
         raise ValueError(f"no such encoding: {name!r}; expected for example utf-8 or latin-1") from None
 
 
@@ -51,7 +52,22 @@ class TextLayout(Settings):
         if self.delimiter == self.decimal and not self.fixed:
             raise ValueError(f"delimiter and decimal are the same: {self.decimal!r}")
         self._check_names()
+        self._check_texts()
         return self
+
+    def _check_texts(self) -> None:
+        quality = getattr(self, "quality", None)
+        headers = [getattr(self, key) for key in ("block", "record") if hasattr(self, key)]
+        for text in [
+            self.comment,
+            *self.missing,
+            *(header.begins for header in headers),
+            *(quality.flags if quality else ()),
+        ]:
+            try:
+                text.encode(self.encoding)
+            except UnicodeError:
+                raise ValueError(f"{text!r} cannot stand in a file that is written in {self.encoding}") from None
 
     def _check_names(self) -> None:
         for name, (first, last) in self.fixed.items():

@@ -12,9 +12,17 @@ from profiles.ingest.clock import ISO_8601, parse_units, parse_zone
 
 HOURS_PER_HALF = 0.5
 
-#: Numbers that together make a stamp; ``hour_minute`` is 1330 for half past one in the afternoon.
-Part = Literal["year", "month", "day", "day_of_year", "hour", "minute", "second", "hour_minute"]
-_DATES: tuple[frozenset[Part], ...] = (frozenset({"year", "month", "day"}), frozenset({"year", "day_of_year"}))
+#: Numbers that together make a stamp; ``year_month_day`` is 20310723, ``hour_minute`` is 1330 for half past one in the
+#: afternoon.
+Part = Literal[
+    "year", "month", "day", "day_of_year", "year_month_day",
+    "hour", "minute", "second", "hour_minute", "hour_minute_second",
+]  # fmt: skip
+_DATES: tuple[frozenset[Part], ...] = (
+    frozenset({"year", "month", "day"}),
+    frozenset({"year", "day_of_year"}),
+    frozenset({"year_month_day"}),
+)
 _CLOCKS: tuple[frozenset[Part], ...] = (
     frozenset(),
     frozenset({"hour"}),
@@ -22,6 +30,7 @@ _CLOCKS: tuple[frozenset[Part], ...] = (
     frozenset({"hour", "minute", "second"}),
     frozenset({"hour_minute"}),
     frozenset({"hour_minute", "second"}),
+    frozenset({"hour_minute_second"}),
 )
 
 
@@ -30,17 +39,31 @@ def _known_zone(name: str) -> str:
     return name
 
 
-def _whole_date(time_format: str) -> str:
-    """Accept a strptime format that gives back the date it wrote."""
+_SAMPLE = datetime(2031, 7, 23, 13, 45, 56, tzinfo=UTC)
+
+
+def _read_back(time_format: str) -> datetime:
+    """Return what a strptime format reads of the date it wrote."""
     if time_format == ISO_8601:
-        return time_format
-    sample = datetime(2031, 7, 23, 13, 45, 56, tzinfo=UTC)
+        return _SAMPLE
     try:
-        read = datetime.strptime(sample.strftime(time_format), time_format)
+        return datetime.strptime(_SAMPLE.strftime(time_format), time_format)
     except ValueError as error:
         raise ValueError(f"no strptime format: {error}") from None
-    if read.date() != sample.date():
+
+
+def check_gives_day(time_format: str) -> str:
+    """Return a format that gives back the date it wrote, else raise ValueError."""
+    if _read_back(time_format).date() != _SAMPLE.date():
         raise ValueError(f"this format does not give year, month and day: {time_format!r}")
+    return time_format
+
+
+def check_gives_month(time_format: str) -> str:
+    """Return a format that gives back year and month, else raise ValueError."""
+    read = _read_back(time_format)
+    if (read.year, read.month) != (_SAMPLE.year, _SAMPLE.month):
+        raise ValueError(f"this format does not give year and month: {time_format!r}")
     return time_format
 
 
@@ -78,7 +101,7 @@ class TimeSettings(Meaning):
     column: str | None = Field(None, description="name of the column")
     columns: tuple[str, ...] = Field((), description="or names of several, read as one text joined by a blank")
     parts: dict[Part, str] = Field(default_factory=dict, description="or a column of numbers for year, day_of_year ...")
-    format: Annotated[str, AfterValidator(_whole_date)] = Field(ISO_8601, description='strptime format or "iso8601"')
+    format: Annotated[str, AfterValidator(check_gives_day)] = Field(ISO_8601, description='strptime format or "iso8601"')
     units: Annotated[str | None, AfterValidator(_known_units)] = Field(
         None, description='"seconds since 1970-01-01" and the like, where the column holds such numbers'
     )
@@ -104,8 +127,9 @@ class TimeSettings(Meaning):
     def _check_parts(self, given: frozenset[Part]) -> None:
         if not any(given == date | clock for date in _DATES for clock in _CLOCKS):
             raise ValueError(
-                "parts make no stamp: expected year with month and day or with day_of_year, then none of, or hour, "
-                f"minute, second in that order, or hour_minute; found {', '.join(self.parts)}"
+                "parts make no stamp: expected year with month and day or with day_of_year, or year_month_day, then "
+                "none of, or hour, minute, second in that order, or hour_minute, or hour_minute_second; "
+                f"found {', '.join(self.parts)}"
             )
 
     @property
