@@ -20,7 +20,7 @@ from profiles.vocabulary import TEST_BITS, Flag
 
 #: What a fault is called after the test that found it, the more telling test first.
 KINDS = {
-    "water": "out of the water",
+    "water": "in air",
     "flat_line": "stuck",
     "gross_range": "out of range",
     "spike": "spike",

@@ -49,7 +49,7 @@ def test_a_chain_without_the_status_is_not_judged():
     assert (quality_control(bare)["temperature_qc"] == Flag.GOOD).all()
 
 
-def test_the_fault_list_calls_it_out_of_the_water():
+def test_the_fault_list_calls_it_in_air():
     faults = fault_list(quality_control(chain([Water.AIR_FOUND, 1, 1], [[27.0, 27.0], [28.0, 20.0], [28.1, 20.1]])))
-    assert list(faults["kind"]) == ["out of the water"] * 2
+    assert list(faults["kind"]) == ["in air"] * 2
     assert list(faults["flag"]) == [4, 4]
