@@ -4,5 +4,18 @@ from profiles.ingest.delivery import Delivery, read, read_delivery
 from profiles.ingest.joining import join
 from profiles.ingest.layout import Layout, load_layout
 from profiles.ingest.recovery_log import read_recovery_log
+from profiles.ingest.series import Series, read_series
+from profiles.ingest.series_joining import join_series
 
-__all__ = ["Delivery", "Layout", "join", "load_layout", "read", "read_delivery", "read_recovery_log"]
+__all__ = [
+    "Delivery",
+    "Layout",
+    "Series",
+    "join",
+    "join_series",
+    "load_layout",
+    "read",
+    "read_delivery",
+    "read_recovery_log",
+    "read_series",
+]

@@ -11,11 +11,12 @@ import xarray as xr
 
 from profiles.config import MeansSettings
 from profiles.errors import DataError
-from profiles.vocabulary import Flag, IsothermStatus, MeanStatus, describe
+from profiles.vocabulary import ColumnSource, Flag, IsothermStatus, MeanStatus, describe
 
 _CENSORED = (IsothermStatus.ABOVE_CHAIN, IsothermStatus.BELOW_CHAIN)
-_INDEPENDENT = "isotherm_depth_error_independent"
-_AVERAGED = ("isotherm_depth", "isotherm_depth_error_persistent", "mixed_layer_depth", "mean_temperature")
+DAY_HOURS = 24.0
+INDEPENDENT = "isotherm_depth_error_independent"
+AVERAGED = ("isotherm_depth", "isotherm_depth_error_persistent", "mixed_layer_depth", "mean_temperature")
 
 
 def daily_means(columns: xr.Dataset, settings: MeansSettings | None = None) -> xr.Dataset:
@@ -36,7 +37,7 @@ def daily_means(columns: xr.Dataset, settings: MeansSettings | None = None) -> x
         the commonest of the day.
     """
     settings = settings or MeansSettings()
-    table = _table(columns)
+    table = time_table(columns)
     times = pd.DatetimeIndex(table.index)
     days = times.floor("D")
     index = pd.date_range(days[0], days[-1], freq="D")
@@ -44,13 +45,13 @@ def daily_means(columns: xr.Dataset, settings: MeansSettings | None = None) -> x
     grouped = table.groupby(days)
     least = settings.daily_share * expected
     means = _means_where(grouped, least).reindex(index)
-    means[_INDEPENDENT] = _error_of_mean(table[_INDEPENDENT], days).reindex(index)
+    means[INDEPENDENT] = _error_of_mean(table[INDEPENDENT], days).reindex(index)
     means["isotherm_status"] = _commonest_status(table, days).reindex(index)
     count = grouped["isotherm_depth"].count().reindex(index, fill_value=0)
-    censored = _censored(table).groupby(days).sum().reindex(index, fill_value=0)
-    means["isotherm_mean_status"] = _mean_status(count, censored, least, settings.censored_share)
-    means["isotherm_depth_qc"] = _flag(means, settings.questionable_share)
-    return _labelled(means, index + pd.Timedelta("12h"), columns)
+    outside = censored(table).groupby(days).sum().reindex(index, fill_value=0)
+    means["isotherm_mean_status"] = mean_status(count, outside, least, settings.censored_share)
+    means["isotherm_depth_qc"] = mean_flag(means, settings.questionable_share)
+    return labelled_means(means, index + pd.Timedelta("12h"), columns)
 
 
 def monthly_means(daily: xr.Dataset, settings: MeansSettings | None = None) -> xr.Dataset:
@@ -71,21 +72,20 @@ def monthly_means(daily: xr.Dataset, settings: MeansSettings | None = None) -> x
         the stated share of days has no mean: the days that are left would be a biased sample.
     """
     settings = settings or MeansSettings()
-    table = _table(daily)
+    table = time_table(daily)
     months = pd.DatetimeIndex(table.index).to_period("M")
     index = pd.period_range(months[0], months[-1], freq="M")
     grouped = table.groupby(months)
     least = settings.monthly_days
     means = _means_where(grouped, least).reindex(index)
-    means[_INDEPENDENT] = _error_of_mean(table[_INDEPENDENT], months).reindex(index)
+    means[INDEPENDENT] = _error_of_mean(table[INDEPENDENT], months).reindex(index)
     count = grouped["isotherm_depth"].count().reindex(index, fill_value=0)
-    censored = _censored(table).groupby(months).sum().reindex(index, fill_value=0)
-    means["isotherm_mean_status"] = _mean_status(count, censored, least, settings.censored_share)
+    outside = censored(table).groupby(months).sum().reindex(index, fill_value=0)
+    means["isotherm_mean_status"] = mean_status(count, outside, least, settings.censored_share)
     means["isotherm_day_count"] = count
     means["isotherm_day_spread"] = grouped["isotherm_depth"].std().reindex(index)
-    middle = index.start_time + (index.end_time.ceil("D") - index.start_time) / 2
-    means["isotherm_depth_qc"] = _flag(means, settings.questionable_share)
-    return _labelled(means, middle, daily)
+    means["isotherm_depth_qc"] = mean_flag(means, settings.questionable_share)
+    return labelled_means(means, middle_of(index), daily)
 
 
 def join_moorings(means: Mapping[str, xr.Dataset]) -> xr.Dataset:
@@ -99,10 +99,10 @@ def join_moorings(means: Mapping[str, xr.Dataset]) -> xr.Dataset:
     if not means:
         raise DataError("there is no mooring to join", expected="one or more")
     times = np.unique(np.concatenate([part["time"].values for part in means.values()]))
-    aligned = [_aligned(part, times).assign_coords(mooring=name) for name, part in means.items()]
+    parts = [aligned(part, times).assign_coords(mooring=name) for name, part in means.items()]
     # Positions stand along the moorings even where they are all the same, as on the equator.
-    position = [name for name in ("latitude", "longitude") if all(name in part.coords for part in aligned)]
-    joined = xr.concat(aligned, dim="mooring", join="exact", coords=position, compat="equals", combine_attrs="override")
+    position = [name for name in ("latitude", "longitude") if all(name in part.coords for part in parts)]
+    joined = xr.concat(parts, dim="mooring", join="exact", coords=position, compat="equals", combine_attrs="override")
     return describe(joined)
 
 
@@ -113,15 +113,20 @@ _NOTHING = {
     "isotherm_depth_qc": int(Flag.MISSING),
     "isotherm_day_count": 0,
     "deployment": 0,
+    "column_source": int(ColumnSource.NEITHER),
 }
 
 
-def _aligned(part: xr.Dataset, times: np.ndarray) -> xr.Dataset:
+def middle_of(months: pd.PeriodIndex) -> pd.DatetimeIndex:
+    return months.start_time + (months.end_time.ceil("D") - months.start_time) / 2
+
+
+def aligned(part: xr.Dataset, times: np.ndarray) -> xr.Dataset:
     fill = {str(name): _NOTHING.get(str(name), np.nan) for name in part.data_vars}
     return part.reindex(time=times, fill_value=fill)
 
 
-def _table(columns: xr.Dataset) -> pd.DataFrame:
+def time_table(columns: xr.Dataset) -> pd.DataFrame:
     series = {str(name): data for name, data in columns.data_vars.items() if data.dims == ("time",)}
     return pd.DataFrame(
         {name: data.values for name, data in series.items()}, index=pd.DatetimeIndex(columns["time"].values)
@@ -136,7 +141,7 @@ def _nominal_hours(times: pd.DatetimeIndex) -> float:
 
 def _means_where(grouped: Any, least: float) -> pd.DataFrame:
     """Return the means of the columns that are averaged, where enough values are there."""
-    means = pd.DataFrame({name: grouped[name].mean().where(grouped[name].count() >= least) for name in _AVERAGED})
+    means = pd.DataFrame({name: grouped[name].mean().where(grouped[name].count() >= least) for name in AVERAGED})
     means["questionable_share"] = grouped["questionable_share"].mean()
     means["deployment"] = grouped["deployment"].last()
     return means
@@ -155,20 +160,18 @@ def _commonest_status(table: pd.DataFrame, groups: pd.DatetimeIndex) -> pd.Serie
     return counts.idxmax(axis=1)
 
 
-def _censored(table: pd.DataFrame) -> pd.Series[bool]:
+def censored(table: pd.DataFrame) -> pd.Series[bool]:
     return table["isotherm_status"].isin([int(status) for status in _CENSORED])
 
 
-def _mean_status(
-    count: pd.Series[int], censored: pd.Series[Any], least: float, censored_share: float
-) -> pd.Series[int]:
+def mean_status(count: pd.Series[int], outside: pd.Series[Any], least: float, censored_share: float) -> pd.Series[int]:
     status = pd.Series(int(MeanStatus.GIVEN), index=count.index)
     status[count < least] = int(MeanStatus.TOO_FEW_VALUES)
-    status[censored > censored_share * (count + censored)] = int(MeanStatus.CENSORED)
+    status[outside > censored_share * (count + outside)] = int(MeanStatus.CENSORED)
     return status
 
 
-def _flag(means: pd.DataFrame, questionable_share: float) -> pd.Series[int]:
+def mean_flag(means: pd.DataFrame, questionable_share: float) -> pd.Series[int]:
     """Return the flag of each mean: missing, questionable where too much of its input is, else good."""
     flag = pd.Series(int(Flag.GOOD), index=means.index)
     flag[means["questionable_share"] > questionable_share] = int(Flag.QUESTIONABLE)
@@ -176,7 +179,7 @@ def _flag(means: pd.DataFrame, questionable_share: float) -> pd.Series[int]:
     return flag
 
 
-def _labelled(means: pd.DataFrame, times: pd.DatetimeIndex, source: xr.Dataset) -> xr.Dataset:
+def labelled_means(means: pd.DataFrame, times: pd.DatetimeIndex, source: xr.Dataset) -> xr.Dataset:
     given = means["isotherm_mean_status"] == int(MeanStatus.GIVEN)
     parts = [name for name in means.columns if name.startswith("isotherm_depth")]
     means.loc[~given, parts] = np.nan
