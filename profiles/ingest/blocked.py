@@ -102,11 +102,11 @@ def _parts(path: Path, layout: BlockedLayout) -> Iterator[Header | Lines]:
         lines = block if held is None else block.behind(held)
         held = None
         starts = np.flatnonzero(lines.begin_with(layout.block.begins)).tolist()
-        for start, stop in zip([0, *starts], [*starts, len(lines)], strict=True):
+        if not starts or starts[0] > 0:
+            yield lines.where(slice(None, starts[0] if starts else None))
+        for start, stop in zip(starts, [*starts, len(lines)][1:], strict=True):
             part = lines.where(slice(start, stop))
-            if start not in starts:
-                yield part
-            elif stop == len(lines) and len(part) < layout.block.header_rows:
+            if stop == len(lines) and len(part) < layout.block.header_rows:
                 held = part.cut_loose()
             else:
                 yield from _headed(part, str(path), layout)

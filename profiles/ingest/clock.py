@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import UTC, datetime, timedelta, timezone, tzinfo
+from functools import lru_cache
+from typing import Any
 from zoneinfo import ZoneInfo, available_timezones
 
 import cf_units
@@ -20,8 +22,17 @@ ISO_8601 = "iso8601"
 
 # A stamp that itself says how far it is from UTC: Z, or an offset after the time of day.
 _WITH_OFFSET = re.compile(r"[Zz]$|[Tt ].*[+-][0-9]{2}(?::?[0-9]{2})?$")
-_ISO_DAY = re.compile(r"[0-9]{4}-[0-9]{2}-[0-9]{2}|[0-9]{8}")
+# ISO 8601-1:2019 (from memory), calendar dates, with a blank allowed for the T: pandas also reads stamps cut short.
+_ISO_STAMP = re.compile(
+    r"(?:[0-9]{4}-[0-9]{2}-[0-9]{2}|[0-9]{8})"
+    r"(?:[Tt ][0-9]{2}(?::[0-9]{2}(?::[0-9]{2}(?:\.[0-9]+)?)?|(?:[0-9]{2}){1,2}|[0-9]{4}\.[0-9]+)?"
+    r" ?(?:[Zz]|[+-][0-9]{2}(?::?[0-9]{2})?)?)?"
+)
+# Digits of each number of a strptime format; where two numbers touch, fewer could be read in more than one way.
+_DIGITS = {"Y": "4", "y": "2", "m": "2", "d": "2", "H": "2", "I": "2", "M": "2", "S": "2", "j": "3", "f": "1,9"}
+_DIRECTIVE = re.compile(r"%(.)")
 _DIGIT = re.compile(r"[0-9]")
+_CARRIED = re.compile(r"6[01]|366")  # stands in every stamp with a leap second or the last day of a leap year
 _FIRST, _LAST = (
     np.datetime64("1678-01-01", "us"),
     np.datetime64("2262-01-01", "us"),
@@ -65,7 +76,7 @@ def _offset_zone(name: str) -> tzinfo:
 def parse_units(units: str) -> tuple[float, np.datetime64]:
     """Return the seconds of one unit and the time of zero, for units like ``"seconds since 1970-01-01"``.
 
-    Zero may lie before 1582-10-15, where dates are Julian (CF-1.11, section 4.4.1), and before Christ, the year -4713 being
+    Zero may lie before 1582-10-15, where dates are Julian (CF-1.11, section 4.4.1), and before Christ: year -4713 is
     4713 before. ValueError where they are no such units, or of a length that changes, as months and years do.
     """
     step = units.partition(" since ")[0].strip()
@@ -117,8 +128,7 @@ def finished(
 
 def _read_slowly(texts: NDArray[np.object_], time_format: str) -> Times:
     is_iso = time_format == ISO_8601
-    # pandas also reads words such as "now", whatever the format.
-    plausible = _ISO_DAY.match if is_iso else _DIGIT.search
+    plausible = _ISO_STAMP.fullmatch if is_iso else _plausible(time_format)
     guarded = [text if plausible(text) else None for text in texts]
     read = pd.to_datetime(
         pd.Series(guarded, dtype=object),
@@ -127,7 +137,36 @@ def _read_slowly(texts: NDArray[np.object_], time_format: str) -> Times:
         utc=True,
     )
     clock = read.dt.tz_localize(None).to_numpy().astype("datetime64[us]")
+    for place in np.flatnonzero([text is not None and _CARRIED.search(text) is not None for text in guarded]):
+        if not np.isnat(clock[place]) and _is_carried(texts[place], clock[place], time_format):
+            clock[place] = np.datetime64("NaT")
     return _in_range(clock)
+
+
+@lru_cache(maxsize=32)
+def _plausible(time_format: str) -> Callable[[str], Any]:
+    """Return what tells texts that may be stamps: pandas also reads words such as "now", whatever the format."""
+    pieces = _DIRECTIVE.split(time_format)
+    literals, directives = pieces[::2], pieces[1::2]
+    between = zip(literals[1:-1], directives[:-1], directives[1:], strict=True)
+    if not any(not literal and {*pair} <= {*_DIGITS} for literal, *pair in between):
+        return _DIGIT.search
+    texts = [rf"[0-9]{{{_DIGITS[name]}}}" if name in _DIGITS else ".+" for name in directives]
+    return re.compile(
+        "".join(re.escape(literal) + text for literal, text in zip(literals, [*texts, ""], strict=True))
+    ).fullmatch
+
+
+def _is_carried(text: str, read: np.datetime64, time_format: str) -> bool:
+    """Tell whether pandas, as strptime does, made another time of a second 60 or 61 or of a day 366 that is none."""
+    moment = read.astype(datetime)
+    if "%j" in time_format and "366" in text and (moment.month, moment.day) == (1, 1):
+        return moment.strftime("%Y" if "%Y" in time_format else "%y") not in text
+    try:
+        datetime.strptime(text, time_format)
+    except ValueError as error:
+        return "second must be in 0..59" in str(error)
+    return False
 
 
 def _in_range(clock: Times) -> Times:
@@ -137,7 +176,7 @@ def _in_range(clock: Times) -> Times:
 
 def _with_offset(texts: NDArray[np.object_], time_format: str) -> NDArray[np.bool_]:
     if time_format != ISO_8601:
-        return np.full(texts.size, "%z" in time_format)
+        return np.full(texts.size, "%z" in time_format or "%Z" in time_format)
     return np.fromiter((_WITH_OFFSET.search(text) is not None for text in texts), bool, texts.size)
 
 
@@ -248,13 +287,15 @@ class Zone:
         As :func:`parse_zone` takes it.
     by_order : bool
         Whether local times that the end of summer time repeats are told by their order: the first time round is
-        summer time, until a sensor's reading is not later than the one before it. Else they stay NaT.
+        summer time, until a sensor's reading is not later than the one before it, or comes, no earlier, behind one of
+        the second round. Else they stay NaT.
     """
 
     name: str
     by_order: bool = False
     _last: dict[tuple[int, float], np.datetime64] = field(default_factory=dict)
-    _second_round: set[int] = field(default_factory=set)
+    _second_round: set[tuple[int, float]] = field(default_factory=set)
+    _before: tuple[int, float] = (0, 0.0)
 
     def to_utc(self, clock: Times, sensor: NDArray[np.float64] | None = None) -> Times:
         """Return UTC, NaT where the local time does not exist, or exists twice; ``sensor`` tells readings apart."""
@@ -278,10 +319,11 @@ class Zone:
                 continue
             night = int(stamp.astype("datetime64[D]").astype(np.int64))
             key = (night, float(sensor[case]) if sensor is not None else 0.0)
-            if key in self._last and stamp <= self._last[key]:
-                self._second_round.add(night)
-            self._last[key] = stamp
-            utc[case] = np.datetime64(local - offsets[night in self._second_round], "ns")
+            follows = self._before[0] == night and self._before in self._second_round
+            if (key in self._last and stamp <= self._last[key]) or (follows and stamp >= self._last[self._before]):
+                self._second_round.add(key)
+            self._last[key], self._before = stamp, key
+            utc[case] = np.datetime64(local - offsets[key in self._second_round], "ns")
 
 
 def hours(length: float) -> np.timedelta64:

@@ -23,6 +23,7 @@ from profiles.ingest.units import is_pressure, to_celsius, to_downward
 from profiles.vocabulary import Flag
 
 DEPTH, TEMPERATURE = 0, 1  # columns of the numbers of a row
+_ROUNDING = 1e-6  # of a depth: what lies at the very edge of the tolerance is within it
 MOST_DEPTHS = 400  # of one file; a column of more different depths is no list of sensors (ours)
 
 
@@ -137,7 +138,8 @@ def _nearest(found: NDArray[np.float64], declared: NDArray[np.float32], depth: C
         stored, dtype=np.intp)  # fmt: skip
     lower = declared[np.maximum(above - 1, 0)]
     near = np.where(np.abs(lower - stored) <= np.abs(declared[above] - stored), lower, declared[above])
-    return np.where(np.abs(near - stored) <= reach, near, stored).astype(np.float32)
+    distance = np.abs(near.astype(np.float64) - found)
+    return np.where(distance <= reach + _ROUNDING * np.abs(found), near, stored).astype(np.float32)
 
 
 def _packed(rows: Rows, depth: NDArray[np.float32], units: str) -> Table:

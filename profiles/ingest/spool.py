@@ -12,6 +12,8 @@ from numpy.typing import NDArray
 
 IN_MEMORY = 32 << 20  # bytes that a spool keeps in memory
 CHUNK_ROWS = 65_536
+MOST_PARTS = 64  # that rows are sorted into at a time; each may be an open file
+_SAMPLE = 65_536  # stamps from which the spans of the parts are taken
 
 Table = NDArray[Any]  # structured, see wide_type and long_type
 
@@ -99,24 +101,28 @@ class Spool:
 
     def by_time(self) -> Iterator[Table]:
         """Yield all rows in order of time, those of one time together and in the order of the file."""
+        parts = self._parted() if self.count > CHUNK_ROWS and not self.is_ordered else []
         if self.is_ordered:
             yield from _whole_times(self.chunks())
+        elif len(parts) > 1:
+            while parts:
+                yield from parts.pop(0).by_time()
         else:
-            for part in self._parted():
-                rows = part.rows(0, part.count)
-                yield rows[np.argsort(rows["time"], kind="stable")]
+            rows = self.rows(0, self.count)
+            yield rows[np.argsort(rows["time"], kind="stable")]
 
     def _parted(self) -> list[Spool]:
-        """Return the rows in several spools, each of a span of time."""
-        number = -(-self.count // CHUNK_ROWS)
-        sample = np.sort(np.concatenate([rows["time"][::16] for rows in self.chunks()]))
+        """Return the rows in several spools, each of a span of time; one where they cannot be told apart."""
+        number = min(-(-self.count // CHUNK_ROWS), MOST_PARTS)
+        step = -(-self.count // _SAMPLE)
+        sample = np.sort(np.concatenate([rows["time"][::step].copy() for rows in self.chunks()]))
         edges = np.unique(sample[(np.arange(1, number) * sample.size) // number])
         parts = [Spool(self.row_type, IN_MEMORY // number) for _ in range(edges.size + 1)]
         for rows in self.chunks():
             span = np.searchsorted(edges, rows["time"], side="right")
             for place in np.unique(span):
                 parts[place].append(rows[span == place])
-        return parts
+        return [part for part in parts if part.count]
 
 
 def _whole_times(chunks: Iterator[Table]) -> Iterator[Table]:

@@ -145,14 +145,16 @@ def _iso_clock(row: Bytes, place: int, length: int, fields: NDArray[np.int64]) -
         return place, False
     if row[place] != 84 and row[place] != 32:
         return -1, False
+    has_seconds = False
     for step in (Step.HOUR.value, Step.MINUTE.value, Step.SECOND.value):
         if step == Step.SECOND.value and (place == length or row[place] != 58):
             break
         if step == Step.MINUTE.value and (place >= length or row[place] != 58):
             return -1, False
         fields[step] = _digits(row, place + 1, length, 2)
+        has_seconds = step == Step.SECOND.value
         place += 3
-    if place < length and row[place] == 46:
+    if has_seconds and place < length and row[place] == 46:
         fields[Step.FRACTION.value], place = _fraction(row, place + 1, length)
     is_utc = place < length and row[place] == 90
     return place + is_utc, is_utc

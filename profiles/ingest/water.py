@@ -90,8 +90,7 @@ class Immersion:
 def immersion(table: Spool, depth: NDArray[np.float32], service: Service | None) -> Immersion:
     """Look a record over for how much its readings usually differ with depth."""
     step = max(table.count // _SAMPLE, 1)
-    sampled = [rows["values"][::step] for rows in table.chunks()]
-    differences = np.concatenate([spread(values, depth) for values in sampled])
+    differences = np.concatenate([spread(rows["values"][::step], depth) for rows in table.chunks()])
     known = differences[np.isfinite(differences)]
     usual = float(np.median(known)) if known.size else np.nan
     return Immersion(usual if usual >= LEAST_SPREAD else np.nan, depth, service)

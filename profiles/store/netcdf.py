@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterable, Mapping
 from pathlib import Path
 from typing import Any
@@ -21,6 +22,7 @@ TIME_ENCODING = {
     "calendar": "standard",
     "units_metadata": "leap_seconds: none",  # CF-1.12 (from memory): elapsed seconds as datetime64 counts them
 }
+_CHUNKS_KEPT = 2  # of each variable while writing: the one at hand and one that a block ends in
 CONVENTIONS = "CF-1.11, ACDD-1.3"
 _FILL: Mapping[str, Any] = {
     "f": np.float32(9.96921e36),
@@ -119,6 +121,9 @@ def _define_variable(file: netCDF4.Dataset, data: xr.DataArray, auxiliary: list[
     if name not in data.coords and belonging:
         attributes["coordinates"] = " ".join(belonging)
     variable.setncatts(attributes)
+    if compress:
+        # By default each variable keeps the 16 MB that were written last, which a record in order never comes back to.
+        variable.set_var_chunk_cache(size=_CHUNKS_KEPT * math.prod(variable.chunking()) * np.dtype(dtype).itemsize)
 
 
 def _is_text(data: xr.DataArray) -> bool:
