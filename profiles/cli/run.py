@@ -52,6 +52,8 @@ def _document(outcome: Outcome) -> dict[str, object]:
         "problems": [vars(problem) for problem in outcome.problems],
         "tasks": {"computed": outcome.computed, "kept": outcome.kept},
         "seconds": outcome.seconds,
+        "months": outcome.months,
+        "series_notes": outcome.notes,
         "latest": outcome.latest,
     }
 
@@ -71,6 +73,7 @@ def _summary(config: Config, outcome: Outcome) -> list[str]:
         f"{config.array.name}: {len(outcome.moorings)} of {len(config.moorings)} moorings used",
         f"rows read {rows['rows_read']} = kept {rows['rows_kept']} + quarantined {rows['rows_quarantined']}",
         *_row_notes(rows),
+        *_series_notes(outcome),
         f"tasks computed {outcome.computed}, kept from an earlier run {outcome.kept}",
     ]
     if outcome.latest is not None:
@@ -85,6 +88,20 @@ def _row_notes(rows: dict[str, int]) -> list[str]:
         "rows_reordered": "rows stood out of order and were sorted: tables/deliveries.csv says in which files",
     }
     return [f"{rows[name]} {note}" for name, note in notes.items() if rows[name]]
+
+
+def _series_notes(outcome: Outcome) -> list[str]:
+    """Say what came from series, what was the chains' although series have it too, and what to know of the files."""
+    counts = {
+        source: sum(months.get(source, 0) for months in outcome.months.values()) for source in ("chain", "series")
+    }
+    said = [f"{file}: {note}" for file, notes in outcome.notes.items() for note in notes]
+    if counts["series"] or said:
+        said.append(
+            f"monthly means from chains {counts['chain']}, from series {counts['series']}; a chain's come first "
+            "(column_source in columns_monthly.nc says which is which)"
+        )
+    return said
 
 
 def _latest(config: Config, latest: dict[str, float]) -> list[str]:

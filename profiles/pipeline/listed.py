@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING
 
-from profiles.config import Config, Mooring
+from profiles.config import Config, Mooring, SeriesFile
 from profiles.config import Delivery as Listed
 from profiles.errors import DataError, MachineError, RequestError, ThermotiltError
 
@@ -33,7 +33,7 @@ def read_listed(config: Config, mooring: Mooring, listed: Listed) -> Delivery | 
             deployment=listed.deployment or mooring.deliveries.index(listed) + 1,
         )
     except (RequestError, DataError, MachineError) as error:
-        return _message(error, config, [listed])
+        return message_of(error, config, [listed])
 
 
 def join_listed(config: Config, mooring: Mooring, deliveries: Sequence[Delivery]) -> Delivery | str:
@@ -43,7 +43,7 @@ def join_listed(config: Config, mooring: Mooring, deliveries: Sequence[Delivery]
     try:
         joined = join(deliveries)
     except (RequestError, DataError) as error:
-        return _message(error, config, mooring.deliveries)
+        return message_of(error, config, mooring.deliveries)
     log = read_log(config)
     return joined if log is None else joined.with_service(log.get(mooring.id))
 
@@ -55,7 +55,7 @@ def read_log(config: Config) -> Mapping[str, Service] | None:
     return None if config.recovery_log is None else read_recovery_log(config.resolve(config.recovery_log))
 
 
-def _message(error: ThermotiltError, config: Config, listed: Sequence[Listed]) -> str:
+def message_of(error: ThermotiltError, config: Config, listed: Sequence[Listed | SeriesFile]) -> str:
     """Return the error's text with paths as the configuration gives them: the same bytes wherever it lies."""
     text = str(error)
     for path in (path for delivery in listed for path in (delivery.path, delivery.layout)):

@@ -7,6 +7,12 @@ from pathlib import Path
 
 from profiles.pipeline.task import HIDDEN
 
+#: Where the columns of a mooring come from: its chain, or a series from elsewhere of days (or less) or of months.
+CHAIN, DAYS, MONTHS = "chain", "days", "months"
+
+#: What belongs to the series together; no mooring can be called so.
+SERIES = "(series)"
+
 
 @dataclass(frozen=True)
 class Folder:
@@ -17,6 +23,10 @@ class Folder:
     def delivered(self, mooring: str) -> Path:
         """The chain as ingested, before flags."""
         return self.out / HIDDEN / "ingest" / f"{mooring}.nc"
+
+    def series(self, mooring: str, kind: str) -> Path:
+        """What series from elsewhere have of one mooring, of days or of months."""
+        return self.out / HIDDEN / "series" / f"{mooring}.{kind}.nc"
 
     def part(self, table: str, mooring: str) -> Path:
         """One mooring's rows of a table."""
@@ -30,9 +40,9 @@ class Folder:
         """The flagged chain."""
         return self.out / "chains" / f"{mooring}.nc"
 
-    def columns(self, mooring: str) -> Path:
-        """One mooring's columns at its own times."""
-        return self.out / "columns" / f"{mooring}.nc"
+    def columns(self, mooring: str, beside: str = "") -> Path:
+        """One mooring's columns at its own times; those that come second, if there are such, beside them."""
+        return self.out / "columns" / (f"series/{mooring}.{beside}.nc" if beside else f"{mooring}.nc")
 
     def table(self, name: str) -> Path:
         """A table of the whole array."""
@@ -74,5 +84,5 @@ class Folder:
 
     def folders(self) -> list[Path]:
         """Return every folder that a run writes to."""
-        hidden = [self.out / HIDDEN / name for name in ("ingest", "tables", "means", "records")]
+        hidden = [self.out / HIDDEN / name for name in ("ingest", "series", "tables", "means", "records")]
         return [self.out, *hidden, *(self.out / name for name in ("chains", "columns", "tables", "figures"))]

@@ -15,7 +15,8 @@ from profiles.config import Config, Mooring
 from profiles.errors import EXIT_DONE, EXIT_PARTIAL, DataError, RequestError, ThermotiltError
 from profiles.pipeline import stages
 from profiles.pipeline.listed import read_log
-from profiles.pipeline.paths import Folder
+from profiles.pipeline.paths import CHAIN, SERIES, Folder
+from profiles.pipeline.series import NOTHING, series_notes, series_task
 from profiles.pipeline.task import (
     STAGES,
     Checksums,
@@ -43,7 +44,11 @@ class Problem:
 
 @dataclass(frozen=True)
 class Outcome:
-    """What a run did: ``rows`` and ``latest`` are what the closing lines of the command say."""
+    """What a run did: ``rows`` and ``latest`` are what the closing lines of the command say.
+
+    ``notes`` are by file of a series what somebody should know of it; ``months`` by mooring how many monthly means come
+    from its chain and how many from series.
+    """
 
     out: Path
     stages: tuple[str, ...]
@@ -54,6 +59,8 @@ class Outcome:
     computed: int
     kept: int
     latest: dict[str, Any] | None
+    notes: dict[str, list[str]] = field(default_factory=dict)
+    months: dict[str, dict[str, int]] = field(default_factory=dict)
 
     @property
     def exit_code(self) -> int:
@@ -131,6 +138,14 @@ class _Run:
 
     def __post_init__(self) -> None:
         self.moorings: Sequence[Mooring] = self.config.moorings
+        self.sources: dict[str, list[str]] = {}  # by mooring: where its columns come from, in the order of precedence
+        self.notes: dict[str, list[str]] = {}
+        self.months: dict[str, dict[str, int]] = {}
+
+    @property
+    def chained(self) -> list[Mooring]:
+        """The moorings that have a chain."""
+        return [mooring for mooring in self.moorings if CHAIN in self.sources[mooring.id]]
 
     def through(self, until: str) -> Outcome:
         """Run the stages up to ``until`` and write the account."""
@@ -158,32 +173,52 @@ class _Run:
             computed=self.computed,
             kept=self.kept,
             latest=self.latest,
+            notes=self.notes,
+            months=self.months,
         )
         store.write_record(self.folder.account, _account(self.config, outcome, started, self.checksums))
         return outcome
 
     def _ingest(self) -> None:
-        reports = self._do("ingest", [stages.ingest_task(self.config, m, self.folder) for m in self.moorings])
+        delivered = [mooring for mooring in self.moorings if mooring.deliveries]
+        reports = self._do("ingest", [stages.ingest_task(self.config, m, self.folder) for m in delivered])
+        self.sources = {name: [CHAIN] for name, report in reports.items() if report["usable"]}
+        if self.config.series:
+            reports |= self._do("ingest", [series_task(self.config, self.folder)], shown=False)
+            self.notes = series_notes(reports[SERIES]["deliveries"])
+            for name, kinds in reports[SERIES]["moorings"].items():
+                self.sources.setdefault(name, []).extend(kinds)
         for name, report in reports.items():
             self.problems += [Problem(name, "ingest", row["problem"]) for row in report["deliveries"] if row["problem"]]
         stages.check_usable(reports, [problem.message for problem in self.problems])
+        self._tell_of_the_missing(delivered)
         self.rows = _count_rows(reports.values())
-        self._do("ingest", [stages.gather_task("ingest", self.moorings, self.folder)], shown=False)
-        self._go_on_with(name for name, report in reports.items() if report["usable"])
+        self._do("ingest", [stages.gather_task("ingest", list(reports), self.folder)], shown=False)
+        self._go_on_with(self.sources)
+
+    def _tell_of_the_missing(self, delivered: Sequence[Mooring]) -> None:
+        without = [mooring for mooring in self.moorings if mooring not in delivered and mooring.id not in self.sources]
+        self.problems += [Problem(mooring.id, "ingest", NOTHING) for mooring in without]
 
     def _qc(self) -> None:
-        self._go_on_with(self._do("qc", [stages.qc_task(self.config, m, self.folder) for m in self.moorings]))
-        self._do("qc", [stages.gather_task("qc", self.moorings, self.folder)], shown=False)
+        flagged = self._do("qc", [stages.qc_task(self.config, m, self.folder) for m in self.chained])
+        self._do("qc", [stages.gather_task("qc", list(flagged), self.folder)], shown=False)
+        for name, sources in self.sources.items():
+            self.sources[name] = [source for source in sources if source != CHAIN or name in flagged]
+        self._go_on_with(name for name, sources in self.sources.items() if sources)
 
     def _column(self) -> None:
-        self._go_on_with(self._do("column", [stages.column_task(self.config, m, self.folder) for m in self.moorings]))
+        tasks = [stages.column_task(self.config, m, self.folder, self.sources[m.id]) for m in self.moorings]
+        reports = self._do("column", tasks)
+        self.months = {name: report["months"] for name, report in reports.items()}
+        self._go_on_with(reports)
 
     def _section(self) -> None:
         reports = self._do("section", [stages.section_task(self.config, self.moorings, self.folder)])
         self.latest = reports["array"]["latest"]
 
     def _report(self) -> None:
-        figures, page = stages.report_tasks(self.config, self.moorings, self.folder)
+        figures, page = stages.report_tasks(self.config, self.moorings, self.folder, self.chained)
         self._do("report", figures)
         self._do("report", page, shown=False)
 
@@ -273,11 +308,14 @@ def _account(config: Config, outcome: Outcome, started: datetime, checksums: Che
         "moorings": list(outcome.moorings),
         "problems": [vars(problem) for problem in outcome.problems],
         "latest": outcome.latest,
+        "months": outcome.months,
+        "series_notes": outcome.notes,
         "versions": stages.versions(),
-        "inputs": {
-            delivery.path.as_posix(): checksums.of(config.resolve(delivery.path))
-            for mooring in config.moorings
-            for delivery in mooring.deliveries
-        },
+        "inputs": {path.as_posix(): checksums.of(config.resolve(path)) for path in _inputs(config)},
         "configuration": config.model_dump(mode="json", exclude={"file"}),
     }
+
+
+def _inputs(config: Config) -> list[Path]:
+    delivered = [delivery.path for mooring in config.moorings for delivery in mooring.deliveries]
+    return [*delivered, *(listed.path for listed in config.series)]

@@ -14,8 +14,9 @@ from profiles.config import Config, Mooring
 from profiles.errors import DataError
 from profiles.pipeline.attributes import global_attributes
 from profiles.pipeline.listed import join_listed, read_listed
-from profiles.pipeline.paths import Folder
+from profiles.pipeline.paths import CHAIN, DAYS, MONTHS, Folder
 from profiles.pipeline.task import Report, Task
+from profiles.vocabulary import ColumnSource, MeanStatus
 
 #: Tables of the whole array, by the stage whose tasks write their parts.
 TABLES = {"ingest": ("deliveries", "quarantine"), "qc": ("data_return", "faults", "gaps")}
@@ -146,30 +147,99 @@ def flag(config: Config, mooring: Mooring, folder: Folder) -> Report:
 # Columns
 
 
-def column_task(config: Config, mooring: Mooring, folder: Folder) -> Task:
-    """A flagged chain to its columns and their daily and monthly means."""
+def column_task(config: Config, mooring: Mooring, folder: Folder, sources: Sequence[str]) -> Task:
+    """A flagged chain, or series from elsewhere, to columns and their daily and monthly means."""
     return Task(
         stage="column",
         name=mooring.id,
         work=reduce_to_columns,
-        arguments=(config, mooring, folder),
-        inputs=(folder.chain(mooring.id),),
-        outputs=(folder.columns(mooring.id), folder.means(mooring.id, "daily"), folder.means(mooring.id, "monthly")),
+        arguments=(config, mooring, folder, tuple(sources)),
+        inputs=tuple(
+            folder.chain(mooring.id) if source == CHAIN else folder.series(mooring.id, source) for source in sources
+        ),
+        outputs=(
+            *_column_files(mooring, folder, sources),
+            folder.means(mooring.id, "daily"),
+            folder.means(mooring.id, "monthly"),
+        ),
         settings={
+            "sources": list(sources),
+            "series": len(config.series),
             "column": config.column.model_dump(mode="json"),
             "means": config.section.means.model_dump(mode="json"),
             "array": config.array.model_dump(mode="json"),
-            "created": _created(config, [mooring]),
+            "created": _created(config, [mooring], sources),
         },
     )
 
 
-def reduce_to_columns(config: Config, mooring: Mooring, folder: Folder) -> Report:
-    """Read off the columns block by block, then average them."""
+def _column_files(mooring: Mooring, folder: Folder, sources: Sequence[str]) -> list[Path]:
+    """Return where the columns from each source go: those from the first have the mooring's name."""
+    return [folder.columns(mooring.id, source if place else "") for place, source in enumerate(sources)]
+
+
+def reduce_to_columns(config: Config, mooring: Mooring, folder: Folder, sources: Sequence[str]) -> Report:
+    """Read off the columns of a chain, take over those of series, and average them; the first source wins."""
+    from profiles.section import first_given, without_days
+
+    parts = []
+    for source, path in zip(sources, _column_files(mooring, folder, sources), strict=True):
+        reduce = _reduce_chain if source == CHAIN else _reduce_series
+        origin = ColumnSource.CHAIN if source == CHAIN else ColumnSource.SERIES
+        parts.append((origin, *reduce(config, mooring, folder, source, path)))
+    daily, monthly = parts[0][1:] if not config.series else first_given(parts)
+    daily = without_days(monthly) if daily is None else daily
+    for step, means in (("daily", daily), ("monthly", monthly)):
+        store.write_dataset(folder.means(mooring.id, step), means, {})
+    return {"months": _months_by_source(monthly)}
+
+
+def _months_by_source(monthly: xr.Dataset) -> dict[str, int]:
+    """Count the monthly means of the isotherm by where they come from."""
+    given = monthly["isotherm_mean_status"].values == int(MeanStatus.GIVEN)
+    if "column_source" not in monthly:
+        return {ColumnSource.CHAIN.name.lower(): int(given.sum())}
+    source = monthly["column_source"].values
+    return {kind.name.lower(): int((given & (source == kind)).sum()) for kind in ColumnSource if kind}
+
+
+def _reduce_series(
+    config: Config, mooring: Mooring, folder: Folder, source: str, path: Path
+) -> tuple[xr.Dataset | None, xr.Dataset]:
+    """Write the columns of a series; return their daily means, where it has days, and their monthly means."""
+    from profiles.column import columns_of_series
+    from profiles.section import daily_means, monthly_means, monthly_means_delivered, over_days
+
+    means = config.section.means
+    with store.open_dataset(folder.series(mooring.id, source)) as stored:
+        series = stored.load()
+    columns = columns_of_series(series, config.column)
+    attributes = global_attributes(
+        config,
+        columns,
+        name=f"columns-{path.stem}",
+        title=f"isotherm depth and mixed layer at {mooring.id}, computed elsewhere",
+        summary=f"Isotherm depth, mixed layer depth and mean temperature as somebody else computed them, of {source}.",
+        level="derived",
+        created=_created(config, [mooring], [source]),
+        settings={"column": config.column},
+        feature="timeSeries",
+    )
+    store.make_folder(path.parent)
+    store.write_dataset(path, columns, attributes)
+    if source == MONTHS:
+        return None, monthly_means_delivered(columns, means)
+    daily = daily_means(over_days(columns, series["mean_hours"].values), means)
+    return daily, monthly_means(daily, means)
+
+
+def _reduce_chain(
+    config: Config, mooring: Mooring, folder: Folder, source: str, path: Path
+) -> tuple[xr.Dataset, xr.Dataset]:
+    """Read off the columns block by block and write them; return their daily and monthly means."""
     from profiles.column import column_blocks
     from profiles.section import daily_means, monthly_means
 
-    path = folder.columns(mooring.id)
     with store.open_dataset(folder.chain(mooring.id)) as chain:
         attributes = global_attributes(
             config,
@@ -185,9 +255,7 @@ def reduce_to_columns(config: Config, mooring: Mooring, folder: Folder) -> Repor
         store.write_blocks(path, column_blocks(chain, config.column), attributes)
     with store.open_dataset(path) as columns:
         daily = daily_means(columns.load(), config.section.means)
-    for step, means in (("daily", daily), ("monthly", monthly_means(daily, config.section.means))):
-        store.write_dataset(folder.means(mooring.id, step), means, {})
-    return {}
+    return daily, monthly_means(daily, config.section.means)
 
 
 # --------------------------------------------------------------------------------------------------------------
@@ -208,7 +276,7 @@ def section_task(config: Config, moorings: Sequence[Mooring], folder: Folder) ->
             "section": config.section.model_dump(mode="json"),
             "column": config.column.model_dump(mode="json"),
             "array": config.array.model_dump(mode="json"),
-            "created": _created(config, moorings),
+            "created": _created(config, moorings, _ALL),
         },
     )
 
@@ -217,13 +285,15 @@ def build_array(config: Config, moorings: Sequence[Mooring], folder: Folder) -> 
     """Join the means, map them, read off tilt and volume."""
     from profiles.section import build_section, join_moorings
 
-    created = _created(config, moorings)
+    created = _created(config, moorings, _ALL)
     used = {"column": config.column, "section": config.section}
     means = {}
     for step, path in (("daily", folder.daily), ("monthly", folder.monthly)):
-        means[step] = join_moorings(
-            {mooring.id: store.open_dataset(folder.means(mooring.id, step)).load() for mooring in moorings}
-        )
+        parts = {mooring.id: store.open_dataset(folder.means(mooring.id, step)).load() for mooring in moorings}
+        means[step] = join_moorings(parts)
+        if not means[step].sizes["time"]:
+            path.unlink(missing_ok=True)  # series of months alone have no days
+            continue
         attributes = global_attributes(
             config,
             means[step],
@@ -284,8 +354,13 @@ def _latest(section: xr.Dataset, volume: xr.Dataset) -> dict[str, Any]:
 # Report
 
 
-def report_tasks(config: Config, moorings: Sequence[Mooring], folder: Folder) -> tuple[list[Task], list[Task]]:
-    """Return the figures, which do not need one another, and the page, which needs them all."""
+def report_tasks(
+    config: Config, moorings: Sequence[Mooring], folder: Folder, chained: Sequence[Mooring]
+) -> tuple[list[Task], list[Task]]:
+    """Return the figures, which do not need one another, and the page, which needs them all.
+
+    ``chained`` are the moorings with a chain; the others have columns alone.
+    """
     from profiles.report.captions import CAPTIONS
 
     array_figures = [folder.figure(name) for name in CAPTIONS]
@@ -306,8 +381,8 @@ def report_tasks(config: Config, moorings: Sequence[Mooring], folder: Folder) ->
                 stage="report",
                 name=mooring.id,
                 work=draw_mooring,
-                arguments=(config, mooring, folder),
-                inputs=(folder.chain(mooring.id), folder.columns(mooring.id)),
+                arguments=(config, mooring, folder, mooring in chained),
+                inputs=(*([folder.chain(mooring.id)] if mooring in chained else []), folder.columns(mooring.id)),
                 outputs=(figure,),
                 settings=shown,
             )
@@ -323,21 +398,26 @@ def report_tasks(config: Config, moorings: Sequence[Mooring], folder: Folder) ->
             arguments=(config, tuple(moorings), folder),
             inputs=(folder.section, folder.volume, *array_figures, *mooring_figures, *tables),
             outputs=(folder.page,),
-            settings=config.model_dump(mode="json", exclude={"file"}) | {"created": _created(config, moorings)},
+            settings=config.model_dump(mode="json", exclude={"file"}) | {"created": _created(config, moorings, _ALL)},
         )
     ]
     return figures, page
 
 
-def draw_mooring(config: Config, mooring: Mooring, folder: Folder) -> Report:
+def draw_mooring(config: Config, mooring: Mooring, folder: Folder, has_chain: bool) -> Report:
     """Draw one mooring's record."""
-    from profiles.report import write_mooring_figure
+    from profiles.report import write_column_figure, write_mooring_figure
 
+    figure = folder.figure(f"mooring_{mooring.id}")
+    if not has_chain:
+        with store.open_dataset(folder.columns(mooring.id)) as columns:
+            write_column_figure(figure, columns.load(), config.column)
+        return {}
     with (
         store.open_dataset(folder.chain(mooring.id)) as chain,
         store.open_dataset(folder.columns(mooring.id)) as columns,
     ):
-        write_mooring_figure(folder.figure(f"mooring_{mooring.id}"), chain.load(), columns.load(), config.column)
+        write_mooring_figure(figure, chain.load(), columns.load(), config.column)
     return {}
 
 
@@ -371,7 +451,7 @@ def write_report(config: Config, moorings: Sequence[Mooring], folder: Folder) ->
             folder.page,
             facts=Facts(
                 config=config,
-                date=_created(config, moorings),
+                date=_created(config, moorings, _ALL),
                 versions=versions(),
                 input_count=len(delivered_files(config)),
                 leave_one_out=float(section.attrs["leave_one_out"]),
@@ -389,9 +469,9 @@ def write_report(config: Config, moorings: Sequence[Mooring], folder: Folder) ->
 # Shared
 
 
-def gather_task(stage: str, moorings: Sequence[Mooring], folder: Folder) -> Task:
-    """The parts of a stage's tables to the tables of the array."""
-    parts = {table: [folder.part(table, mooring.id) for mooring in moorings] for table in TABLES[stage]}
+def gather_task(stage: str, names: Sequence[str], folder: Folder) -> Task:
+    """The parts of a stage's tables, by the names of their tasks, to the tables of the array."""
+    parts = {table: [folder.part(table, name) for name in names] for table in TABLES[stage]}
     return Task(
         stage=stage,
         name="tables",
@@ -403,22 +483,34 @@ def gather_task(stage: str, moorings: Sequence[Mooring], folder: Folder) -> Task
 
 
 def gather(parts: Mapping[str, Sequence[Path]], tables: Mapping[str, Path]) -> Report:
-    """Put the parts of tables below one another."""
+    """Put the parts of tables below one another; without a part there is a head alone."""
+    from profiles.qc import SUMMARY_COLUMNS
+
     for name, paths in parts.items():
-        read = [store.read_table(path) for path in paths]
+        read = [store.read_table(path) for path in paths] or [pd.DataFrame(columns=SUMMARY_COLUMNS[name])]
         filled = [part for part in read if len(part)] or read[:1]
         store.write_table(tables[name], pd.concat(filled, ignore_index=True))
     return {}
 
 
-def delivered_files(config: Config, moorings: Sequence[Mooring] | None = None) -> list[Path]:
-    """Return the delivery files that exist."""
-    listed = [delivery for mooring in moorings or config.moorings for delivery in mooring.deliveries]
+def delivered_files(
+    config: Config, moorings: Sequence[Mooring] | None = None, sources: Sequence[str] | None = None
+) -> list[Path]:
+    """Return the delivery files that exist, of some moorings and some sources, or of all."""
+    sources = _ALL if sources is None else sources
+    listed: list[Any] = []
+    if CHAIN in sources:
+        listed += [delivery for mooring in moorings or config.moorings for delivery in mooring.deliveries]
+    if {DAYS, MONTHS} & {*sources}:
+        listed += config.series
     return [path for path in (config.resolve(delivery.path) for delivery in listed) if path.is_file()]
 
 
-def _created(config: Config, moorings: Sequence[Mooring]) -> str:
-    return store.date_of(delivered_files(config, moorings))
+_ALL = (CHAIN, DAYS, MONTHS)
+
+
+def _created(config: Config, moorings: Sequence[Mooring], sources: Sequence[str] = (CHAIN,)) -> str:
+    return store.date_of(delivered_files(config, moorings, sources))
 
 
 def versions() -> dict[str, str]:
@@ -430,7 +522,7 @@ def versions() -> dict[str, str]:
 
 
 def check_usable(reports: Mapping[str, Report], problems: Sequence[str]) -> None:
-    """Raise DataError where no mooring is left to go on with."""
+    """Raise DataError where nothing is left to go on with."""
     if any(report["usable"] for report in reports.values()):
         return
     raise DataError(

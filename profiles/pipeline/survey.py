@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any, Literal
 
 from profiles.config import Config, Delivery, Mooring
 from profiles.pipeline.listed import join_listed, read_listed, read_log
+from profiles.pipeline.paths import SERIES
+from profiles.pipeline.series import NOTHING, read_listed_series
 from profiles.vocabulary import Water
 
 SHOWN = 3  # rows that a finding quotes
@@ -41,7 +43,35 @@ def survey(config: Config, progress: Callable[[Finding], None] | None = None) ->
             findings.append(finding)
             if progress is not None:
                 progress(finding)
+    for finding in _of_series(config):
+        findings.append(finding)
+        if progress is not None:
+            progress(finding)
     return findings
+
+
+def _of_series(config: Config) -> Iterator[Finding]:
+    """Read the series and put them together; say also which moorings have nothing at all."""
+    from profiles.ingest import join_series
+
+    read = {listed: read_listed_series(config, listed) for listed in config.series}
+    usable = {listed: found for listed, found in read.items() if not isinstance(found, str)}
+    kept = dict(zip(usable, join_series(list(usable.values()))[1], strict=True)) if usable else {}
+    for listed, found in read.items():
+        name = listed.mooring or SERIES
+        if isinstance(found, str):
+            yield Finding(name, listed.path, "not usable", 0, 0, found)
+            continue
+        series = kept[listed]
+        notes = [*_notes(series), *series.notes]
+        outcome: Any = (
+            "rows quarantined" if series.rows_quarantined else "rows sorted" if series.rows_reordered else "clean"
+        )
+        yield Finding(name, listed.path, outcome, series.rows_read, series.rows_kept, "; ".join(notes))
+    served = {name for series in kept.values() for name in series.moorings}
+    for mooring in config.moorings:
+        if not mooring.deliveries and mooring.id not in served:
+            yield Finding(mooring.id, config.file, "not usable", 0, 0, NOTHING)
 
 
 def _of_mooring(config: Config, mooring: Mooring, is_logged: bool) -> list[Finding]:

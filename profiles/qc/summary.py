@@ -31,8 +31,12 @@ KINDS = {
 }
 NO_TEST = "flagged otherwise"  # a flag that no test gave, such as a person's
 
+RETURN_COLUMNS = ["mooring", "depth", "samples", "expected", *(flag.name.lower() for flag in Flag), "return_share"]
 FAULT_COLUMNS = ["mooring", "depth", "kind", "flag", "tests", "start", "end", "count"]
 GAP_COLUMNS = ["mooring", "depths", "sensors", "start", "end", "duration"]
+
+#: Columns of each table, for arrays that have no chain.
+SUMMARY_COLUMNS = {"data_return": RETURN_COLUMNS, "faults": FAULT_COLUMNS, "gaps": GAP_COLUMNS}
 
 
 def data_return(chain: xr.Dataset) -> pd.DataFrame:

@@ -54,14 +54,19 @@ def site_map(monthly: xr.Dataset, data_return: pd.DataFrame, window: tuple[float
     axis = figure.add_axes((0.06, 0.17, 0.86, 0.71))
     _draw_land(axis)
     _draw_box(axis, window)
-    share = mooring_return(data_return).reindex(monthly["mooring"].values.astype(str)).fillna(0.0)
+    share = mooring_return(data_return).reindex(monthly["mooring"].values.astype(str)).to_numpy(dtype=np.float64)
     latitude, longitude = monthly["latitude"].values, monthly["longitude"].values
-    norm = Normalize(0.0, 1.0)
-    axis.scatter(longitude, latitude, c=share, norm=norm, cmap=style.RETURN, s=62, edgecolors=style.INK, zorder=4)
-    for place in zip(longitude, latitude, share, strict=True):
+    norm, known = Normalize(0.0, 1.0), np.isfinite(share)
+    look: dict[str, Any] = {"s": 62, "edgecolors": style.INK, "zorder": 4}
+    axis.scatter(longitude[known], latitude[known], c=share[known], norm=norm, cmap=style.RETURN, **look)
+    for place in zip(longitude[known], latitude[known], share[known], strict=True):
         axis.annotate(
             f"{100 * place[2]:.0f}", place[:2], (0, 7), textcoords="offset points", ha="center", fontsize=8, zorder=5
         )
+    if not known.all():
+        label = "series from elsewhere, no data return known"
+        axis.scatter(longitude[~known], latitude[~known], color="white", marker="s", label=label, **look)
+        axis.legend(loc="upper right")
     bar = figure.colorbar(ScalarMappable(norm, style.RETURN), cax=figure.add_axes((0.94, 0.17, 0.012, 0.71)))
     bar.set_label("data return (share)")
     axis.set_title("Where the array is, and the share of its values that could be used (numbers: %)")
@@ -268,6 +273,10 @@ def return_by_depth(data_return: pd.DataFrame) -> Figure:
     axis = figure.add_axes((0.07, 0.15, 0.84, 0.76))
     norm = Normalize(0.0, 1.0)
     moorings = data_return["mooring"].drop_duplicates().tolist()
+    if not moorings:
+        axis.text(0.5, 0.5, "no mooring has a chain", transform=axis.transAxes, ha="center", fontsize=14)
+        axis.set_axis_off()
+        return figure
     for place, mooring in enumerate(moorings):
         sensors = data_return[data_return["mooring"] == mooring].sort_values("depth")
         edges = _sensor_edges(sensors["depth"].to_numpy(dtype=np.float64))

@@ -159,6 +159,43 @@ def mooring_figure(chain: xr.Dataset, columns: xr.Dataset, settings: ColumnSetti
     return figure
 
 
+@style.styled
+def column_figure(columns: xr.Dataset, settings: ColumnSettings | None = None) -> Figure:
+    """Draw the columns of a mooring that has no chain, as somebody else computed them.
+
+    Parameters
+    ----------
+    columns : xarray.Dataset
+        As :func:`profiles.column.columns_of_series` returns them.
+    settings : ColumnSettings, optional
+        Which isotherm they are of. Default: the defaults.
+    """
+    settings = settings or ColumnSettings()
+    bins = time_bins(columns["time"].values, MOST_COLUMNS)
+    figure = Figure(figsize=(style.WIDTH, 5.4))
+    panel, strip, scale = _axes(figure)
+    scale.remove()
+    panel.set_facecolor(style.MISSING)
+    handles = _draw_columns(panel, columns, bins, settings)
+    depths = [columns[name].values for name in ("isotherm_depth", "mixed_layer_depth")]
+    finite = np.concatenate([depth[np.isfinite(depth)] for depth in depths])
+    style.chain_depth_axis(panel, 1.3 * float(finite.max(initial=_SHALLOWEST_AXIS)))
+    panel.tick_params(labelbottom=False)
+    panel.set_title(f"{_title(columns)}: series from elsewhere")
+    statuses = _draw_status(strip, columns, bins)
+    figure.legend(handles=handles, loc="upper right", bbox_to_anchor=(0.995, 0.93), labelspacing=0.9)
+    figure.legend(handles=statuses, loc="lower right", bbox_to_anchor=(0.995, 0.06), title="isotherm", alignment="left")
+    return figure
+
+
+_SHALLOWEST_AXIS = 100.0  # m; the depth axis reaches at least this far
+
+
+def write_column_figure(path: Path, columns: xr.Dataset, settings: ColumnSettings | None = None) -> Path:
+    """Draw the columns of a mooring without a chain (see :func:`column_figure`) into a PNG file."""
+    return style.save(column_figure(columns, settings), path, palette=True)
+
+
 def write_mooring_figure(
     path: Path, chain: xr.Dataset, columns: xr.Dataset, settings: ColumnSettings | None = None
 ) -> Path:

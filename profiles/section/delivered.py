@@ -53,9 +53,9 @@ def monthly_means_delivered(columns: xr.Dataset, settings: MeansSettings | None 
 def over_days(columns: xr.Dataset, mean_hours: np.ndarray) -> xr.Dataset:
     """Return columns with values that are means of several days at each of these days, so that days can be counted.
 
-    Where means overlap, as running means do, a day takes the nearest. The days of one mean are no independent values: the
-    independent part of their errors grows with the square root of their number, so that the error of their average is
-    again that of the mean.
+    Where means overlap, as running means do, a day takes the nearest. The days of one mean are no independent values:
+    the independent part of their errors grows with the square root of their number, so that the error of their average
+    is again that of the mean.
 
     Parameters
     ----------

@@ -53,10 +53,19 @@ def test_the_map_gives_the_share_of_each_mooring(small_array):
     assert axis.get_xlabel() == "longitude"
 
 
-def test_a_mooring_unknown_to_the_data_return_counts_as_none(small_array):
+def test_a_mooring_without_a_chain_gets_a_mark_of_its_own_and_no_share(small_array):
     table = small_array.tables["data_return"].query("mooring != 'TB-01'")
-    numbers = [text.get_text() for text in site_map(small_array.monthly, table).axes[0].texts]
-    assert numbers.count("0") == 2
+    axis = site_map(small_array.monthly, table).axes[0]
+    # TB-03 never gave a value; TB-01 stands for one that only a series has
+    assert [text.get_text() for text in axis.texts].count("0") == 1
+    (legend,) = axis.get_legend().get_texts()
+    assert legend.get_text() == "series from elsewhere, no data return known"
+    assert site_map(small_array.monthly, small_array.tables["data_return"]).axes[0].get_legend() is None
+
+
+def test_an_array_without_a_chain_has_no_return_to_draw(small_array):
+    empty = small_array.tables["data_return"].iloc[:0]
+    assert [text.get_text() for text in return_by_depth(empty).axes[0].texts] == ["no mooring has a chain"]
 
 
 def test_the_section_is_drawn_downward_with_the_window_of_the_tilt(small_array):
