@@ -5,7 +5,9 @@ from __future__ import annotations
 import codecs
 import fnmatch
 import gzip
+import lzma
 import re
+import struct
 import zipfile
 import zlib
 from collections.abc import Iterator
@@ -23,6 +25,7 @@ ZIP_MAGIC = b"PK\x03\x04"
 _SAMPLE = 4096  # bytes looked at to tell text from other files
 _BINARY_SHARE = 0.1  # of control characters in a sample; text has next to none (ours)
 _CONTROL = re.compile(rb"[\x00-\x08\x0e-\x1f]")
+_DAMAGE = (EOFError, zlib.error, lzma.LZMAError, struct.error, zipfile.BadZipFile, NotImplementedError)
 _BYTE_ORDER_MARK = codecs.BOM_UTF8
 # Families of codecs with one byte a character, of which the first 128 are ASCII; utf-8 is as good.
 _KEEPS_ASCII = re.compile(r"utf-8(-sig)?|ascii|iso8859-\d+|cp(125\d|437|7\d\d|8[0-7]\d)|koi8\S*|mac-(roman|latin2)")
@@ -88,7 +91,7 @@ def line_blocks(path: Path, encoding: str, member: str = "*") -> Iterator[bytes]
     """
     with opened(path, member) as raw:
         text = _transcoded(raw, path, encoding)
-        first = next(text, b"")
+        first = next((chunk for chunk in text if chunk), b"")
         _check_text(first, path)
         yield from _whole_lines(first.removeprefix(_BYTE_ORDER_MARK), text, path)
 
@@ -108,12 +111,24 @@ def opened(path: Path, member: str = "*") -> Iterator[IO[bytes]]:
         else:
             with open_binary(path, head) as raw:
                 yield raw
-    except (EOFError, gzip.BadGzipFile, zlib.error, zipfile.BadZipFile, NotImplementedError, RuntimeError) as error:
-        if isinstance(error, RuntimeError) and "password" not in str(error) and "encrypt" not in str(error):
+    except _DAMAGE as error:
+        raise _damaged(path, error) from error
+    except OSError as error:
+        if error.errno is None or head.startswith(
+            ZIP_MAGIC
+        ):  # gzip and bzip2 say so of data, zip of wrong places in it
+            raise _damaged(path, error) from error
+        raise MachineError("cannot be read", where=str(path), found=error.strerror) from error
+    except RuntimeError as error:
+        if "password" not in str(error) and "encrypt" not in str(error):
             raise
-        raise DataError(
-            "the compressed file is damaged or locked", where=str(path), found=str(error), advice="fetch it again"
-        ) from error
+        raise _damaged(path, error) from error
+
+
+def _damaged(path: Path, error: Exception) -> DataError:
+    return DataError(
+        "the compressed file is damaged or locked", where=str(path), found=str(error), advice="fetch it again"
+    )
 
 
 def open_binary(path: Path, head: bytes) -> IO[bytes]:

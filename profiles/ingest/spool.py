@@ -83,8 +83,9 @@ class Spool:
         held = self._file.read(max(min(stop, self.count) - start, 0) * self.row_type.itemsize)
         return np.frombuffer(held, self.row_type)
 
-    def chunks(self, length: int = CHUNK_ROWS) -> Iterator[Table]:
-        """Yield all rows in pieces."""
+    def chunks(self, length: int = 0) -> Iterator[Table]:
+        """Yield all rows in pieces, of :data:`CHUNK_ROWS` where no length is given."""
+        length = length or CHUNK_ROWS
         for start in range(0, self.count, length):
             yield self.rows(start, start + length)
 
