@@ -73,6 +73,7 @@ def monthly_means(daily: xr.Dataset, settings: MeansSettings | None = None) -> x
     """
     settings = settings or MeansSettings()
     table = time_table(daily)
+    table["deployment"] = table["deployment"].where(table["deployment"] > 0)  # a day without a sample has none
     months = pd.DatetimeIndex(table.index).to_period("M")
     index = pd.period_range(months[0], months[-1], freq="M")
     grouped = table.groupby(months)

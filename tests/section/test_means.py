@@ -198,6 +198,13 @@ def test_the_deployment_of_a_month_is_its_last():
 # The array
 
 
+def test_a_month_that_ends_without_a_sample_keeps_its_deployment():
+    # 20 days of January, then nothing until February: the empty days in between are of no deployment
+    time = daily(20).append(daily(1, "2031-02-05T12"))
+    found = monthly_means(daily_means(columns(time, np.full(21, 100.0), deployment=3)))
+    assert found["deployment"].values.tolist() == [3, 3]
+
+
 def test_moorings_are_joined_on_all_their_times():
     early = monthly_means(daily_means(columns(daily(59), np.full(59, 100.0))))
     late = monthly_means(daily_means(columns(daily(59, "2031-02-01T12"), np.full(59, 120.0))))
