@@ -19,7 +19,7 @@ from profiles.ingest.source import internal_encoding
 from profiles.ingest.spool import Spool, wide_type
 from profiles.ingest.table import cell_methods, split_line
 from profiles.ingest.units import is_pressure
-from profiles.ingest.wide import depths_of_cells, packed
+from profiles.ingest.wide import depths_of_cells, is_depth, packed
 
 Depths = NDArray[np.float64]
 
@@ -69,7 +69,7 @@ def read_blocked(path: Path, layout: BlockedLayout) -> Record:
         table=table,
         depth=depth,
         scale=layout.temperature.scale,
-        rejected=tally.settle(str(path)),
+        rejected=tally.settle(str(path), table.count),
         rows_read=tally.rows_read,
         depth_is_pressure=is_pressure(layout.depth.units),
         cell_methods=cell_methods(layout.time),
@@ -121,7 +121,7 @@ def _headed(lines: Lines, where: str, layout: BlockedLayout) -> Iterator[Header 
     if len(head) < length:
         yield Header(head, None, f"the header of a block has {length} lines; these are {len(head)}")
         return
-    cells = split_line(head.texts()[layout.depth.row - 1], layout)[layout.depth.skip :]
+    cells = _depth_cells(split_line(head.texts()[layout.depth.row - 1], layout), layout)
     try:
         depth = depths_of_cells(cells, layout.depth.pattern or "{depth}", layout.depth, where)
     except DataError as error:
@@ -129,6 +129,13 @@ def _headed(lines: Lines, where: str, layout: BlockedLayout) -> Iterator[Header 
     else:
         yield Header(head, depth)
     yield rows
+
+
+def _depth_cells(cells: list[str], layout: BlockedLayout) -> list[str]:
+    """Return the cells of a header line that are depths; behind them it may name the cells behind the readings."""
+    cells, most = cells[layout.depth.skip :], len(layout.block.after)
+    named = most < len(cells) and not any(is_depth(cell, layout.depth.pattern) for cell in cells[len(cells) - most :])
+    return cells[: len(cells) - most] if named else cells
 
 
 def _depth_sets(path: Path, layout: BlockedLayout) -> dict[tuple[float, ...], int]:

@@ -135,6 +135,11 @@ def _depth_in(text: str, pattern: str) -> float | None:
     return float(match.group(1).replace(",", ".")) if match is not None else None
 
 
+def is_depth(cell: str, pattern: str | None) -> bool:
+    """Tell whether a cell of a header is a depth."""
+    return _depth_in(cell, pattern or DEPTH_MARK) is not None
+
+
 def _matched(table: Columns, pattern: str) -> dict[int, float]:
     found = {name: depth for name in table.names if (depth := _depth_in(name, pattern)) is not None}
     if not found:

@@ -1,0 +1,253 @@
+"""Layouts of files in blocks: a header with depths, rows under it, then another header with other depths."""
+
+from __future__ import annotations
+
+import re
+from collections import Counter
+from collections.abc import Sequence
+from dataclasses import dataclass
+from itertools import pairwise
+from typing import Any
+
+from profiles.ingest.drafting.content import Column, share_of
+from profiles.ingest.drafting.counts import cell_names, common_beginning
+from profiles.ingest.drafting.cutting import Cutting
+from profiles.ingest.drafting.depth_names import plausible
+from profiles.ingest.drafting.doubts import Doubt
+from profiles.ingest.drafting.meaning import depth_units_in
+from profiles.ingest.drafting.proposal import Proposal, Use, meaning, text_keys
+from profiles.ingest.drafting.readings import flags_of, missing_tokens, units_of
+from profiles.ingest.drafting.sample import Line, Sample
+from profiles.ingest.drafting.table import comment_mark
+from profiles.ingest.drafting.time_columns import time_guesses
+from profiles.ingest.drafting.words import depth_units, roles_of
+from profiles.ingest.layout.parts import DEPTH_MARK
+
+Row = list[str]
+
+_LEADING = re.compile(r"\s*([^\d+\-.\s]*)")
+_DEPTH_CELL = re.compile(r"([^\d+\-]*?)([+-]?[0-9]+(?:[.,][0-9]+)?)([^\d]*)")
+_MOST_BEHIND = 3  # cells of the line of depths behind the last of them
+
+
+@dataclass(frozen=True)
+class Block:
+    """The header of a block and the rows under it."""
+
+    header: tuple[Line, ...]
+    rows: tuple[Row, ...]
+
+
+@dataclass(frozen=True)
+class Depths:
+    """Where the depths stand in the headers: the line, cells before them, pattern; how many; other cells of a row."""
+
+    row: int
+    skip: int
+    pattern: str
+    counts: tuple[int, ...]
+    beside: int
+
+
+def blocked_proposals(sample: Sample, cutting: Cutting) -> list[Proposal]:
+    """Return layouts in blocks, if headers with depths come again."""
+    if cutting.fixed:
+        return []
+    mark = comment_mark(sample.head, cutting)
+    for comment in dict.fromkeys(("", mark)):
+        lines = [line for line in sample.head if not (comment and line.text.lstrip().startswith(comment))]
+        blocks, before = find_blocks(lines, cutting)
+        if len(blocks) > 1:
+            proposal = _proposal(sample, cutting, comment, blocks, before)
+            if proposal is not None:
+                return [proposal]
+    return []
+
+
+# --------------------------------------------------------------------------------------------------------------
+# Blocks
+
+
+def find_blocks(lines: Sequence[Line], cutting: Cutting) -> tuple[list[Block], list[Line]]:
+    """Return the blocks of some lines, and the lines before the first; fewer than two where there are none."""
+    words = [_leading(line.text) for line in lines]
+    if not words:
+        return [], []
+    data_word = Counter(words).most_common(1)[0][0]
+    runs: list[tuple[int, int]] = []
+    for place, word in enumerate(words):
+        if word != data_word:
+            if runs and runs[-1][1] == place:
+                runs[-1] = (runs[-1][0], place + 1)
+            else:
+                runs.append((place, place + 1))
+    if len(runs) < 2:
+        return [], []
+    length = Counter(stop - start for start, stop in runs[1:]).most_common(1)[0][0]
+    heads = [(stop - length, stop) for start, stop in runs if stop - start >= length]
+    regular = sum(stop - start == length for start, stop in runs[1:])
+    if len(heads) < 2 or regular < 0.8 * len(runs[1:]):
+        return [], []
+    rows = cutting.cut([line.text for line in lines])
+    ends = [*(start for start, _ in heads[1:]), len(lines)]
+    blocks = [
+        Block(tuple(lines[start:stop]), tuple(rows[stop:end])) for (start, stop), end in zip(heads, ends, strict=True)
+    ]
+    return [block for block in blocks if block.rows], list(lines[: heads[0][0]])
+
+
+def _leading(text: str) -> str:
+    match = _LEADING.match(text)
+    return match[1] if match is not None else ""
+
+
+def find_depths(blocks: Sequence[Block], cutting: Cutting) -> Depths | None:
+    """Return where the depths stand: the line whose numbers grow and shrink with the rows."""
+    for row in range(len(blocks[0].header)):
+        found = [_depth_cells(cutting.cut([block.header[row].text])[0]) for block in blocks]
+        known = [each for each in found if each is not None]
+        if len(known) < len(found) or len({(skip, pattern) for skip, pattern, _ in known}) != 1:
+            continue
+        counts = [count for _, _, count in known]
+        beside = [_width(block) - count for block, count in zip(blocks, counts, strict=True)]
+        usual, agreeing = Counter(beside).most_common(1)[0]
+        if usual >= 1 and agreeing >= 0.8 * len(beside):
+            return Depths(row + 1, known[0][0], known[0][1], tuple(counts), usual)
+    return None
+
+
+def _width(block: Block) -> int:
+    return Counter(len(row) for row in block.rows).most_common(1)[0][0]
+
+
+def _depth_cells(cells: Row) -> tuple[int, str, int] | None:
+    """Return how many cells stand before the depths of a line, their pattern, and how many there are."""
+    for behind in range(min(_MOST_BEHIND, len(cells) - 1) + 1):
+        inside = cells[: len(cells) - behind]
+        match = _DEPTH_CELL.fullmatch(inside[-1]) if inside else None
+        if match is None:
+            continue
+        before, after = match[1], match[3]
+        numbers: list[float] = []
+        for cell in reversed(inside):
+            each = _DEPTH_CELL.fullmatch(cell)
+            if each is None or (each[1], each[3]) != (before, after):
+                break
+            numbers.append(float(each[2].replace(",", ".")))
+        steps = [one - two for one, two in pairwise(numbers)]
+        if steps and not (all(step > 0 for step in steps) or all(step < 0 for step in steps)):
+            # A count may stand before the depths; what breaks the order is none of them.
+            kept = next(place for place, step in enumerate(steps, 1) if step * steps[0] <= 0)
+            numbers = numbers[:kept]
+        return len(inside) - len(numbers), f"{before}{DEPTH_MARK}{after}", len(numbers)
+    return None
+
+
+# --------------------------------------------------------------------------------------------------------------
+# The layout
+
+
+def _proposal(
+    sample: Sample, cutting: Cutting, comment: str, blocks: Sequence[Block], before: Sequence[Line]
+) -> Proposal | None:
+    depths = find_depths(blocks, cutting)
+    begins = _begins(blocks)
+    if depths is None or not begins:
+        return None
+    marks = _glued_marks(blocks, depths)
+    leading = depths.beside - (marks is not None)
+    rows = [
+        (row, count)
+        for block, count in zip(blocks, depths.counts, strict=True)
+        for row in block.rows
+        if len(row) == count + depths.beside
+    ]
+    hints = "\n".join([*(line.text for line in (*before, *blocks[0].header)), sample.path.name])
+    columns = [Column(place, "", (), tuple(row[place] for row, _ in rows), cutting.decimal) for place in range(leading)]
+    guesses = time_guesses(columns, hints) if columns else []
+    cells = Column(
+        0, "", (), tuple(cell for row, count in rows for cell in row[leading : leading + count]), cutting.decimal
+    )
+    if (
+        not guesses
+        or share_of(cells.texts[:2000], cutting.decimal, ("number", "missing")) < 0.9
+        or plausible([cells]) < 0
+    ):
+        return None
+    time = guesses[0]
+    time_keys, scale, doubts = meaning(time, "", hints, None)
+    units, unit_doubt = units_of([cells], hints)
+    missing, missing_doubts = missing_tokens([cells], units)
+    doubts += [*([unit_doubt] if unit_doubt else []), *missing_doubts]
+    names = cell_names(leading, time, {})
+    block: dict[str, Any] = {"begins": begins, "header_rows": len(blocks[0].header), "before": names}
+    content = text_keys(sample, cutting) | ({"comment": comment} if comment else {})
+    content |= {"kind": "blocked", "header_rows": len(before), "missing": missing, "block": block}
+    content |= {"time": time.named(names) | time_keys}
+    content["depth"], depth_doubts = _depth_keys(depths, blocks, hints)
+    content["temperature"] = {"units": units} | scale
+    doubts += depth_doubts
+    if marks is not None:
+        flags, doubt = flags_of(marks)
+        block["after"] = ["marks"]
+        content["quality"] = {"column": "marks", "flags": flags}
+        doubts.append(doubt)
+    if leading > len(time.places):
+        doubts.append(
+            Doubt(
+                "cells that are not used",
+                ", ".join(name for name in names if name.startswith("cell_")),
+                "they stand before the readings and are no part of the stamp",
+            )
+        )
+    uses = (
+        Use(f"line {depths.row} of each block's header, from cell {depths.skip + 1} on", "depths"),
+        *(Use(f"rows, cell {place + 1}", f"time ({names[place]})") for place in time.places),
+        Use(f"rows, from cell {leading + 1} on", "temperature at the depths of the block"),
+    )
+    header = [(line, "header") for line in before] + [(line, "header of the first block") for line in blocks[0].header]
+    return Proposal(
+        content, (*sample.doubts, *doubts), uses, tuple(header), cutting.in_words, time.named_rival(names, time_keys)
+    )
+
+
+def _begins(blocks: Sequence[Block]) -> str:
+    """Return what the first line of each header begins with, and no other line."""
+    prefix = common_beginning([block.header[0].text.lstrip() for block in blocks])
+    match = re.match(r"[^\d]*", prefix)
+    begins = (match.group() if match is not None else "").rstrip(" \t+-.,;\"'") or prefix.strip()
+    others = [line.text.lstrip() for block in blocks for line in block.header[1:]]
+    others += [row[0] for block in blocks for row in block.rows if row]
+    return "" if not begins or any(text.startswith(begins) for text in others) else begins
+
+
+def _glued_marks(blocks: Sequence[Block], depths: Depths) -> set[str] | None:
+    """Return the characters of a last cell that has one for each reading; None where there is no such cell."""
+    if depths.beside < 2:
+        return None
+    fitting, total, marks = 0, 0, set[str]()
+    for block, count in zip(blocks, depths.counts, strict=True):
+        for row in block.rows:
+            if len(row) == count + depths.beside:
+                total += 1
+                if len(row[-1]) == count and re.fullmatch(r"[0-9A-Za-z?]+", row[-1]):
+                    fitting += 1
+                    marks |= set(row[-1])
+    several = len(set(depths.counts)) > 1 or min(depths.counts) > 1
+    return marks if total and several and fitting >= 0.9 * total else None
+
+
+def _depth_keys(depths: Depths, blocks: Sequence[Block], hints: str) -> tuple[dict[str, Any], list[Doubt]]:
+    line = blocks[0].header[depths.row - 1].text
+    after = depths.pattern.split(DEPTH_MARK)[1]
+    stated = depth_units(after) or depth_units(line) or ("dbar" if "pressure" in roles_of(line) else None)
+    units = stated or depth_units_in(hints) or "m"
+    keys: dict[str, Any] = {"row": depths.row, "skip": depths.skip}
+    if depths.pattern != DEPTH_MARK:
+        keys["pattern"] = depths.pattern
+    keys |= {"units": units, "positive": "down"}
+    doubts = [] if stated else [Doubt("units of depth", units, "the header of the blocks does not state them")]
+    if re.search(r"(?<![\w.])-[0-9]", line):
+        keys["positive"] = "up"
+        doubts.append(Doubt("sign of depth", "negative is below the surface", "the depths are written with a minus"))
+    return keys, doubts
