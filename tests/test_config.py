@@ -318,3 +318,21 @@ def test_every_setting_with_a_unit_or_a_choice_says_whose_it_is() -> None:
         if isinstance(info.default, float | tuple) and not any(source in (info.description or "") for source in sources)
     ]
     assert silent == []
+
+
+# --------------------------------------------------------------------------------------------------------------
+# Series from elsewhere
+
+SERIES = '[[series]]\npath = "z20.csv"\nlayout = "z20.toml"\n'
+
+
+def test_a_mooring_may_have_a_series_in_place_of_deliveries(load: Any) -> None:
+    config = load(ARRAY + mooring(deliveries="") + SERIES)
+    assert config.moorings[0].deliveries == ()
+    assert config.series[0].layout == Path("z20.toml")
+
+
+def test_a_series_of_one_mooring_names_one_that_there_is(load: Any) -> None:
+    assert load(ARRAY + mooring() + SERIES + 'mooring = "B-1"\n').series[0].mooring == "B-1"
+    found = problems(load, ARRAY + mooring() + SERIES + 'mooring = "B-11"\n')
+    assert [line for line in found if "series #1.mooring: no such mooring" in line and "did you mean 'B-1'?" in line]

@@ -86,5 +86,6 @@ MOORING_TEXT = (
     "Colour: temperature that was used, linear between neighbouring sensors; grey: none. Triangles: questionable "
     "values; crosses: bad values, at their sensor. Black: depth of the {isotherm} °C isotherm in its 95 % interval "
     "(white); it breaks off where none can be given, and the strip below says why. Blue: mixed layer depth. "
-    "Long records are averaged in time to fit the width. Below 300 m the depth axis is closer."
+    "Long records are averaged in time to fit the width. Below 300 m the depth axis is closer. A mooring without a "
+    "chain shows its columns alone, as somebody else computed them."
 )
