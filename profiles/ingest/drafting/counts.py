@@ -108,8 +108,9 @@ def _is_sound(rows: Sequence[Row], walk: Walk, decimal: str, is_whole: bool) -> 
     width, agreeing = Counter(map(len, readings)).most_common(1)[0]
     if width < 2 or agreeing < 0.9 * len(readings):
         return False
-    if _usual_form([rows[head] for head in walk.heads], decimal) == _usual_form(readings, decimal):
-        return False
+    form = _usual_form(readings, decimal)
+    if form == _usual_form([rows[head] for head in walk.heads], decimal) or "stamp" in form:
+        return False  # the rows of a table, one of whose whole numbers happens to count
     numeric = share_of([cell for row in readings[:300] for cell in row], decimal, ("number", "missing"))
     return numeric > 0.8 and _depth_cell(rows, profiles, width, decimal) is not None
 
