@@ -108,7 +108,7 @@ def _delimited(
     for line in range(lines):
         place, end, column = starts[line], ends[line], 0
         damage[line], is_ascii[line] = _look_over(buffer, place, end)
-        while True:
+        while not damage[line]:
             while place < end and _is_blank(buffer[place], delimiter):
                 place += 1
             if delimiter == 0 and place == end:
@@ -120,7 +120,7 @@ def _delimited(
                     stop += 1
                 at_edge = stop == end or buffer[stop] == delimiter or (delimiter == 0 and stop > closing + 1)
                 if closing < 0 or not at_edge:
-                    damage[line] = damage[line] if damage[line] else 2
+                    damage[line] = 2
                     break
             else:
                 inside = place

@@ -116,7 +116,7 @@ class Readings:
             table=table,
             depth=depth.astype(np.float64),
             scale=layout.temperature.scale,
-            rejected=self.tally.settle(self.where),
+            rejected=self.tally.settle(self.where, table.count),
             rows_read=self.tally.rows_read,
             depth_is_pressure=is_pressure(layout.depth.units),
             cell_methods=cell_methods(layout.time),

@@ -86,8 +86,15 @@ class Tally:
         self.rows_kept -= len(lines)
         self.reject(lines, reasons)
 
-    def settle(self, where: str) -> tuple[Rejected, ...]:
+    def settle(self, where: str, times: int | None = None) -> tuple[Rejected, ...]:
         """Return the rejected rows in file order, once the count is right and something was kept.
+
+        Parameters
+        ----------
+        where : str
+            The file.
+        times : int, optional
+            Of the table that was made, where rows are also kept that have no reading, such as headers of blocks.
 
         Raises
         ------
@@ -100,11 +107,11 @@ class Tally:
         ordered = tuple(sorted(self.rejected, key=lambda row: row.line))
         if self.rows_read == 0:
             raise DataError("there are no data rows", where=where, expected="at least one", found="only a header")
-        if self.rows_kept == 0:
+        if self.rows_kept == 0 or times == 0:
             raise DataError(
                 "no row could be understood",
                 where=where,
-                found="; ".join(f"line {row.line}: {row.reason}" for row in ordered[:FIRST_REASONS]),
+                found="; ".join(f"line {row.line}: {row.reason}" for row in ordered[:FIRST_REASONS]) or "no reading",
                 advice="check that the layout is the right one for this file",
             )
         return ordered

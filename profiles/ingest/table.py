@@ -6,28 +6,51 @@ from collections.abc import Sequence
 
 import numpy as np
 
+from profiles.errors import DataError
+from profiles.ingest.cells import Cells, Damage
 from profiles.ingest.layout import TextLayout
 from profiles.ingest.layout.time import Meaning
 from profiles.ingest.lines import Lines, as_bytes
+from profiles.ingest.wording import printable
 
 _MOST_CELLS = 4096  # of one line; more columns than a delivery has (ours)
 
 
 def split_line(text: str, layout: TextLayout) -> list[str]:
-    """Return the cells of one line of text."""
-    buffer = as_bytes(text, "utf-8")
-    line = Lines(buffer, np.zeros(1, np.int64), np.array([buffer.size]), np.ones(1, np.int64), "utf-8")
-    cells = line.cells(layout, _MOST_CELLS)
+    """Return the cells of one line of text; none, or those before the damage, where it is damaged."""
+    cells = _cut(text, layout)
     return [cells.text(0, column, "utf-8") for column in range(min(int(cells.count[0]), _MOST_CELLS))]
 
 
+def _cut(text: str, layout: TextLayout) -> Cells:
+    buffer = as_bytes(text, "utf-8")
+    line = Lines(buffer, np.zeros(1, np.int64), np.array([buffer.size]), np.ones(1, np.int64), "utf-8")
+    return line.cells(layout, _MOST_CELLS)
+
+
 def column_names(header: Sequence[str], layout: TextLayout) -> list[str]:
-    """Return the names of a table's columns, from the layout or from the header."""
+    """Return the names of a table's columns, from the layout or from the header.
+
+    Raises
+    ------
+    DataError
+        Where the row of names is damaged.
+    """
     if layout.fixed:
         return list(layout.fixed)
     if layout.names:
         return list(layout.names)
-    return split_line(header[layout.names_row - 1], layout)
+    row = header[layout.names_row - 1]
+    damage = Damage(_cut(row, layout).damage[0])
+    if damage is not Damage.NONE:
+        raise DataError(
+            "the column names cannot be told apart",
+            where=f"header row {layout.names_row}",
+            expected="cells as the layout says",
+            found=f"{damage.describe()}: {printable(row)}",
+            advice="correct the row, or give the names in the layout",
+        )
+    return split_line(row, layout)
 
 
 def cell_methods(time: Meaning) -> str | None:

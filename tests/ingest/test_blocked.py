@@ -118,7 +118,7 @@ def test_a_header_cut_off_by_the_end_of_the_file_is_quarantined(write, layout):
 @pytest.mark.parametrize(
     ("content", "message"),
     [
-        ("title\nLEVELS at Om\nx\n2031-01-01 00:00 29 a\n", "line 2: a cell of the header is no depth: found 'Om'"),
+        ("title\nLEVELS at Om -1m\nx\n2031-01-01 00:00 29 a\n", "line 2: a cell of the header is no depth: found 'Om'"),
         ("title\nLEVELS at\nx\n2031-01-01 00:00 29 a\n", "line 2: the header names no depth: found "),
         ("title\nlevels at -1m\n2031-01-01 00:00 29 a\n", "found no such line"),
         ("title\nLEVELS at 5m\nx\n", "line 2: this is no depth below the surface: found -5 m"),
@@ -159,3 +159,22 @@ def test_many_short_blocks_take_no_longer_than_their_bytes(write):
     days = np.datetime64("2031-01-01") + np.arange(3_000)
     delivery = read(write("".join(f"z,1\n{day},29\n" for day in days)), layout)
     assert delivery.chain.sizes["time"] == 3_000
+
+
+@pytest.mark.parametrize("row", ["2031-01-01 00:00 x a\n", ""])
+def test_headers_without_a_row_that_can_be_understood_are_told(write, layout, row):
+    with pytest.raises(DataError, match="no row could be understood"):
+        read(write("title\nLEVELS at -1m\nx\n" + row), layout)
+
+
+def test_names_of_the_cells_behind_the_readings_may_stand_behind_the_depths(write, layout):
+    named = TWO_BLOCKS.replace("LEVELS at -1m -25m", "LEVELS at -1m -25m marks").replace("-40m", "-40m marks")
+    assert read(write(named), layout).chain.identical(read(write(TWO_BLOCKS), layout).chain)
+
+
+def test_rows_under_a_header_whose_last_depth_is_damaged_are_quarantined(write, layout):
+    delivery = read(write(TWO_BLOCKS.replace("-25m", "-2x5m")), layout)
+    assert set(reasons(delivery)) == {5, 6}
+    np.testing.assert_array_equal(
+        delivery.chain["temperature"].sel(depth=[1, 10, 40]), np.float32([[29.0, 28.0, 15.0]])
+    )

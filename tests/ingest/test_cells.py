@@ -7,6 +7,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from profiles.errors import DataError
 from profiles.ingest import read
 from profiles.ingest.cells import Damage, delimited_cells
 from profiles.ingest.lines import find_lines
@@ -55,6 +56,9 @@ def test_quotes_that_do_not_pair_are_damage(text):
 
 def test_a_nul_byte_is_damage():
     assert cut("a,b\x00,c")[2] == Damage.NUL
+    assert cut('"a,b\x00', columns=2)[2] == Damage.NUL
+    # the kernel stands for any run of blanks by the delimiter 0
+    assert cut("a b\x00 c", ANY_BLANKS)[2] == Damage.NUL
 
 
 def test_a_delimiter_more_at_the_end_is_one_cell_more_unless_the_layout_says_so():
@@ -70,6 +74,12 @@ def test_rows_that_end_with_a_delimiter_are_read_where_the_layout_says_so(write,
     layout = wide.model_copy(update={"ends_with_delimiter": True})
     assert read(write(content), layout).quarantine["line"].tolist() == [4]
     assert read(write(content), wide).quarantine["line"].tolist() == [2, 4]
+
+
+@pytest.mark.parametrize("header", ['date,"T_1m,T_10m', "date,T_1m,\x00T_10m"])
+def test_column_names_that_cannot_be_told_apart_are_told(write, wide, header):
+    with pytest.raises(DataError, match="the column names cannot be told apart"):
+        read(write(f"{header}\n2031-01-01,29,28\n"), wide)
 
 
 # The csv module keeps blanks and does not tell unpaired quotes, so quotes here stand around whole cells.

@@ -183,3 +183,9 @@ def test_what_makes_no_counted_layout_is_refused(layout_of):
     with pytest.raises(ConfigError, match="expected count among the names") as caught:
         layout_of(text)
     assert "tolerance needs values" in str(caught.value)
+
+
+@pytest.mark.parametrize("text", ["2031 1 0.5 0\n2031 1 1.5 0\n", "2031 1 0.5 1\n1 x a\n"])
+def test_profiles_without_a_reading_that_can_be_understood_are_told(write, layout, text):
+    with pytest.raises(DataError, match="no row could be understood"):
+        read(write("title\n" + text), layout)
