@@ -25,8 +25,8 @@ _WITH_OFFSET = re.compile(r"[Zz]$|[Tt ].*[+-][0-9]{2}(?::?[0-9]{2})?$")
 # ISO 8601-1:2019 (from memory), calendar dates, with a blank allowed for the T: pandas also reads stamps cut short.
 _ISO_STAMP = re.compile(
     r"(?:[0-9]{4}-[0-9]{2}-[0-9]{2}|[0-9]{8})"
-    r"(?:[Tt ][0-9]{2}(?::[0-9]{2}(?::[0-9]{2}(?:\.[0-9]+)?)?|(?:[0-9]{2}){1,2}|[0-9]{4}\.[0-9]+)?"
-    r" ?(?:[Zz]|[+-][0-9]{2}(?::?[0-9]{2})?)?)?"
+    r"(?:[T ][0-9]{2}(?::[0-9]{2}(?::[0-9]{2}(?:\.[0-9]+)?)?|(?:[0-9]{2}){1,2}|[0-9]{4}\.[0-9]+)?"
+    r" ?(?:Z|[+-][0-9]{2}(?::?[0-9]{2})?)?)?"
 )
 # Digits of each number of a strptime format; where two numbers touch, fewer could be read in more than one way.
 _DIGITS = {"Y": "4", "y": "2", "m": "2", "d": "2", "H": "2", "I": "2", "M": "2", "S": "2", "j": "3", "f": "1,9"}

@@ -41,7 +41,16 @@ def column_names(header: Sequence[str], layout: TextLayout) -> list[str]:
     if layout.names:
         return list(layout.names)
     row = header[layout.names_row - 1]
-    damage = Damage(_cut(row, layout).damage[0])
+    cells = _cut(row, layout)
+    damage = Damage(cells.damage[0])
+    if cells.count[0] > _MOST_CELLS:
+        raise DataError(
+            "there are more columns than a delivery has",
+            where=f"header row {layout.names_row}",
+            expected=f"at most {_MOST_CELLS}",
+            found=str(cells.count[0]),
+            advice="check delimiter and names_row in the layout",
+        )
     if damage is not Damage.NONE:
         raise DataError(
             "the column names cannot be told apart",

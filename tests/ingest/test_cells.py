@@ -82,6 +82,11 @@ def test_column_names_that_cannot_be_told_apart_are_told(write, wide, header):
         read(write(f"{header}\n2031-01-01,29,28\n"), wide)
 
 
+def test_more_columns_than_a_delivery_has_are_told(write, wide):
+    with pytest.raises(DataError, match="more columns than a delivery has"):
+        read(write(f"date,T_1m{',x' * 4096}\n2031-01-01,29{',1' * 4096}\n"), wide)
+
+
 # The csv module keeps blanks and does not tell unpaired quotes, so quotes here stand around whole cells.
 plain = st.text(st.characters(codec="utf-8", exclude_characters='",\r\n\x00', exclude_categories=["Cs", "Z", "C"]))
 quoted = st.text(st.sampled_from('ab,;" '), max_size=6).map(lambda text: '"' + text.replace('"', '""') + '"')
