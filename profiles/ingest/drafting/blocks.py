@@ -154,8 +154,8 @@ def _proposal(
     begins = _begins(blocks)
     if depths is None or not begins:
         return None
-    marks = _glued_marks(blocks, depths)
-    leading = depths.beside - (marks is not None)
+    glued = _glued_cells(blocks, depths)
+    leading = depths.beside - len(glued)
     rows = [
         (row, count)
         for block, count in zip(blocks, depths.counts, strict=True)
@@ -187,11 +187,15 @@ def _proposal(
     content["depth"], depth_doubts = _depth_keys(depths, blocks, hints)
     content["temperature"] = {"units": units} | scale
     doubts += depth_doubts
-    if marks is not None:
-        flags, doubt = flags_of(marks)
-        block["after"] = ["marks"]
-        content["quality"] = {"column": "marks", "flags": flags}
+    if glued:
+        flags, doubt = flags_of(glued[0])
+        behind = ["marks", *(f"marks_{place}" for place in range(2, len(glued) + 1))]
+        block["after"] = behind
+        content["quality"] = {"column": behind[0], "flags": flags}
         doubts.append(doubt)
+    if len(glued) > 1:
+        other = f"{len(glued)} cells behind the readings have a character for each of them"
+        doubts.append(Doubt("which marks are of the quality", "the first", other))
     if leading > len(time.places):
         doubts.append(
             Doubt(
@@ -221,20 +225,26 @@ def _begins(blocks: Sequence[Block]) -> str:
     return "" if not begins or any(text.startswith(begins) for text in others) else begins
 
 
-def _glued_marks(blocks: Sequence[Block], depths: Depths) -> set[str] | None:
-    """Return the characters of a last cell that has one for each reading; None where there is no such cell."""
-    if depths.beside < 2:
-        return None
-    fitting, total, marks = 0, 0, set[str]()
-    for block, count in zip(blocks, depths.counts, strict=True):
-        for row in block.rows:
-            if len(row) == count + depths.beside:
-                total += 1
-                if len(row[-1]) == count and re.fullmatch(r"[0-9A-Za-z?]+", row[-1]):
-                    fitting += 1
-                    marks |= set(row[-1])
+def _glued_cells(blocks: Sequence[Block], depths: Depths) -> list[set[str]]:
+    """Return the characters of the last cells of the rows that have one for each reading, cell by cell."""
+    rows = [
+        (row, count)
+        for block, count in zip(blocks, depths.counts, strict=True)
+        for row in block.rows
+        if len(row) == count + depths.beside
+    ]
+    found: list[set[str]] = []
     several = len(set(depths.counts)) > 1 or min(depths.counts) > 1
-    return marks if total and several and fitting >= 0.9 * total else None
+    for behind in range(1, depths.beside if several else 1):
+        fitting = [
+            row[-behind]
+            for row, count in rows
+            if len(row[-behind]) == count and re.fullmatch(r"[0-9A-Za-z?]+", row[-behind])
+        ]
+        if len(fitting) < 0.9 * len(rows):
+            break
+        found.insert(0, set("".join(fitting)))
+    return found
 
 
 def _depth_keys(depths: Depths, blocks: Sequence[Block], hints: str) -> tuple[dict[str, Any], list[Doubt]]:

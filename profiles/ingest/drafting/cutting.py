@@ -126,7 +126,8 @@ def _thinned(texts: Sequence[str]) -> list[str]:
 
 
 def _best_decimal(delimiter: str, texts: Sequence[str]) -> _Judged:
-    options = [_judged(Cutting(delimiter, decimal), texts) for decimal in ".," if decimal != delimiter]
+    quoted = any('"' in text for text in texts)
+    options = [_judged(Cutting(delimiter, decimal), texts) for decimal in ".," if decimal != delimiter or quoted]
     return max(options, key=lambda each: each.worth)
 
 

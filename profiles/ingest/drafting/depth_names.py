@@ -11,6 +11,7 @@ import numpy as np
 
 from profiles.ingest.drafting.content import Column
 from profiles.ingest.drafting.doubts import Doubt
+from profiles.ingest.drafting.time_forms import formats_of
 from profiles.ingest.drafting.words import depth_units, temperature_worth, words_of
 from profiles.ingest.layout.parts import DEPTH_MARK, GREATEST_DEPTH
 
@@ -59,7 +60,9 @@ class NamedDepths:
 
 def named_depths(columns: Sequence[Column]) -> list[NamedDepths]:
     """Return the groups of numeric columns whose names differ in a depth, the best first."""
-    candidates = [column for column in columns if column.is_numeric or column.is_empty]
+    candidates = [
+        column for column in columns if (column.is_numeric or column.is_empty) and not formats_of(column.name)
+    ]
     found = [*_by_pattern(candidates), *_by_unit(candidates), *_broken(candidates)]
     usable = [group for group in found if _are_depths(group.depth)]
     return sorted(usable, key=lambda group: -_score(group, candidates))

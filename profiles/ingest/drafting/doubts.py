@@ -27,5 +27,5 @@ class Doubt:
     other: str = ""
 
     def __str__(self) -> str:
-        other = f"; otherwise {self.other}" if self.other else ""
-        return f"{self.about}: {self.taken} is taken; {self.why}{other}"
+        other = f"; or else {self.other}" if self.other else ""
+        return f"{self.about}: {self.taken} ({self.why}){other}"

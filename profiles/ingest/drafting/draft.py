@@ -21,6 +21,7 @@ from profiles.ingest.drafting.sample import Sample, take_sample
 from profiles.ingest.drafting.table import build_table
 from profiles.ingest.drafting.tabular import long_proposals, sensor_columns, wide_proposals
 from profiles.ingest.drafting.time_columns import time_guesses
+from profiles.ingest.drafting.time_forms import formats_of
 from profiles.ingest.drafting.trial import layout_of, on_sample, on_whole_file, read_with
 from profiles.ingest.drafting.writing import as_toml
 from profiles.ingest.layout import GREATEST_DEPTH, Layout
@@ -159,6 +160,8 @@ def _of_table(sample: Sample, cutting: Cutting, depths: Sequence[float], progres
         progress.append(
             f"{cutting.in_words}: {len(table.columns)} columns, none of which can be read as a time that goes on"
         )
+        if sum(bool(formats_of(name)) for name in table.names) > 2:
+            progress.append("the times seem to be the names of the columns; turn rows into columns first")
         return
     time = guesses[0]
     found = [*wide_proposals(sample, table, time, depths), *([] if depths else long_proposals(sample, table, time))]

@@ -76,6 +76,8 @@ def zone_of(near: str, hints: str) -> Zone:
                 )
                 return Zone(found[0], doubt)
     why = "the file does not state it"
+    if re.search(r"local|lokal|ortszeit", near, re.IGNORECASE):
+        why = "the name of the column says local time, but the file does not state which"
     if _SHIFTS.search(hints):
         why += ", but mentions summer time"
     return Zone("UTC", Doubt("time zone", "UTC", why))

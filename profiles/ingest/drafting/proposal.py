@@ -61,6 +61,8 @@ def text_keys(sample: Sample, cutting: Cutting) -> dict[str, Any]:
         keys["delimiter"] = cutting.delimiter
     keys["encoding"] = sample.encoding
     keys["decimal"] = cutting.decimal
+    if cutting.decimal == cutting.delimiter:
+        keys["quoted"] = True
     if sample.packing == "zip" and sample.member != "*":
         keys["member"] = sample.member
     return keys

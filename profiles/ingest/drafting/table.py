@@ -87,7 +87,13 @@ def build_table(sample: Sample, cutting: Cutting) -> Table | None:
     naming = _names(header, header_rows, comments, comment, body, width, cutting)
     notes = _notes(header_rows, naming, width)
     columns = tuple(
-        Column(place, naming.names[place], notes[place], tuple(row[place] for row in body), cutting.decimal)
+        Column(
+            place,
+            naming.names[place] if naming.is_of_file else "",
+            notes[place],
+            tuple(row[place] for row in body),
+            cutting.decimal,
+        )
         for place in range(width)
     )
     return Table(
@@ -130,13 +136,18 @@ def _is_data(row: Row, decimal: str) -> bool:
 
 
 def _width(rows: Sequence[Row]) -> int:
-    later = rows[len(rows) // 3 :]
+    later = _later(rows)
     return Counter(len(row) for row in later if row).most_common(1)[0][0] if any(later) else 0
+
+
+def _later(rows: Sequence[Row]) -> Sequence[Row]:
+    """Return the rows of the later part, where the header is past."""
+    return rows[max(len(rows) // 3, min(1, len(rows) - 1)) :]
 
 
 def _kinds(rows: Sequence[Row], width: int, decimal: str) -> list[Sort]:
     """Return what most cells of each column are, over the later rows."""
-    later = [row for row in rows[len(rows) // 3 :] if len(row) == width]
+    later = [row for row in _later(rows) if len(row) == width]
     thinned = later[:: max(1, len(later) // 300)]
     kinds: list[Sort] = []
     for cells in zip(*thinned, strict=True):
@@ -178,6 +189,7 @@ def _ends_with_delimiter(header: Sequence[Row], body: Sequence[Row], width: int,
 class _Naming:
     row: int
     names: tuple[str, ...]
+    is_of_file: bool = True
 
 
 def _names(
@@ -199,7 +211,7 @@ def _names(
     options = [tuple(cells) for text in before for cells in _resplit(text, cutting, body, width) if len(cells) == width]
     if options and _name_score(best := max(options, key=_name_score)) > 0:
         return _Naming(0, _unique(best))
-    return _Naming(0, tuple(f"column_{place + 1}" for place in range(width)))
+    return _Naming(0, tuple(f"column_{place + 1}" for place in range(width)), is_of_file=False)
 
 
 def _name_score(cells: Sequence[str]) -> float:
@@ -263,7 +275,7 @@ def with_names(table: Table) -> Table:
     """Return the table with names that differ, given in the layout in place of those in the file."""
     names = _unique(table.names)
     columns = tuple(
-        Column(column.place, names[column.place], column.notes, column.texts, column.decimal)
+        Column(column.place, names[column.place] if column.name else "", column.notes, column.texts, column.decimal)
         for column in table.columns
     )
     return Table(

@@ -23,6 +23,7 @@ from profiles.ingest.layout.parts import DEPTH_MARK, GREATEST_DEPTH
 from profiles.ingest.long import MOST_DEPTHS
 
 _PLAIN_NUMBER = re.compile(r"[-+]?[0-9]+(?:[.,][0-9]+)?")
+_RIVAL = 1.5  # less sure than the best, and another reading of the columns is not mentioned (ours)
 _FEW_DEPTHS = 60  # different depths of a column; with more they are measured ones, about the sensors' (ours)
 
 
@@ -43,11 +44,11 @@ class Found:
 
 def wide_proposals(sample: Sample, table: Table, time: TimeGuess, depths: Sequence[float]) -> list[Proposal]:
     """Return wide layouts, the likeliest first; ``depths`` are what the user says of them."""
-    found = _stated(table, time, depths) if depths else _found(table, time)
+    ways = _stated(table, time, depths) if depths else _found(table, time)
     proposals = []
-    for place, sensors in enumerate(found[:3]):
-        rival = next((other for other in found[place + 1 :] if other.depth != sensors.depth), None)
-        proposals.append(_wide(sample, table, time, sensors, rival))
+    for place, (worth, sensors) in enumerate(ways[:3]):
+        rivals = [other for rest, other in ways[place + 1 :] if other.depth != sensors.depth and rest > worth - _RIVAL]
+        proposals.append(_wide(sample, table, time, sensors, rivals[0] if rivals else None))
     return proposals
 
 
@@ -73,15 +74,15 @@ def _is_counter(column: Column) -> bool:
     )
 
 
-def _stated(table: Table, time: TimeGuess, depths: Sequence[float]) -> list[Found]:
+def _stated(table: Table, time: TimeGuess, depths: Sequence[float]) -> list[tuple[float, Found]]:
     columns = sensor_columns(table, time)
     if len(columns) != len(depths):
         return []
-    return [_in_order(columns, depths, table, None, ())]
+    return [(0.0, _in_order(columns, depths, table, "m", ()))]
 
 
-def _found(table: Table, time: TimeGuess) -> list[Found]:
-    """Return the ways to tell the sensors' depths, the surer first."""
+def _found(table: Table, time: TimeGuess) -> list[tuple[float, Found]]:
+    """Return the ways to tell the sensors' depths, with how sure each is; the surer first."""
     ways: list[tuple[float, Found]] = []
     for group in depth_groups(table, time.places):
         if group.worth > -1.0:
@@ -91,8 +92,7 @@ def _found(table: Table, time: TimeGuess) -> list[Found]:
     ways += [(2.8, way) for way in _of_header_row(table, time)]
     columns = sensor_columns(table, time)
     ways += [(1.5, way) for way in _of_prose(table, columns)]
-    ways.sort(key=lambda way: -way[0])
-    return [way for _, way in ways]
+    return sorted(ways, key=lambda way: -way[0])
 
 
 def _of_names(table: Table, group: NamedDepths) -> Found:
@@ -408,16 +408,16 @@ def _long(
         doubts.append(
             Doubt(
                 "column of the temperature",
-                repr(temperature.name),
+                repr(table.names[temperature.place]),
                 "others could be meant",
-                ", ".join(repr(column.name) for column in rivals[:3]),
+                ", ".join(repr(table.names[column.place]) for column in rivals[:3]),
             )
         )
     content = _table_keys(sample, table) | {"kind": "long", "missing": missing}
     content |= {
         "time": time.named(table.names) | time_keys,
         "depth": depth_keys,
-        "temperature": {"column": temperature.name, "units": units} | scale,
+        "temperature": {"column": table.names[temperature.place], "units": units} | scale,
     }
     used = dict.fromkeys(time.places, "time") | {depth.place: "depth", temperature.place: "temperature"}
     quality = _long_quality(table, used, temperature)
@@ -452,7 +452,7 @@ def _long(
 
 
 def _column_depth(depth: Column, table: Table) -> tuple[dict[str, Any], list[Doubt]]:
-    keys: dict[str, Any] = {"column": depth.name}
+    keys: dict[str, Any] = {"column": table.names[depth.place]}
     stated = next((unit for text in (*depth.notes, depth.name) if (unit := depth_units(text)) is not None), None)
     keys["units"], doubts = _depth_units(stated, [depth.label], table.hints)
     values = depth.values[np.abs(depth.values) < GREATEST_DEPTH]

@@ -44,6 +44,9 @@ _SINCE = re.compile(
     r"\b(milliseconds?|msecs?|seconds?|secs?|minutes?|mins?|hours?|hrs?|days?)\s+(?:since|after|from)\s+"
     r"(\d{4}-\d{1,2}-\d{1,2}(?:[T ]\d{1,2}:\d{2}(?::\d{2})?)?)", re.IGNORECASE,
 )  # fmt: skip
+_STATED = 4.0  # worth of units that the file states
+_LEAST_COUNT = 5000  # of days, hours, seconds since some usual zero: a dozen years of days (ours)
+_RIVAL_WORTH = 1.0  # less than that of the best, and a guess is no rival (ours)
 _YEARS = re.compile(r"(?<!\d)(19[5-9]\d|20\d\d)(?!\d)")
 
 
@@ -114,7 +117,13 @@ def time_guesses(columns: Sequence[Column], hints: str) -> list[TimeGuess]:
     hints : str
         What stands in the header and in the comments, and the name of the file.
     """
-    found = [*_of_texts(columns), *_of_parts(columns), *_of_numbers(columns, hints), *_of_day_numbers(columns, hints)]
+    found = [
+        *_of_texts(columns),
+        *_of_parts(columns),
+        *_of_short_years(columns),
+        *_of_numbers(columns, hints),
+        *_of_day_numbers(columns, hints),
+    ]
     ranked = sorted(found, key=lambda guess: -guess.worth)
     return [_with_rivals(ranked[0], ranked[1:]), *ranked[1:]] if ranked else []
 
@@ -226,6 +235,8 @@ def _holds_clocks(column: Column) -> bool:
     if sum(is_clock(text) and ":" in text for text in looked_at) >= 0.9 * len(looked_at):
         return True
     lengths = {len(text) for text in looked_at}
+    if _named_so(column, "hour") > 0 and all(text.isdigit() and int(text) <= 24 for text in looked_at):
+        return True
     padded = lengths in ({4}, {6}, {2}) and all(text.isdigit() for text in looked_at)
     return padded and not (temperature_worth(column.name) > 0)
 
@@ -254,6 +265,36 @@ _CLOCKS = (
     (), ("hour",), ("hour", "minute"), ("hour", "minute", "second"), ("hour_minute",), ("hour_minute", "second"),
     ("hour_minute_second",),
 )  # fmt: skip
+
+
+def _of_short_years(columns: Sequence[Column]) -> Iterator[TimeGuess]:
+    """Yield stamps in several columns of which one is a year of two digits, read as texts."""
+    by_place = {column.place: column for column in columns if _is_filled(column) and column.is_whole}
+    for column in by_place.values():
+        if _named_so(column, "year") <= 0 or not all(re.fullmatch("[0-9]{2}", text) for text in column.texts):
+            continue
+        for codes, first in (("ymd", 0), ("dmy", -2), ("mdy", -2)):
+            for clock in ("", "H", "HM", "HMS"):
+                together = [by_place.get(column.place + first + step) for step in range(3 + len(clock))]
+                chosen = [each for each in together if each is not None]
+                if len(chosen) == len(together):
+                    yield from _joined(chosen, " ".join(f"%{code}" for code in codes + clock))
+
+
+def _joined(columns: Sequence[Column], time_format: str) -> Iterator[TimeGuess]:
+    texts = [" ".join(parts) for parts in zip(*(column.texts for column in columns), strict=True)]
+    clock, _ = clock_of_texts(texts, time_format)
+    places = tuple(column.place for column in columns)
+    settings = {"columns": list(places), "format": time_format}
+    named = sum(_named_so(column, part) for column, part in zip(columns, _parts_of(time_format), strict=True))
+    guess = TimeGuess(settings, places, clock, 2.2 + 0.25 * named + 0.08 * len(places))
+    if (judged := _judged(guess, 0.6)) is not None:
+        yield replace(judged, doubts=tuple(_century(time_format)))
+
+
+def _parts_of(time_format: str) -> list[str]:
+    parts = {"y": "year", "m": "month", "d": "day", "H": "hour", "M": "minute", "S": "second"}
+    return [parts[letter] for letter in re.findall("%(.)", time_format)]
 
 
 _DATE_ORDERS = (  # and how far each column is from that of the year
@@ -305,6 +346,8 @@ def _can_be(column: Column, part: str) -> bool:
     good = (column.values >= least) & (column.values <= most)
     if good.mean() < _READABLE:
         return False
+    if part == "hour_minute_second" and column.values.max() < 2400 and _named_so(column, part) <= 0:
+        return False
     if part in {"year", "month", "hour_minute", "hour_minute_second", "year_month_day"} and not column.is_whole:
         return bool((column.values % 1 == 0).mean() > _READABLE)
     return True
@@ -350,14 +393,19 @@ def _of_numbers(columns: Sequence[Column], hints: str) -> Iterator[TimeGuess]:
         stated = [_stated_units(text) for text in (column.label, *hints.split("\n"))]
         written = next((units for units in stated if units is not None), None)
         if written is not None:
-            yield from _counted(column, written, 4.0)
+            yield from _counted(column, written, _STATED)
+        if np.median(np.abs(column.values)) < _LEAST_COUNT:
+            continue
         for order, (units, words, _) in enumerate(_COUNTED):
             is_named = any(re.fullmatch(words, word) for word in words_of(column.label)) if words else False
-            yield from _counted(column, units, 0.8 + 0.6 * is_named + _name_worth([column]) - 0.04 * order)
+            yield from _counted(column, units, 0.8 + 1.5 * is_named + _name_worth([column]) - 0.04 * order)
 
 
 def _counted(column: Column, units: str, worth: float) -> Iterator[TimeGuess]:
     clock = clock_of_numbers(column.numbers, units)
+    middle = np.nanmedian(clock.astype("datetime64[s]").astype(float)) if not np.isnat(clock).all() else np.nan
+    if worth < _STATED and not _LIKELY[0] <= np.datetime64(int(middle) if middle == middle else 0, "s") <= _LIKELY[1]:
+        return
     guess = TimeGuess({"column": column.place, "units": units}, (column.place,), clock, worth)
     if (judged := _judged(guess, 0.8)) is not None and np.unique(clock[~np.isnat(clock)]).size > 1:
         yield judged
@@ -399,7 +447,7 @@ def _with_rivals(best: TimeGuess, others: Sequence[TimeGuess]) -> TimeGuess:
         same_columns = set(other.places) == set(best.places)
         if not same_columns or np.array_equal(other.clock, best.clock, equal_nan=True):
             continue
-        if np.isnat(other.clock).sum() > np.isnat(best.clock).sum():
+        if np.isnat(other.clock).sum() > np.isnat(best.clock).sum() or other.worth < best.worth - _RIVAL_WORTH:
             continue
         return replace(best, doubts=(*best.doubts, _rivalry(best, other)), rival=other.settings)
     return best

@@ -23,7 +23,7 @@ _COMPACT = {
     7: ("%Y%j",),
     6: ("%y%m%d", "%d%m%y", "%m%d%y"),
 }
-_COMPACT_CLOCK = {2: ("%H",), 4: ("%H%M",), 6: ("%H%M%S",)}
+_COMPACT_CLOCK = {1: ("%H",), 2: ("%H",), 4: ("%H%M",), 6: ("%H%M%S",)}
 _ORDERS = (("y", "m", "d"), ("d", "m", "y"), ("m", "d", "y"))
 
 
@@ -33,7 +33,13 @@ def formats_of(text: str) -> list[str]:
     found = [ISO] if re.match(r"\d{4}-\d{2}-\d{2}($|[T ]\d{2}:\d{2})", text) else []
     for date, rest, clock in _split(text):
         found += [f"{day}{_escaped(rest)}{clock}" for day in _dates(date)]
-    return list(dict.fromkeys(found))
+    return [each for each in dict.fromkeys(found) if _is_sound(each)]
+
+
+def _is_sound(time_format: str) -> bool:
+    """Tell whether a format asks for nothing twice."""
+    asked = re.findall(r"%([A-Za-z])", time_format.replace("%%", ""))
+    return len(set(asked)) == len(asked)
 
 
 def _escaped(text: str) -> str:
@@ -51,7 +57,7 @@ def _split(text: str) -> Iterator[tuple[str, str, str]]:
         if bare:
             yield bare, date[len(bare) :], _clock_format(clock)
     yield text, "", ""
-    apart = re.fullmatch(r"(.*[0-9A-Za-z])([ T_-]+)([0-9]{2}|[0-9]{4}|[0-9]{6})(Z?)", text)
+    apart = re.fullmatch(r"(.*[0-9A-Za-z])([ T_-]+)([0-9]{1,2}|[0-9]{4}|[0-9]{6})(Z?)", text)
     if apart is not None:
         for clock_format in _COMPACT_CLOCK[len(apart.group(3))]:
             yield apart.group(1), apart.group(2), clock_format + apart.group(4)

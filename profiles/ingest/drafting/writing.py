@@ -26,6 +26,7 @@ _KEYS = {
     "encoding": "How letters are stored.",
     "member": "Which file of the archive, as a pattern.",
     "decimal": "Decimal mark.",
+    "quoted": "Numbers stand in quotes, as the decimal mark is the delimiter too.",
     "missing": "Cells without a reading.",
     "ends_with_delimiter": "Rows, not names, end with one delimiter more.",
     "station": "Column that names the station.",

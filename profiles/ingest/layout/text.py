@@ -38,6 +38,9 @@ class TextLayout(Settings):
     encoding: Annotated[str, AfterValidator(_known_encoding)] = Field("utf-8", validate_default=True)
     member: str = Field("*", description="which file of a zip archive, as a pattern; one must fit")
     decimal: Literal[".", ","] = "."
+    quoted: bool = Field(
+        False, strict=True, description="numbers stand in quotes, so that delimiter and decimal may be the same"
+    )
     missing: tuple[str, ...] = Field(("",), description="cells without a reading, compared as text and as number")
     ends_with_delimiter: bool = Field(False, strict=True, description="rows, not names, end with one delimiter more")
     trimmed: bool = Field(False, strict=True, description="fixed rows may end early, their last blanks cut away")
@@ -49,7 +52,7 @@ class TextLayout(Settings):
             raise ValueError(f'delimiter: expected one character or "{WHITESPACE}", found {self.delimiter!r}')
         if not self.delimiter.isascii():
             raise ValueError(f"delimiter: expected an ASCII character, found {self.delimiter!r}")
-        if self.delimiter == self.decimal and not self.fixed:
+        if self.delimiter == self.decimal and not (self.fixed or self.quoted):
             raise ValueError(f"delimiter and decimal are the same: {self.decimal!r}")
         self._check_names()
         self._check_texts()
