@@ -287,15 +287,16 @@ class Zone:
         As :func:`parse_zone` takes it.
     by_order : bool
         Whether local times that the end of summer time repeats are told by their order: the first time round is
-        summer time, until a sensor's reading is not later than the one before it, or comes, no earlier, behind one of
-        the second round. Else they stay NaT.
+        summer time, until a sensor's reading is not later than the one before it, or comes, no earlier, right behind
+        one of the second round. Else they stay NaT.
     """
 
     name: str
     by_order: bool = False
     _last: dict[tuple[int, float], np.datetime64] = field(default_factory=dict)
     _second_round: set[tuple[int, float]] = field(default_factory=set)
-    _before: tuple[int, float] = (0, 0.0)
+    _before: tuple[int, tuple[int, float]] | None = None  # place and key of the latest such time
+    _rows: int = 0
 
     def to_utc(self, clock: Times, sensor: NDArray[np.float64] | None = None) -> Times:
         """Return UTC, NaT where the local time does not exist, or exists twice; ``sensor`` tells readings apart."""
@@ -306,6 +307,7 @@ class Zone:
         if self.by_order and isinstance(zone, ZoneInfo):
             open_cases = np.flatnonzero(np.isnat(utc) & ~np.isnat(clock))
             self._by_order(clock, utc, open_cases, sensor, zone)
+        self._rows += len(clock)
         return utc
 
     def _by_order(
@@ -319,11 +321,17 @@ class Zone:
                 continue
             night = int(stamp.astype("datetime64[D]").astype(np.int64))
             key = (night, float(sensor[case]) if sensor is not None else 0.0)
-            follows = self._before[0] == night and self._before in self._second_round
-            if (key in self._last and stamp <= self._last[key]) or (follows and stamp >= self._last[self._before]):
+            place = self._rows + int(case)
+            if (key in self._last and stamp <= self._last[key]) or self._follows(place, stamp):
                 self._second_round.add(key)
-            self._last[key], self._before = stamp, key
+            self._last[key], self._before = stamp, (place, key)
             utc[case] = np.datetime64(local - offsets[key in self._second_round], "ns")
+
+    def _follows(self, place: int, stamp: np.datetime64) -> bool:
+        """Tell whether the row right before is of the second round and no later."""
+        if self._before is None or self._before[0] != place - 1:
+            return False
+        return self._before[1] in self._second_round and stamp >= self._last[self._before[1]]
 
 
 def hours(length: float) -> np.timedelta64:

@@ -17,8 +17,10 @@ _MOST_CELLS = 4096  # of one line; more columns than a delivery has (ours)
 
 
 def split_line(text: str, layout: TextLayout) -> list[str]:
-    """Return the cells of one line of text; none, or those before the damage, where it is damaged."""
+    """Return the cells of one line of text; none where its quotes do not pair or it holds a NUL byte."""
     cells = _cut(text, layout)
+    if cells.damage[0] in (Damage.NUL, Damage.QUOTES):
+        return []
     return [cells.text(0, column, "utf-8") for column in range(min(int(cells.count[0]), _MOST_CELLS))]
 
 

@@ -99,6 +99,12 @@ def test_a_header_that_cannot_be_understood_takes_its_rows_with_it(write, layout
     np.testing.assert_array_equal(delivery.chain["depth"], [1, 25])
 
 
+def test_a_header_whose_quotes_do_not_pair_is_not_taken_for_a_shorter_one(write, layout):
+    delivery = read(write(TWO_BLOCKS.replace("-1m -40m", '-1m ""-40m')), layout)
+    assert list(reasons(delivery)) == [8, 10, 11]
+    assert "the header names no depth" in reasons(delivery)[8]
+
+
 def test_a_row_before_the_first_block_is_quarantined(write, layout):
     delivery = read(write(TWO_BLOCKS.replace("a title\n", "a title\n2031-01-01 00:00 1 2 aa\n")), layout)
     assert reasons(delivery) == {2: "no header of a block stands before this row"}

@@ -187,6 +187,13 @@ def test_sensors_one_after_another_each_go_round_twice():
     np.testing.assert_array_equal(found, np.tile(utc("05:00", "05:30", "06:00", "06:30"), 2))
 
 
+def test_sensors_one_after_another_that_meet_the_hour_once_a_round():
+    zone = Zone("America/New_York", by_order=True)
+    once = ["00:00", "01:00", "01:00", "02:00"]
+    np.testing.assert_array_equal(by_order(zone, once, [1] * 4), utc("04:00", "05:00", "06:00", "07:00"))
+    np.testing.assert_array_equal(by_order(zone, once, [10] * 4), utc("04:00", "05:00", "06:00", "07:00"))
+
+
 def test_a_sensor_that_is_new_in_the_second_round_is_of_that():
     zone = Zone("America/New_York", by_order=True)
     found = by_order(zone, ["01:00", "01:30", "01:00", "01:00", "01:30"], [1, 1, 1, 10, 10])
