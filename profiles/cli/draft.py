@@ -86,8 +86,8 @@ def _numbers(depths: str | None) -> list[float]:
 def _screen(found: Draft, write: Path | None) -> list[str]:
     proposal = found.proposal
     size = f"{found.packing}, {found.encoding}, {found.lines} lines; " if found.lines else ""
-    lines = [f"{found.file}: {size}{proposal.words}", f"kind: {proposal.kind}", "", *_header(found), "", "columns"]
-    lines += [f"  {use.columns}: {use.use}" for use in proposal.uses]
+    lines = [f"{found.file}: {size}{proposal.words}", f"kind: {proposal.kind}", "", *_header(found)]
+    lines += ["", "columns", *(f"  {use.columns}: {use.use}" for use in proposal.uses)] if proposal.uses else []
     lines += ["", "first rows (time in UTC, depth: temperature in °C)", *_rows(found.first)]
     if found.last:
         lines += ["last rows", *_rows(found.last)]

@@ -106,7 +106,8 @@ class Column:
         found = int(np.isfinite(self.numbers).sum())
         tokens = sum(count for text, count in self.others.items() if is_missing(text))
         often = sum(count for text, count in self.others.items() if not is_missing(text) and count > 2)
-        return found > 0 and (found + tokens >= 0.9 * len(self.texts) or found + tokens + often >= len(self.texts))
+        enough = 0.9 * len(self.texts)
+        return found > 0 and (found + tokens >= enough or (found + tokens + often >= enough and 3 * found >= enough))
 
     @cached_property
     def is_empty(self) -> bool:

@@ -15,6 +15,7 @@ from profiles.ingest.delivery import Delivery
 from profiles.ingest.drafting.blocks import blocked_proposals
 from profiles.ingest.drafting.counts import counted_proposals
 from profiles.ingest.drafting.cutting import Cutting, cuttings
+from profiles.ingest.drafting.doubts import Doubt
 from profiles.ingest.drafting.netcdf_names import netcdf_proposals
 from profiles.ingest.drafting.proposal import Proposal
 from profiles.ingest.drafting.sample import Sample, take_sample
@@ -26,6 +27,7 @@ from profiles.ingest.drafting.trial import layout_of, on_sample, on_whole_file, 
 from profiles.ingest.drafting.writing import as_toml
 from profiles.ingest.layout import GREATEST_DEPTH, Layout
 from profiles.ingest.source import check_file
+from profiles.ingest.units import is_pressure
 from profiles.ingest.wording import printable
 
 SHOWN_ROWS = 3  # at each end of the file
@@ -232,6 +234,9 @@ def _settled(proposal: Proposal, delivery: Delivery, sample: Sample) -> tuple[Pr
 
 def _finished(file: Path, packing: str, encoding: str, lines: int, proposal: Proposal, delivery: Delivery) -> Draft:
     first, last = _shown(delivery)
+    if is_pressure(proposal.content.get("depth", {}).get("units", "m")):
+        why = "the latitude that turns pressure into depth is no part of a layout; the configuration states it"
+        proposal = replace(proposal, doubts=(*proposal.doubts, Doubt("depths shown here", "those at the equator", why)))
     return Draft(
         file,
         packing,

@@ -24,6 +24,7 @@ from profiles.ingest.long import MOST_DEPTHS
 
 _PLAIN_NUMBER = re.compile(r"[-+]?[0-9]+(?:[.,][0-9]+)?")
 _RIVAL = 1.5  # less sure than the best, and another reading of the columns is not mentioned (ours)
+_AGAIN = 0.7  # different times of a row; with fewer, several readings are of one time (ours)
 _FEW_DEPTHS = 60  # different depths of a column; with more they are measured ones, about the sensors' (ours)
 
 
@@ -357,7 +358,8 @@ def long_proposals(sample: Sample, table: Table, time: TimeGuess) -> list[Propos
     if _repeat(table, table.names):
         table = with_names(table)
     free = [column for column in table.columns if column.place not in time.places and column.is_numeric]
-    depth = _depth_column(free)
+    valid = time.clock[~np.isnat(time.clock)]
+    depth = _depth_column(free, comes_again=np.unique(valid).size < _AGAIN * valid.size)
     temperatures = [
         column
         for column in free
@@ -376,9 +378,10 @@ def _reading_worth(column: Column) -> float:
     return worth - (1.0 if _is_counter(column) or repeated > 0.99 else 0.0) - (0.5 if column.is_whole else 0.0)
 
 
-def _depth_column(columns: Sequence[Column]) -> Column | None:
-    """Return the column of depths: called so, else one with few different numbers that come again and again."""
-    scored = [(score, column) for column in columns if (score := _depth_worth(column)) > 0]
+def _depth_column(columns: Sequence[Column], *, comes_again: bool) -> Column | None:
+    """Return the column of depths: called so, or where times come again one with few different numbers."""
+    least = 0.0 if comes_again else 1.0
+    scored = [(score, column) for column in columns if (score := _depth_worth(column)) > least]
     return max(scored, key=lambda each: each[0])[1] if scored else None
 
 
