@@ -44,7 +44,7 @@ def draft(
     with ending(as_json=as_json):
         from profiles.ingest.drafting import draft as drafted
 
-        _check_target(write, overwrite=overwrite)
+        _check_target(write, file, overwrite=overwrite)
         found = drafted(file, depths=_numbers(depths))
         if write is not None:
             from profiles.store import write_text
@@ -53,13 +53,16 @@ def draft(
         if as_json:
             print_json(_document(found, write))
         else:
-            typer.echo("\n".join(_unsure(found) if quiet else _screen(found, write)))
+            for line in _quietly(found) if quiet else _screen(found, write):
+                typer.echo(line)
         raise typer.Exit(EXIT_DONE)
 
 
-def _check_target(write: Path | None, *, overwrite: bool) -> None:
+def _check_target(write: Path | None, file: Path, *, overwrite: bool) -> None:
     if write is None:
         return
+    if write.exists() and file.exists() and write.samefile(file):
+        raise RequestError("is the file that is looked at", where=str(write), advice="name another file for the layout")
     if write.is_dir() or (write.exists() and not overwrite):
         raise RequestError(
             "this file is already there" if write.is_file() else "this is a folder",
@@ -135,6 +138,10 @@ def _unsure(found: Draft) -> list[str]:
 
 def _whole(text: str) -> str:
     return text.encode("utf-8", "surrogateescape").decode("utf-8", "replace")
+
+
+def _quietly(found: Draft) -> list[str]:
+    return [*(_unsure(found) if found.proposal.doubts else []), *_account(found)[1:]]
 
 
 def _account(found: Draft) -> list[str]:
