@@ -97,7 +97,7 @@ def _is_broken(rows: Sequence[Row], place: int, count: int, cell: int, width: in
 
 
 def _is_sound(rows: Sequence[Row], walk: Walk, decimal: str, is_whole: bool) -> bool:
-    if walk.covered < _COVERED or len(walk.heads) < 2:
+    if walk.covered < _COVERED or (len(walk.heads) < 2 and not _is_one_profile(rows, walk, is_whole)):
         return False
     heads = set(walk.heads)
     readings = [row for place, row in enumerate(rows) if place not in heads and place > walk.heads[0]]
@@ -113,6 +113,12 @@ def _is_sound(rows: Sequence[Row], walk: Walk, decimal: str, is_whole: bool) -> 
         return False  # the rows of a table, one of whose whole numbers happens to count
     numeric = share_of([cell for row in readings[:300] for cell in row], decimal, ("number", "missing"))
     return numeric > 0.8 and _depth_cell(rows, profiles, width, decimal) is not None
+
+
+def _is_one_profile(rows: Sequence[Row], walk: Walk, is_whole: bool) -> bool:
+    """Tell whether a file has one profile, of exactly the lines that it counts."""
+    count = int(rows[walk.heads[0]][walk.count])
+    return is_whole and count > 2 and walk.heads[0] + count + 1 == len(rows)
 
 
 def _usual_form(rows: Sequence[Row], decimal: str) -> tuple[str, ...]:
@@ -192,7 +198,7 @@ def _proposal(
         *_left(reading_names, depth, temperature),
     ]
     record: dict[str, Any] = {"names": names, "count": "count"}
-    begins = _begins([lines[head].text for head in walk.heads])
+    begins = _begins([rows[head][0] for head in walk.heads])
     if begins and not any(
         text.text.lstrip().startswith(begins) for place, text in enumerate(lines) if place not in set(walk.heads)
     ):
@@ -269,7 +275,7 @@ def _reading_columns(
 
 def _headings(header: Sequence[Line], width: int, depth: int) -> Iterator[list[str]]:
     for line in header:
-        text = line.text.strip(" \t#%!*;/:")
+        text = re.sub(r"^\w+:\s+", "", line.text.strip(" \t#%!*;/:"))
         for cells in (re.split(r"\s{2,}|[,;\t|]\s*", text), text.split()):
             if len(cells) == width and roles_of(cells[depth]) & {"depth", "pressure"}:
                 yield [cell.strip(' "') for cell in cells]
@@ -308,7 +314,7 @@ def common_beginning(texts: Sequence[str]) -> str:
     return first[:length] if length is not None else first[: min(len(first), len(last))]
 
 
-def _begins(texts: Sequence[str]) -> str:
-    """Return the word that all of some lines begin with, or an empty text."""
-    match = re.match(r"[^\W\d_]{2,}[^\d\s,;]*|[#%!*>$&@]+", common_beginning([text.lstrip() for text in texts]))
-    return match.group() if match is not None else ""
+def _begins(firsts: Sequence[str]) -> str:
+    """Return the word or sign that is the first cell of all records, or an empty text."""
+    word = firsts[0]
+    return word if set(firsts) == {word} and re.fullmatch(r"[^\W\d_]{2,}:?|[#%!*>$&@]+", word) else ""

@@ -26,6 +26,7 @@ _AFTER_SENSOR = re.compile(
     r"([-+]?[0-9]+(?:[.,][0-9]+)?)\s*(m|metres?|meters?|cm|ft|feet|dbar|db)(?![A-Za-z0-9])", re.IGNORECASE
 )
 WORTH_OF_PATTERN = 1.0
+_UNORDERED = {True: 0.5, False: 2.5}  # what depths that go up and down cost, with and without a word in the names
 
 
 @dataclass(frozen=True)
@@ -70,7 +71,7 @@ def named_depths(columns: Sequence[Column]) -> list[NamedDepths]:
 
 def _score(group: NamedDepths, columns: Sequence[Column]) -> float:
     return (
-        group.worth + 3.0 * len(group.depth) / len(columns) + (WORTH_OF_PATTERN if group.pattern is not None else 0.0)
+        group.worth + 6.0 * len(group.depth) / len(columns) + (WORTH_OF_PATTERN if group.pattern is not None else 0.0)
     )
 
 
@@ -78,6 +79,12 @@ def _are_depths(depth: dict[int, float]) -> bool:
     numbers = np.array(list(depth.values()))
     one_sided = bool((numbers >= 0).all() or (numbers <= 0).all())
     return one_sided and len(set(numbers.tolist())) == numbers.size and float(np.abs(numbers).max()) <= GREATEST_DEPTH
+
+
+def is_monotone(numbers: Sequence[float]) -> bool:
+    """Tell whether numbers rise or fall all the way."""
+    steps = np.diff(numbers)
+    return bool((steps > 0).all() or (steps < 0).all())
 
 
 # --------------------------------------------------------------------------------------------------------------
@@ -107,6 +114,8 @@ def _by_pattern(columns: Sequence[Column]) -> Iterator[NamedDepths]:
         units = _unit_behind(after) or depth_units(before)
         label = f"{before}{min(depth.values()):g}{after}"
         worth = _worth(before, after, [notes[place] for place in depth], [by_place[place] for place in depth])
+        ordered = is_monotone([depth[place] for place in sorted(depth)])
+        worth -= 0.0 if ordered else _UNORDERED[bool(words_of(before + after))]
         doubts = tuple(_numbered(depth, units, pattern))
         yield NamedDepths(depth, pattern, label, units, worth, doubts, bool(doubts))
 

@@ -170,7 +170,7 @@ def _of_table(sample: Sample, cutting: Cutting, depths: Sequence[float], progres
     yield from found
     if not found:
         sensors = sensor_columns(table, time)
-        named = ", ".join(repr(column.name) for column in sensors[:8]) or "none"
+        named = ", ".join(repr(table.names[column.place]) for column in sensors[:8]) or "none"
         progress.append(
             f"{cutting.in_words}: {len(table.columns)} columns, of which {len(sensors)} can be temperatures ({named}), "
             f"times from {np.datetime_as_string(np.nanmin(time.clock), unit='m')}; their depths are not in the file"

@@ -84,7 +84,7 @@ def build_table(sample: Sample, cutting: Cutting) -> Table | None:
     one_more = _ends_with_delimiter(header_rows, body, width, cutting)
     width -= one_more
     body = [row[:width] for row in body]
-    naming = _names(header, header_rows, comments, comment, body, width, cutting)
+    naming = _names(header, header_rows, comments, comment, body, kinds[:width], cutting)
     notes = _notes(header_rows, naming, width)
     columns = tuple(
         Column(
@@ -198,23 +198,26 @@ def _names(
     comments: Sequence[Line],
     comment: str,
     body: Sequence[Row],
-    width: int,
+    kinds: Sequence[Sort],
     cutting: Cutting,
 ) -> _Naming:
     """Return the names, and which header row holds them; 0 where the layout must give them."""
+    width = len(kinds)
     if not cutting.fixed:
-        scored = [(_name_score(row), place) for place, row in enumerate(rows) if len(row) == width]
+        scored = [(_name_score(row, kinds), place) for place, row in enumerate(rows) if len(row) == width]
         if scored and max(scored)[0] > 0:
-            place = max(scored, key=lambda each: each[0])[1]
+            place = max(scored)[1]
             return _Naming(place + 1, tuple(rows[place]))
     before = [line.text.lstrip()[len(comment) :] if line in comments else line.text for line in (*header, *comments)]
     options = [tuple(cells) for text in before for cells in _resplit(text, cutting, body, width) if len(cells) == width]
-    if options and _name_score(best := max(options, key=_name_score)) > 0:
+    scores = [_name_score(cells, kinds) for cells in options]
+    if options and max(scores) > 0:
+        best = options[scores.index(max(scores))]
         return _Naming(0, _unique(best))
     return _Naming(0, tuple(f"column_{place + 1}" for place in range(width)), is_of_file=False)
 
 
-def _name_score(cells: Sequence[str]) -> float:
+def _name_score(cells: Sequence[str], kinds: Sequence[Sort]) -> float:
     """Return how much the cells of a row look like names of columns."""
     words = [cell for cell in cells if re.search(r"[^\W\d_]", cell)]
     roles = [roles_of(cell) for cell in cells]
@@ -227,7 +230,29 @@ def _name_score(cells: Sequence[str]) -> float:
     headed = 0.5 if words and only_numbers == len(cells) - len(words) else 0.0
     if not words:
         return 0.0
+    numeric = [cell for cell, kind in zip(cells, kinds, strict=True) if kind == "number"]
+    telling = [cell for cell in numeric if roles_of(cell) or re.search(r"\d", cell)]
+    headed += 5.0 * (len(telling) / len(numeric) - 1.0) if numeric else 0.0
+    headed += _longest_order(cells)
     return with_role + distinct + 0.5 * numbered - 1.5 * units + stamped + headed
+
+
+def _longest_order(cells: Sequence[str]) -> int:
+    """Return how many neighbouring cells have rising or falling numbers in them; 0 for fewer than three."""
+    found = [re.findall(r"[0-9]+(?:\.[0-9]+)?", cell) for cell in cells]
+    numbers = [float(each[-1]) if each else None for each in found]
+    longest, length, before, direction = 0, 0, None, 0.0
+    for number in numbers:
+        step = 0.0 if number is None or before is None else number - before
+        if number is None:
+            length = 0
+        elif step and (length < 2 or step * direction > 0):
+            length, direction = max(length, 1) + 1, step
+        else:
+            length = 1
+        before = number
+        longest = max(longest, length)
+    return longest if longest > 2 else 0
 
 
 def _resplit(text: str, cutting: Cutting, body: Sequence[Row], width: int) -> Iterator[list[str]]:

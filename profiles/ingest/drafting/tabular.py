@@ -88,7 +88,7 @@ def _found(table: Table, time: TimeGuess) -> list[tuple[float, Found]]:
     for group in depth_groups(table, time.places):
         if group.worth > -1.0:
             share = len(group.depth) / len(table.columns)
-            sure = 3.0 + group.worth + 3.0 * share + (0.5 if group.pattern is not None else 0.0)
+            sure = 3.0 + group.worth + 6.0 * share + (0.5 if group.pattern is not None else 0.0)
             ways.append((1.0 if group.is_numbering else sure, _of_names(table, group)))
     ways += [(2.8, way) for way in _of_header_row(table, time)]
     columns = sensor_columns(table, time)
@@ -157,7 +157,8 @@ def _of_prose(table: Table, columns: Sequence[Column]) -> Iterator[Found]:
     """Yield the depths that lines of the header list, sensor by sensor or in their order."""
     if not columns:
         return
-    by_name = depths_by_name(table.prose, [column.name for column in columns]) if len(columns) > 1 else {}
+    named = len(columns) > 1 and all(column.name for column in columns)
+    by_name = depths_by_name(table.prose, [column.name for column in columns]) if named else {}
     if by_name:
         yield Found({column.place: by_name[column.name] for column in columns}, {"columns": None}, None)
     for numbers, line in depth_lists(table.prose, len(columns)):
@@ -530,11 +531,28 @@ def _uses(table: Table, time: TimeGuess, sensors: Found, quality: Sequence[int])
 
 
 def _unused(table: Table, used: set[int]) -> list[Doubt]:
-    left = [name for place, name in enumerate(table.names) if place not in used]
-    if not left:
-        return []
-    shown = ", ".join(repr(name) for name in left[:8]) + (f" and {len(left) - 8} more" if len(left) > 8 else "")
-    return [Doubt("columns that are not used", shown, "they seem to be neither time, depth, temperature nor marks")]
+    """Return doubts about the columns that are left, those apart that are called temperatures."""
+    left = [column for column in table.columns if column.place not in used]
+    best = max((temperature_worth(table.columns[place].label) for place in used), default=0.0)
+    like = [
+        column
+        for column in left
+        if column.is_numeric and plausible([column]) > 0 and temperature_worth(column.label) >= max(best - 0.6, 1.0)
+    ]
+    rest = [column for column in left if column not in like]
+    doubts = []
+    if like:
+        what = "they are called temperatures without a depth; if they are of the chain, name them in [depth] columns"
+        doubts.append(Doubt("temperatures that are not used", _listed(table, like), what))
+    if rest:
+        what = "they seem to be neither time, depth, temperature nor marks"
+        doubts.append(Doubt("columns that are not used", _listed(table, rest), what))
+    return doubts
+
+
+def _listed(table: Table, columns: Sequence[Column]) -> str:
+    shown = ", ".join(repr(table.names[column.place]) for column in columns[:8])
+    return shown + (f" and {len(columns) - 8} more" if len(columns) > 8 else "")
 
 
 def _header(table: Table) -> tuple[tuple[Any, str], ...]:

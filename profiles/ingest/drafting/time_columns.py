@@ -346,7 +346,8 @@ def _can_be(column: Column, part: str) -> bool:
     good = (column.values >= least) & (column.values <= most)
     if good.mean() < _READABLE:
         return False
-    if part == "hour_minute_second" and column.values.max() < 2400 and _named_so(column, part) <= 0:
+    least_most = {"hour_minute_second": 2400, "hour_minute": 60}.get(part, 0)
+    if column.values.max() < least_most and _named_so(column, part) <= 0:
         return False
     if part in {"year", "month", "hour_minute", "hour_minute_second", "year_month_day"} and not column.is_whole:
         return bool((column.values % 1 == 0).mean() > _READABLE)
