@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from profiles.errors import DataError
-from profiles.ingest.layout import BlockedLayout
+from profiles.ingest.layout import WHITESPACE, BlockedLayout
 from profiles.ingest.lines import Lines, past_header
 from profiles.ingest.record import Record, Tally
 from profiles.ingest.rows import Columns, Understanding
@@ -121,7 +121,7 @@ def _headed(lines: Lines, where: str, layout: BlockedLayout) -> Iterator[Header 
     if len(head) < length:
         yield Header(head, None, f"the header of a block has {length} lines; these are {len(head)}")
         return
-    cells = _depth_cells(split_line(head.texts()[layout.depth.row - 1], layout), layout)
+    cells = _depth_cells(head.texts()[layout.depth.row - 1], layout)
     try:
         depth = depths_of_cells(cells, layout.depth.pattern or "{depth}", layout.depth, where)
     except DataError as error:
@@ -131,9 +131,11 @@ def _headed(lines: Lines, where: str, layout: BlockedLayout) -> Iterator[Header 
     yield rows
 
 
-def _depth_cells(cells: list[str], layout: BlockedLayout) -> list[str]:
+def _depth_cells(text: str, layout: BlockedLayout) -> list[str]:
     """Return the cells of a header line that are depths; behind them it may name the cells behind the readings."""
-    cells, most = cells[layout.depth.skip :], len(layout.block.after)
+    delimiter = " " if layout.delimiter == WHITESPACE else layout.delimiter
+    apart = text.translate(dict.fromkeys(map(ord, layout.depth.between), delimiter))
+    cells, most = split_line(apart, layout)[layout.depth.skip :], len(layout.block.after)
     named = most < len(cells) and not any(is_depth(cell, layout.depth.pattern) for cell in cells[len(cells) - most :])
     return cells[: len(cells) - most] if named else cells
 

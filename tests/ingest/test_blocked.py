@@ -184,3 +184,10 @@ def test_rows_under_a_header_whose_last_depth_is_damaged_are_quarantined(write, 
     np.testing.assert_array_equal(
         delivery.chain["temperature"].sel(depth=[1, 10, 40]), np.float32([[29.0, 28.0, 15.0]])
     )
+
+
+def test_depths_may_stand_between_other_marks_than_the_readings(write):
+    layout = BlockedLayout.model_validate(LAYOUT | {"depth": LAYOUT["depth"] | {"between": ",:"}})
+    marked = TWO_BLOCKS.replace("at -1m -25m", "at: -1m, -25m").replace("at -10m -1m -40m", "at: -10m, -1m,-40m")
+    plain = BlockedLayout.model_validate(LAYOUT)
+    assert read(write(marked), layout).chain.identical(read(write(TWO_BLOCKS), plain).chain)

@@ -947,6 +947,119 @@ def sensor_after_sensor():
     return Case(lines(header, rows).encode(), times, depths, values, "long", certain=("units",))
 
 
+@case
+def blocks_with_commas_between_the_depths_only():
+    return blocked(
+        lambda number, depths: [f"Deployment {number}", "Depths: " + ", ".join(map(str, depths))],
+        lambda time, row: f"{time:%Y-%m-%d %H:%M} " + " ".join(cells(row, missing="-9.99")),
+    )
+
+
+@case
+def blocks_that_count_their_depths():
+    return blocked(
+        lambda number, depths: ["SENSORS " + " ".join(map(str, [len(depths), *depths]))],
+        lambda time, row: f"{time:%Y%m%d} {time:%H%M} " + " ".join(cells(row, missing="-9.99")),
+        sets=((5.0, 10.0, 25.0), (5.0, 20.0, 25.0, 60.0), (3.0, 20.0)),
+    )
+
+
+@case
+def an_archive_of_one_block():
+    times, depths = stamps(30, 1440), [1.0, 25.0, 50.0, 75.0]
+    values = with_gaps(ocean(times, depths))
+    header = [
+        " Site: 0N 165E",
+        " Units: Temperature (C), F6.2, Missing -9.99",
+        " Time: 2100 to 0200 (index 1 to 30)",
+        " Depth (M):     1    25    50    75  QUALITY SOURCE",
+        " YYYYMMDD HHMM TEMP. TEMP. TEMP. TEMP.",
+    ]
+    rows = [
+        f" {time:%Y%m%d %H%M} " + " ".join(f"{text:>6}" for text in cells(row, missing="-9.99")) + " 2222 5555"
+        for time, row in zip(times, values, strict=True)
+    ]
+    return Case(lines(header, rows).encode(), times, depths, values, "wide")
+
+
+@case
+def profiles_with_a_place_and_a_date_in_parts():
+    return counted(
+        lambda time, count: (
+            f"{count:5d} {46.123:8.3f} {8.7:8.3f} {time.year} {time.month:2d} {time.day:2d} {time.hour:2d}"
+        ),
+        lambda depth, value: f"{depth:8.1f}{value:8.3f}",
+        before=["# Each profile begins with levels, latitude, longitude, date", "# then: depth(m), temperature(degC)"],
+        certain=("units of depth", "units of temperature"),
+    )
+
+
+@case
+def depth_row_above_the_names():
+    return beside(
+        "Depth (m),0.5,1.0,2.0,4.0\nDate/Time,Temp (C),Temp (C),Temp (C),Temp (C)",
+        lambda time, row: f"{time:%m/%d/%Y %H:%M}," + ",".join(cells(row, missing="")),
+        depths=(0.5, 1.0, 2.0, 4.0),
+    )
+
+
+@case
+def depths_in_the_description_of_channels():
+    header = [
+        '"Buoy","LOG 7"',
+        '"Date and time","Channel 1","Channel 2","Channel 3","Channel 4"',
+        '"dd/mm/yyyy hh:mm:ss","°C","°C","°C","°C"',
+        '"","Water temperature 1 m","Water temperature 5 m","Water temperature 10 m","Water temperature 20 m"',
+    ]
+    return beside(
+        "\n".join(header),
+        lambda time, row: f'"{time:%d/%m/%Y %H:%M:%S}",' + ",".join(f'"{text}"' for text in cells(row, missing="")),
+        certain=("units",),
+    )
+
+
+@case
+def three_digits_and_two_decimals_as_a_line():
+    return beside(
+        "Date\tTime\tTEMP_000_50\tTEMP_001_00\tTEMP_010_00\tTEMP_020_00",
+        lambda time, row: f"{time:%d-%m-%Y}\t{time:%H:%M}\t" + "\t".join(cells(row, missing="")),
+        depths=(0.5, 1.0, 10.0, 20.0),
+        unsure=("depths",),
+    )
+
+
+@case
+def a_temperature_without_a_depth_beside():
+    return beside(
+        "timestamp\tTemp_surface\tTemp_5m\tTemp_10m\tTemp_20m",
+        lambda time, row: f"{time:%Y-%m-%d %H:%M:%S}\t27.11\t" + "\t".join(cells(row, missing="")),
+        depths=(5.0, 10.0, 20.0),
+        unsure=("temperatures that are not used: 'Temp_surface'",),
+    )
+
+
+@case
+def year_day_and_hours_with_hundreds():
+    return beside(
+        "year4\tdaynum\thour\twtemp_1\twtemp_5\twtemp_10\twtemp_20",
+        lambda time, row: (
+            f"{time.year}\t{int(f'{time:%j}')}\t{time.hour * 100}\t" + "\t".join(cells(row, missing="NA"))
+        ),
+        unsure=("stamp",),
+    )
+
+
+@case
+def long_with_a_clock_of_four_digits_and_sparse_marks():
+    return long(
+        "sampledate\tsampletime\twtemp\tdepth\tflag_wtemp",
+        lambda time, depth, value: (
+            f"{time:%Y-%m-%d}\t{time:%H%M}\t{cells([value], missing='')[0]}\t{depth}\t{'C' if np.isnan(value) else ''}"
+        ),
+        unsure=("quality marks",),
+    )
+
+
 # --------------------------------------------------------------------------------------------------------------
 # The claim
 

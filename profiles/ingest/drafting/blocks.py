@@ -21,12 +21,14 @@ from profiles.ingest.drafting.sample import Line, Sample
 from profiles.ingest.drafting.table import comment_mark
 from profiles.ingest.drafting.time_columns import time_guesses
 from profiles.ingest.drafting.words import depth_units, roles_of
-from profiles.ingest.layout.parts import DEPTH_MARK
+from profiles.ingest.layout.parts import DEPTH_MARK, WHITESPACE
 
 Row = list[str]
 
 _LEADING = re.compile(r"\s*([^\d+\-.\s]*)")
 _DEPTH_CELL = re.compile(r"([^\d+\-]*?)([+-]?[0-9]+(?:[.,][0-9]+)?)([^\d]*)")
+_BETWEEN = ("", ",", ";", ",;")  # what may stand between depths beside the delimiter of the rows
+_REGULAR = 0.8  # share of the blocks that must be alike (ours)
 _MOST_BEHIND = 3  # cells of the line of depths behind the last of them
 
 
@@ -47,6 +49,7 @@ class Depths:
     pattern: str
     counts: tuple[int, ...]
     beside: int
+    between: str = ""
 
 
 def blocked_proposals(sample: Sample, cutting: Cutting) -> list[Proposal]:
@@ -86,7 +89,7 @@ def find_blocks(lines: Sequence[Line], cutting: Cutting) -> tuple[list[Block], l
     length = Counter(stop - start for start, stop in runs[1:]).most_common(1)[0][0]
     heads = [(stop - length, stop) for start, stop in runs if stop - start >= length]
     regular = sum(stop - start == length for start, stop in runs[1:])
-    if len(heads) < 2 or regular < 0.8 * len(runs[1:]):
+    if len(heads) < 2 or regular < _REGULAR * len(runs[1:]):
         return [], []
     rows = cutting.cut([line.text for line in lines])
     ends = [*(start for start, _ in heads[1:]), len(lines)]
@@ -102,18 +105,35 @@ def _leading(text: str) -> str:
 
 
 def find_depths(blocks: Sequence[Block], cutting: Cutting) -> Depths | None:
-    """Return where the depths stand: the line whose numbers grow and shrink with the rows."""
-    for row in range(len(blocks[0].header)):
-        found = [_depth_cells(cutting.cut([block.header[row].text])[0]) for block in blocks]
-        known = [each for each in found if each is not None]
-        if len(known) < len(found) or len({(skip, pattern) for skip, pattern, _ in known}) != 1:
-            continue
-        counts = [count for _, _, count in known]
-        beside = [_width(block) - count for block, count in zip(blocks, counts, strict=True)]
-        usual, agreeing = Counter(beside).most_common(1)[0]
-        if usual >= 1 and agreeing >= 0.8 * len(beside):
-            return Depths(row + 1, known[0][0], known[0][1], tuple(counts), usual)
-    return None
+    """Return where the depths stand: the line whose numbers grow and shrink with the rows; the longest of such."""
+    found = [
+        depths
+        for row in range(len(blocks[0].header))
+        for between in _BETWEEN
+        if (depths := _depths_of(row, between, blocks, cutting)) is not None
+    ]
+    return max(found, key=lambda depths: sum(depths.counts), default=None)
+
+
+def _depths_of(row: int, between: str, blocks: Sequence[Block], cutting: Cutting) -> Depths | None:
+    """Return the depths in one line of each header; None where they do not fit the rows."""
+    delimiter = " " if cutting.delimiter == WHITESPACE else cutting.delimiter
+    if delimiter in between:
+        return None
+    apart = dict.fromkeys(map(ord, between), delimiter)
+    cells = [cutting.cut([block.header[row].text.translate(apart)])[0] for block in blocks]
+    found = [_depth_cells(each) for each in cells]
+    known = [each for each in found if each is not None]
+    if len(known) < len(found):
+        return None
+    if all(each[skip] == str(count - 1) for each, (skip, _, count) in zip(cells, known, strict=True)):
+        known = [(skip + 1, pattern, count - 1) for skip, pattern, count in known]  # the first counts the others
+    counts = tuple(count for _, _, count in known)
+    beside = [_width(block) - count for block, count in zip(blocks, counts, strict=True)]
+    usual, agreeing = Counter(beside).most_common(1)[0]
+    if min(counts) < 1 or usual < 1 or agreeing < _REGULAR * len(beside) or len({each[:2] for each in known}) != 1:
+        return None
+    return Depths(row + 1, known[0][0], known[0][1], counts, usual, between)
 
 
 def _width(block: Block) -> int:
@@ -255,6 +275,8 @@ def _depth_keys(depths: Depths, blocks: Sequence[Block], hints: str) -> tuple[di
     keys: dict[str, Any] = {"row": depths.row, "skip": depths.skip}
     if depths.pattern != DEPTH_MARK:
         keys["pattern"] = depths.pattern
+    if depths.between:
+        keys["between"] = depths.between
     keys |= {"units": units, "positive": "down"}
     doubts = [] if stated else [Doubt("units of depth", units, "the header of the blocks does not state them")]
     if re.search(r"(?<![\w.])-[0-9]", line):

@@ -33,6 +33,7 @@ from profiles.ingest.wording import printable
 SHOWN_ROWS = 3  # at each end of the file
 _MOST_CUTTINGS = 3
 _LEAST_KEPT = 0.5  # of the rows; a layout that keeps fewer is not the file's (ours)
+_DOUBTFUL_SHARE = 0.02  # of the rows in quarantine, above which the draft is doubted (ours)
 _NETCDF = (b"CDF\x01", b"CDF\x02", b"CDF\x05", b"\x89HDF")
 
 
@@ -237,6 +238,10 @@ def _finished(file: Path, packing: str, encoding: str, lines: int, proposal: Pro
     if is_pressure(proposal.content.get("depth", {}).get("units", "m")):
         why = "the latitude that turns pressure into depth is no part of a layout; the configuration states it"
         proposal = replace(proposal, doubts=(*proposal.doubts, Doubt("depths shown here", "those at the equator", why)))
+    if delivery.rows_quarantined > _DOUBTFUL_SHARE * delivery.rows_read:
+        why = "the layout does not fit them, or they are damaged; the reasons stand with the account"
+        lost = f"{delivery.rows_quarantined} of {delivery.rows_read} go to quarantine"
+        proposal = replace(proposal, doubts=(*proposal.doubts, Doubt("rows that are not understood", lost, why)))
     return Draft(
         file,
         packing,

@@ -62,6 +62,7 @@ class BlockDepth(DepthScale):
     row: Count = Field(1, description="which line of the block's header holds the depths")
     skip: Annotated[int, Field(strict=True, ge=0)] = Field(1, description="cells of that line before the first depth")
     pattern: Pattern = Field("{depth}", description="how a depth is written there, {depth} for the number")
+    between: str = Field("", description="characters that stand between the cells of that line, beside the delimiter")
 
 
 class BlockHeader(Settings):
