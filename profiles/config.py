@@ -228,6 +228,53 @@ class SectionSettings(Settings):
 
 
 # --------------------------------------------------------------------------------------------------------------
+# [precursor]
+
+
+class HindcastSettings(Settings):
+    """[precursor.hindcast]: how forecasts are made, verified out of sample and, where they show skill, issued."""
+
+    longest_lead: Annotated[int, Field(strict=True, ge=1, le=24)] = Field(
+        12, description="months from the last month known to the month forecast"
+    )
+    scheme: Literal["years_out", "expanding"] = Field(
+        "years_out",
+        description="years_out: each year is forecast from all others but those within the longest lead of it; "
+        "expanding: from earlier ones alone",
+    )
+    threshold: Positive = Field(
+        0.5, description="units of the index; an anomaly beyond it is warm or cold (the published oceanic index: 0.5 °C)"
+    )
+    least_training_years: Annotated[int, Field(strict=True, ge=6)] = Field(
+        8, description="years; with fewer left to fit on, there is no hindcast (ours)"
+    )
+    shortest_outlook_record: Annotated[int, Field(strict=True, ge=10)] = Field(
+        15, description="years; a shorter record gives no outlook, whatever its hindcast says (ours)"
+    )
+    common_weight: Positive = Field(
+        10.0, description="months of data that weigh as much as the belief that a predictor says nothing (ours)"
+    )
+    seasonal_weight: Positive = Field(
+        100.0, description="months of data that weigh as much as the belief that its coefficient has no season (ours)"
+    )
+    propagator_months: Count = Field(
+        3, description="months over which the recharge oscillator is fitted; more: less damped by noise (ours)"
+    )
+    spread_blocks: Annotated[int, Field(strict=True, ge=4)] = Field(
+        10, description="parts of the training months that are left out in turn to learn the spread (ours)"
+    )
+    block_years: Count = Field(
+        3, description="years that stay together where the error of a score is estimated; an event and its return (ours)"
+    )
+
+
+class PrecursorSettings(Settings):
+    """[precursor]: volume, western volume and tilt as precursors of an index."""
+
+    hindcast: HindcastSettings = HindcastSettings()
+
+
+# --------------------------------------------------------------------------------------------------------------
 # The array
 
 
@@ -272,6 +319,7 @@ class Config(Settings):
     qc: QualityControlSettings = QualityControlSettings()
     column: ColumnSettings = ColumnSettings()
     section: SectionSettings = SectionSettings()
+    precursor: PrecursorSettings = PrecursorSettings()
 
     def resolve(self, path: Path) -> Path:
         """Return ``path`` as seen from the configuration file's folder."""
@@ -287,7 +335,7 @@ _COMMENT_WIDTH = 110
 
 def defaults_text() -> str:
     """Return ``config/defaults.toml``: every setting that has a default, its description as a comment above it."""
-    tables = {name: Config.model_fields[name].default for name in ("qc", "column", "section")}
+    tables = {name: Config.model_fields[name].default for name in ("qc", "column", "section", "precursor")}
     return "\n".join([_comment(_HEADER), *(_table_text(name, table) for name, table in tables.items())])
 
 

@@ -151,7 +151,7 @@ def _mooring_plates(mooring_figures: Mapping[str, Path], data_return: pd.DataFra
 
 def _settings(config: Config) -> Iterator[tuple[str, str]]:
     """Give every threshold of a configuration by its dotted name."""
-    for table in ("qc", "column", "section"):
+    for table in ("qc", "column", "section", "precursor"):
         yield from _dotted(table, getattr(config, table).model_dump(mode="json"))
 
 
