@@ -84,6 +84,16 @@ def stationary_covariance(matrix: Array, noise: Array) -> Array:
     return np.asarray(flat.reshape(noise.shape))
 
 
+def real_power(matrix: Array, power: float) -> Array:
+    """Return the real part of M to a power, of a diagonalisable M.
+
+    For complex eigenvalues, and positive ones, it is real already; what a negative eigenvalue, a state that turns over
+    within one step, lasts for is noise.
+    """
+    roots, axes = np.linalg.eig(matrix.astype(np.complex128))
+    return np.real((axes * roots**power) @ np.linalg.inv(axes))
+
+
 def small_sample_bias(matrix: Array, noise: Array, samples: float) -> Array:
     """Return the expected error of the least-squares M, to the first order in 1/samples; any leading dims.
 
