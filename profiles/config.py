@@ -243,7 +243,8 @@ class HindcastSettings(Settings):
         "expanding: from earlier ones alone",
     )
     threshold: Positive = Field(
-        0.5, description="units of the index; an anomaly beyond it is warm or cold (the published oceanic index: 0.5 °C)"
+        0.5,
+        description="units of the index; an anomaly beyond it is warm or cold (the published oceanic index: 0.5 °C)",
     )
     least_training_years: Annotated[int, Field(strict=True, ge=6)] = Field(
         8, description="years; with fewer left to fit on, there is no hindcast (ours)"
@@ -264,13 +265,55 @@ class HindcastSettings(Settings):
         10, description="parts of the training months that are left out in turn to learn the spread (ours)"
     )
     block_years: Count = Field(
-        3, description="years that stay together where the error of a score is estimated; an event and its return (ours)"
+        3,
+        description="years that stay together where the error of a score is estimated; an event and its return (ours)",
+    )
+
+
+class LeadLagSettings(Settings):
+    """[precursor.lead_lag]: correlation and regression at each lead, and their significance."""
+
+    longest_lead: Annotated[int, Field(strict=True, ge=1, le=60)] = Field(
+        24, description="months; leads from minus this to plus this are tried"
+    )
+    level: Annotated[Number, Field(gt=0.5, lt=1.0)] = Field(
+        0.95, description="of every interval; what is significant is so at one minus this"
+    )
+    least_effective: Annotated[Number, Field(gt=3.0)] = Field(
+        6.0, description="effective months without which there is no correlation (ours)"
+    )
+    least_years: Annotated[int, Field(strict=True, ge=4)] = Field(
+        10, description="years without which a calendar month has no correlation of its own (ours)"
+    )
+    window_months: Annotated[int, Field(strict=True, ge=60)] = Field(
+        180, description="months; length of the moving windows (15 years: three or four events, ours)"
+    )
+    window_step: Count = Field(12, description="months from one window to the next (ours)")
+    draws: Annotated[int, Field(strict=True, ge=100)] = Field(
+        1000, description="resampled records, and simulated pairs of independent series (common practice, no source)"
+    )
+    seed: Annotated[int, Field(strict=True, ge=0)] = Field(
+        1997, description="of the random numbers: the same series give the same figures"
+    )
+
+
+class EventSettings(Settings):
+    """[precursor.events]: what a warm or cold event is."""
+
+    running_mean: Count = Field(3, description="months, centred (the published oceanic index: 3; Trenberth 1997: 5)")
+    threshold: Positive = Field(
+        0.5, description="units of the index (the published oceanic index: 0.5 °C; Trenberth 1997: 0.4 °C)"
+    )
+    persistence: Count = Field(
+        5, description="months in a row beyond it (the published oceanic index: 5; Trenberth 1997: 6)"
     )
 
 
 class PrecursorSettings(Settings):
     """[precursor]: volume, western volume and tilt as precursors of an index."""
 
+    lead_lag: LeadLagSettings = LeadLagSettings()
+    events: EventSettings = EventSettings()
     hindcast: HindcastSettings = HindcastSettings()
 
 
