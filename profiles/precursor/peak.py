@@ -10,6 +10,8 @@ from numpy.typing import NDArray
 
 Array = NDArray[np.float64]
 
+RESOLUTION = 0.25  # months; quantiles alone hold a planted lead in 91 %, with this to either side in 97 to 99 % (ours)
+
 
 @dataclass(frozen=True)
 class Peak:
@@ -65,8 +67,9 @@ def peak(correlation: Array, resampled: Array, leads: NDArray[Any], level: float
         Of resampled records.
     leads : ndarray, shape (lead,)
     level : float
-        Of the interval, 0 to 1; its ends are quantiles of the leads at which the resampled records peak. They look for
-        a peak of the same sign over all leads, so that another one nearly as strong widens the interval.
+        Of the interval, 0 to 1; its ends are quantiles of the leads at which the resampled records peak, and a quarter
+        of a month to either side: monthly means tell no more. They look for a peak of the same sign over all leads, so
+        that another one nearly as strong widens the interval.
     """
     if not np.isfinite(correlation).any():
         return Peak(np.nan, np.nan, np.nan, np.nan)
@@ -75,4 +78,9 @@ def peak(correlation: Array, resampled: Array, leads: NDArray[Any], level: float
     found = strongest_lead(sign * resampled, leads)
     tail = 50.0 * (1.0 - level)
     lower, upper = np.nanpercentile(found, [tail, 100.0 - tail]) if np.isfinite(found).any() else (np.nan, np.nan)
-    return Peak(float(strongest_lead(sign * correlation, leads)), float(lower), float(upper), float(correlation[at]))
+    return Peak(
+        lead=float(strongest_lead(sign * correlation, leads)),
+        lower=max(float(lower) - RESOLUTION, float(leads[0])),
+        upper=min(float(upper) + RESOLUTION, float(leads[-1])),
+        correlation=float(correlation[at]),
+    )
