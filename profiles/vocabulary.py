@@ -293,7 +293,6 @@ _SERIES_VARIABLES = [
     Variable("pressure_difference_index", ("time",), "sea-level pressure of the eastern minus the western Pacific, standardised",
              "1", None, "float64"),
     Variable("pressure_difference_index_anomaly", ("time",), "anomaly of pressure_difference_index", "1", None, "float64"),
-    Variable("zonal_wind_index", ("time",), "wind of the equatorial Pacific, eastward", None, None, "float64"),
     Variable("warm_water_volume_total", ("time",), "volume of water above the isotherm, 5S-5N, 120E-80W", "m3", None,
              "float64"),
     Variable("warm_water_volume_west", ("time",), "volume of water above the isotherm, 5S-5N, 120E-155W", "m3", None,
@@ -305,8 +304,8 @@ _SERIES_VARIABLES = [
     Variable("window_first", ("window",), "first month of the moving window", None, None, "float64", "coordinate"),
     Variable("window_last", ("window",), "last month of the moving window", None, None, "float64", "coordinate"),
     Variable("regression_slope_by_sign", ("sign", "lead"),
-             "slope of the target on positive and on negative anomalies of the predictor", None, None, "float64"),
-    Variable("regression_slope_error_by_sign", ("sign", "lead"), "standard error of regression_slope_by_sign", None, None,
+             "slope of the target on positive and on negative anomalies of the predictor", "1", None, "float64"),
+    Variable("regression_slope_error_by_sign", ("sign", "lead"), "standard error of regression_slope_by_sign", "1", None,
              "float64", _QUALITY),
     Variable("bootstrap_lower", _LEAD, "lower end of the correlation's interval by the block bootstrap, shown beside", "1",
              None, "float64", _QUALITY),
@@ -344,8 +343,8 @@ def _lead_lag_variables() -> list[Variable]:
         "correlation": ("correlation of predictor and target", "float64", "physicalMeasurement", "1"),
         "correlation_lower": ("lower end of the interval of correlation, effective size", "float64", _QUALITY, "1"),
         "correlation_upper": ("upper end of the interval of correlation, effective size", "float64", _QUALITY, "1"),
-        "regression_slope": ("slope of the target on the predictor", "float64", "physicalMeasurement", None),
-        "regression_slope_error": ("standard error of regression_slope, effective size", "float64", _QUALITY, None),
+        "regression_slope": ("slope of the target on the predictor", "float64", "physicalMeasurement", "1"),
+        "regression_slope_error": ("standard error of regression_slope, effective size", "float64", _QUALITY, "1"),
         "pair_count": ("number of months with both values", "int32", _QUALITY, "1"),
         "effective_size": ("effective number of independent months", "float64", _QUALITY, "1"),
         "deciding_p_value": ("p-value of the t-test with the effective size, which decides", "float64", _QUALITY, "1"),
@@ -369,9 +368,9 @@ def _lead_lag_variables() -> list[Variable]:
             for name, (text, dtype, units) in field.items()
         ),
         *(
-            Variable(f"peak_lead{end}{suffix}", dims, f"months of lead at which the correlation is strongest{text}", "1",
+            Variable(f"peak_lead{end}{suffix}", dims, f"months of lead at which the correlation is strongest{text}{where}", "1",
                      None, "float64")
-            for suffix, dims in (("", ()), ("_in_window", ("window",)))
+            for suffix, dims, where in (("", (), ""), ("_in_window", ("window",), ", in moving windows"))
             for end, text in ends.items()
         ),
     ]  # fmt: skip

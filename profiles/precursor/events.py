@@ -93,11 +93,11 @@ def _labelled(rows: Sequence[Mapping[str, Any]], index: xr.DataArray, settings: 
             "whole": ("event", column("whole", "int8")),
         }
     )
+    units = {"units": index.attrs.get("units", "1")}
     rule = (
-        f"mean of {settings.running_mean} months {settings.threshold:g} {index.attrs.get('units', '')} or more from zero "
+        f"mean of {settings.running_mean} months {settings.threshold:g} {units['units']} or more from zero "
         f"in {settings.persistence} months or more in a row"
     )
-    units = {"units": index.attrs.get("units", "1")}
     return describe(events.assign_attrs(rule=rule, index=str(index.name)), peak_value=units)
 
 
@@ -155,9 +155,9 @@ def event_composites(
     Returns
     -------
     xarray.Dataset
-        On (predictor, kind, lead): ``composite``, the mean over events, ``composite_error``, its standard error from the
-        spread between events (NaN for fewer than three), and ``composite_count``. Few events make a rough error: with n
-        of them an interval wants Student's t of n - 1 degrees of freedom. Kinds are named by ``composite_kind``.
+        On (predictor, composite_kind, lead): ``composite``, the mean over events, ``composite_error``, its standard
+        error from the spread between events (NaN for fewer than three), and ``composite_count``. Few events make a rough
+        error: with n of them an interval wants Student's t of n - 1 degrees of freedom.
 
     Raises
     ------
