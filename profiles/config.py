@@ -277,7 +277,7 @@ class LeadLagSettings(Settings):
         24, description="months; leads from minus this to plus this are tried"
     )
     level: Annotated[Number, Field(gt=0.5, lt=1.0)] = Field(
-        0.95, description="of every interval; what is significant is so at one minus this"
+        0.95, description="of every interval; what is significant is so at one minus this (common practice, no source)"
     )
     least_effective: Annotated[Number, Field(gt=3.0)] = Field(
         6.0, description="effective months without which there is no correlation (ours)"

@@ -127,7 +127,8 @@ def test_a_variable_with_the_standard_name_depth_is_positive_down(variable: Vari
 def test_a_temperature_says_whether_it_is_on_the_scale_or_a_difference(variable: Variable) -> None:
     # CF-1.11, section 3.1.2: units_metadata for temperatures in degrees Celsius.
     is_error = (variable.standard_name or "").endswith(" standard_error")
-    expected = "temperature: difference" if is_error else "temperature: on_scale"
+    is_anomaly = variable.name in ("surface_temperature_index_anomaly", "peak_value")
+    expected = "temperature: difference" if is_error or is_anomaly else "temperature: on_scale"
     assert variable.extra["units_metadata"] == expected
 
 

@@ -156,8 +156,8 @@ def event_composites(
     -------
     xarray.Dataset
         On (predictor, composite_kind, lead): ``composite``, the mean over events, ``composite_error``, its standard
-        error from the spread between events (NaN for fewer than three), and ``composite_count``. Few events make a rough
-        error: with n of them an interval wants Student's t of n - 1 degrees of freedom.
+        error from the spread between events (NaN for fewer than three), and ``composite_count``. Few events make a
+        rough error: with n of them an interval wants Student's t of n - 1 degrees of freedom.
 
     Raises
     ------
