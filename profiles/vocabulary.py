@@ -314,6 +314,7 @@ _SERIES_VARIABLES = [
     Variable("bootstrap_p_value", _LEAD, "p-value of the block bootstrap, shown beside the one that decides", "1", None,
              "float64", _QUALITY),
     Variable("peak_correlation", (), "correlation at its strongest, of either sign", "1", None, "float64"),
+    Variable("precursor_correlation", (), "correlation at its strongest where the predictor comes first", "1", None, "float64"),
     Variable("kind", _EVENT, "warm or cold", None, None, "str"),
     Variable("onset", _EVENT, "first month beyond the threshold", None, None, "float64"),
     Variable("end", _EVENT, "last month beyond the threshold, or of the record", None, None, "float64"),
@@ -368,9 +369,14 @@ def _lead_lag_variables() -> list[Variable]:
             for name, (text, dtype, units) in field.items()
         ),
         *(
-            Variable(f"peak_lead{end}{suffix}", dims, f"months of lead at which the correlation is strongest{text}{where}", "1",
-                     None, "float64")
-            for suffix, dims, where in (("", (), ""), ("_in_window", ("window",), ", in moving windows"))
+            Variable(f"{name}{end}", dims, f"months of lead at which the correlation is strongest{where}{text}", "1", None,
+                     "float64")
+            for name, dims, where in (("peak_lead", (), ""), ("precursor_lead", (), ", predictor first"))
+            for end, text in ends.items()
+        ),
+        *(
+            Variable(f"peak_lead{end}_in_window", ("window",),
+                     f"months of lead at which the correlation is strongest in the window{text}", "1", None, "float64")
             for end, text in ends.items()
         ),
     ]  # fmt: skip

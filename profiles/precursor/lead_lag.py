@@ -68,8 +68,9 @@ def lead_lag(
         window.
 
         Scalars: ``peak_lead`` with ``peak_lead_lower`` and ``_upper`` and ``peak_correlation``, the strongest
-        correlation of either sign; ``field_p_value``, the probability that independent series with the same memory are
-        anywhere as significant, ``significant_count`` and ``field_p_value_of_count``; the same with ``_by_month``.
+        correlation of either sign; the same as ``precursor_lead`` and so on over positive leads alone, NaN where there
+        is none; ``field_p_value``, the probability that independent series with the same memory are anywhere as
+        significant, ``significant_count`` and ``field_p_value_of_count``; these with ``_by_month``.
 
     Raises
     ------
@@ -184,8 +185,10 @@ def _overall(work: _Work, overall: PairedStatistics) -> xr.Dataset:
     one, other = _independent_pairs(work)
     simulated = np.stack([_plain_correlation(one, shifted(other, [lead])[:, 0]) for lead in work.leads], axis=-1)
     field = field_significance(overall.correlation, simulated, overall.effective_size, 1.0 - settings.level)
-    result = result.assign(_peak_variables(found) | _field_variables(field, ""))
-    return result.assign_coords(lead=work.leads)
+    result = result.assign(_peak_variables(found, "peak") | _field_variables(field, ""))
+    ahead = work.leads > 0
+    first = peak(overall.correlation[ahead], resampled[:, ahead], work.leads[ahead], settings.level)
+    return result.assign(_peak_variables(first, "precursor")).assign_coords(lead=work.leads)
 
 
 def _resampled(work: _Work, ahead: Array, statistics: PairedStatistics, stream: int, first: int = 0) -> Array:
@@ -305,12 +308,12 @@ def _labelled(
     return xr.Dataset({f"{name}{suffix}": (dims, data) for name, data in values.items()})
 
 
-def _peak_variables(found: Peak) -> dict[str, Any]:
+def _peak_variables(found: Peak, name: str) -> dict[str, Any]:
     return {
-        "peak_lead": found.lead,
-        "peak_lead_lower": found.lower,
-        "peak_lead_upper": found.upper,
-        "peak_correlation": found.correlation,
+        f"{name}_lead": found.lead,
+        f"{name}_lead_lower": found.lower,
+        f"{name}_lead_upper": found.upper,
+        f"{name}_correlation": found.correlation,
     }
 
 

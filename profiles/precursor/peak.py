@@ -71,7 +71,7 @@ def peak(correlation: Array, resampled: Array, leads: NDArray[Any], level: float
         of a month to either side: monthly means tell no more. They look for a peak of the same sign over all leads, so
         that another one nearly as strong widens the interval.
     """
-    if not np.isfinite(correlation).any():
+    if not np.isfinite(correlation).any():  # nor where there is no lead
         return Peak(np.nan, np.nan, np.nan, np.nan)
     at = int(np.nanargmax(np.abs(correlation)))
     sign = np.sign(correlation[at]) or 1.0
