@@ -309,12 +309,43 @@ class EventSettings(Settings):
     )
 
 
+MonthName = Annotated[str, Field(pattern=r"^\d{4}-(0[1-9]|1[0-2])$")]
+
+
 class PrecursorSettings(Settings):
     """[precursor]: volume, western volume and tilt as precursors of an index."""
 
+    base: tuple[MonthName, ...] = Field(
+        (),
+        description='first and last month of the base of anomalies, ["2031-01", "2060-12"]; empty: each record whole '
+        "(ours)",
+    )
+    detrend: bool = Field(False, description="whether a straight line in time is taken off with the climatology (ours)")
+    standardise: Literal["none", "whole", "month"] = Field(
+        "none",
+        description="whether anomalies are over their standard deviation, of all months or of each calendar month "
+        "(ours)",
+    )
+    running_mean: Count = Field(
+        1, description="months, trailing, over which volume, tilt and wind are averaged; 1: not at all (ours)"
+    )
+    box: str = Field(
+        "nino34",
+        description="of the index of surface temperature: nino12, nino3, nino34, nino4 (published boxes) or "
+        '"south,north,west,east" in degrees north and east',
+    )
+    patterns: Annotated[int, Field(strict=True, ge=0, le=5)] = Field(
+        2, description="leading patterns of the equatorial isotherm depth that are correlated besides (ours)"
+    )
     lead_lag: LeadLagSettings = LeadLagSettings()
     events: EventSettings = EventSettings()
     hindcast: HindcastSettings = HindcastSettings()
+
+    @model_validator(mode="after")
+    def _two_months(self) -> Self:
+        if self.base and (len(self.base) != 2 or self.base[0] >= self.base[1]):
+            raise ValueError("base: expected the first month and the last, or none")
+        return self
 
 
 # --------------------------------------------------------------------------------------------------------------
