@@ -8,6 +8,7 @@ from __future__ import annotations
 import typer
 
 from profiles.cli.check import check
+from profiles.cli.precursor import precursor
 from profiles.cli.run import run
 from profiles.cli.version import print_version
 
@@ -22,6 +23,7 @@ app = typer.Typer(
 )
 app.command()(run)
 app.command()(check)
+app.command()(precursor)
 app.callback()(print_version)
 
 
