@@ -111,7 +111,7 @@ class _Work:
         cls, predictor: xr.DataArray, target: xr.DataArray, leads: NDArray[np.int64], settings: LeadLagSettings
     ) -> _Work:
         pair = [
-            monthly_series(series, where=f"{role} {series.name}")
+            monthly_series(series, name=str(series.name or role), where=f"{role} {series.name or ''}".strip())
             for role, series in (("predictor", predictor), ("target", target))
         ]
         first, second = overlap(*pair)
