@@ -211,7 +211,9 @@ def _index(
             expected="a file: NetCDF on a grid or as a series, CSV, or rows of a year and twelve months",
         )
     index = moored_temperature_index(surface, box, base=base_of(settings))
-    return index, f"index: shallowest sensors of {index.attrs['moorings']} moorings in {box}", files
+    short = index.attrs["moorings_too_short"]
+    left_out = f"; {short} more are too short" if short else ""
+    return index, f"index: shallowest sensors of {index.attrs['moorings']} moorings in {box}{left_out}", files
 
 
 def _shallowest(folder: Folder) -> tuple[xr.DataArray, list[Path]]:

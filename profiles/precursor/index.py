@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Literal
 
@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 
 from profiles.atlas import sea_share
 from profiles.errors import DataError, RequestError
-from profiles.precursor.anomaly import Base, fit_anomaly
+from profiles.precursor.anomaly import Anomaly, Base, fit_anomaly
 from profiles.precursor.series import calendar_month, check_months, month_of, monthly_series, overlap
 from profiles.section.grid import cell_area, cell_edges
 from profiles.vocabulary import DEGREES
@@ -232,12 +232,13 @@ def moored_temperature_index(temperature: xr.DataArray, box: Box | str, *, base:
     -------
     xarray.DataArray
         ``surface_temperature_index``, °C: the mean climatology of the moorings in the box plus the mean of their
-        anomalies, so that a mooring that drops out leaves no step; NaN where fewer than half of them have a value.
+        anomalies, so that a mooring that drops out leaves no step; NaN where fewer than half of them have a value. A
+        mooring too short for a climatology is left out; the attributes count both.
 
     Raises
     ------
     DataError
-        Where no mooring of the box has a record, or one is too short for a climatology.
+        Where no mooring of the box has a record long enough for a climatology.
     """
     box = box_of(box) if isinstance(box, str) else box
     latitude, longitude = temperature["latitude"].values, temperature["longitude"].values % 360.0
@@ -254,10 +255,10 @@ def moored_temperature_index(temperature: xr.DataArray, box: Box | str, *, base:
         )
     check_months(month_of(temperature["time"]), "the shallowest sensors")
     moored = [temperature.isel(mooring=place, drop=True).rename("temperature") for place in np.flatnonzero(inside)]
-    fitted = [fit_anomaly(series, base=base) for series in moored]
-    anomaly = np.stack([one.apply(series).values for one, series in zip(fitted, moored, strict=True)])
+    fitted, used = _climatologies(moored, base)
+    anomaly = np.stack([one.apply(series).values for one, series in zip(fitted, used, strict=True)])
     count = np.isfinite(anomaly).sum(axis=0)
-    mean = np.nansum(anomaly, axis=0) / np.where(count >= LEAST_MOORINGS * inside.sum(), count, np.nan)
+    mean = np.nansum(anomaly, axis=0) / np.where(count >= LEAST_MOORINGS * len(used), count, np.nan)
     index = monthly_series(
         np.mean([one.climatology for one in fitted], axis=0)[calendar_month(temperature["time"]) - 1] + mean,
         temperature["time"].values,
@@ -265,7 +266,24 @@ def moored_temperature_index(temperature: xr.DataArray, box: Box | str, *, base:
         units=DEGREES,
         where="the shallowest sensors",
     )
-    return index.assign_attrs(index.attrs | {"box": str(box), "moorings": int(inside.sum())})
+    counted = {"moorings": len(used), "moorings_too_short": len(moored) - len(used)}
+    return index.assign_attrs(index.attrs | {"box": str(box)} | counted)
+
+
+def _climatologies(moored: Sequence[xr.DataArray], base: Base | None) -> tuple[list[Anomaly], list[xr.DataArray]]:
+    """Return the climatologies of the records that are long enough for one, and these records."""
+    fitted, used = [], []
+    failed: DataError | None = None
+    for series in moored:
+        try:
+            fitted.append(fit_anomaly(series, base=base))
+        except DataError as error:
+            failed = error
+        else:
+            used.append(series)
+    if failed is not None and not used:
+        raise failed
+    return fitted, used
 
 
 def pressure_difference_index(
