@@ -259,7 +259,7 @@ class HindcastSettings(Settings):
         100.0, description="months of data that weigh as much as the belief that its coefficient has no season (ours)"
     )
     propagator_months: Count = Field(
-        3, description="months over which the recharge oscillator is fitted; more: less damped by noise (ours)"
+        6, description="months over which the recharge oscillator is fitted; more: less damped by noise (ours)"
     )
     spread_blocks: Annotated[int, Field(strict=True, ge=4)] = Field(
         10, description="parts of the training months that are left out in turn to learn the spread (ours)"

@@ -21,6 +21,7 @@ from profiles.errors import DataError, RequestError
 from profiles.precursor.anomaly import fit_anomaly
 from profiles.precursor.forecasters import Training, by_target, fit_all, forecasts
 from profiles.precursor.series import calendar_month, check_varies, month_of, overlap
+from profiles.statistics import autocorrelation_of, fit_reflection
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
@@ -242,6 +243,19 @@ def hindcast(
     return tables.labelled(series[0], predictors, settings)
 
 
+def effective_months(index: xr.DataArray) -> float:
+    """Return how many independent months an index is worth where it is correlated with another series of its memory.
+
+    N / (1 + 2 sum over lags k of (1 - k/N) r_k^2) (Bartlett 1946, J. R. Stat. Soc. Suppl. 8, 27-41), r the
+    autocorrelation, about the means of the calendar months, of the autoregression that the record supports.
+    """
+    month = calendar_month(index["time"])
+    season = np.array([np.nanmean(index.values[month == one]) if (month == one).any() else 0.0 for one in range(1, 13)])
+    count = int(np.isfinite(index.values).sum())
+    memory = autocorrelation_of(fit_reflection(index.values - season[month - 1]), count - 1)[1:]
+    return float(count / (1.0 + 2.0 * ((1.0 - np.arange(1, count) / count) * memory**2).sum()))
+
+
 def aligned(index: xr.DataArray, predictors: Mapping[str, xr.DataArray]) -> tuple[xr.DataArray, ...]:
     """Return index and predictors over their common months; raise where one cannot be used."""
     if "index" in predictors:
@@ -276,7 +290,8 @@ def _usable_folds(parts: list[Fold], series: Sequence[xr.DataArray], settings: H
     if enough and (settings.scheme == "expanding" or len(enough) == len(parts)):
         return enough
     most = max(int((part.used & whole).sum()) for part in parts)
-    found = f"{whole.size} months, {int(whole.sum())} with a value in every series"
+    effective = effective_months(series[0])
+    found = f"{whole.size} months, {int(whole.sum())} with a value in every series, {effective:.0f} effective"
     raise DataError(
         "the record is too short for a hindcast",
         expected=f"{12 * settings.least_training_years} months or more to fit on, without the year that is forecast and "

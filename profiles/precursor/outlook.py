@@ -19,6 +19,7 @@ from profiles.precursor.hindcast import (
     Issued,
     aligned,
     category_probabilities,
+    effective_months,
     issue,
     place_of_volume,
 )
@@ -130,27 +131,10 @@ def skill_status(scores: xr.Dataset, month: NDArray[np.int64]) -> NDArray[np.int
     return np.where(lost, OutlookStatus.NO_SKILL, status)
 
 
-def effective_months(series: Array) -> float:
-    """Return how many independent months a series is worth where it is correlated with another of the same memory.
-
-    N / (1 + 2 sum over lags k of (1 - k/N) r_k^2) (Bartlett 1946, J. R. Stat. Soc. Suppl. 8, 27-41), the sum up to the
-    first lag at which the autocorrelation r is no longer told from noise, 2/sqrt(N), and stays so for a year.
-    """
-    values = series[np.isfinite(series)]
-    values = values - values.mean()
-    count = values.size
-    whole = np.correlate(values, values, "full")[count - 1 :] / (values @ values)
-    quiet = np.abs(whole) < 2.0 / np.sqrt(count)
-    runs = [lag for lag in range(1, count) if quiet[lag : lag + 12].all()]
-    lags = np.arange(1, runs[0] if runs else count)
-    return float(count / (1.0 + 2.0 * ((1.0 - lags / count) * whole[lags] ** 2).sum()))
-
-
 def _too_short(index: xr.DataArray, months: int, settings: HindcastSettings) -> str:
-    season = index.groupby(index["time"].dt.month).mean().sel(month=index["time"].dt.month.values).values
-    effective = effective_months(index.values - season)
     return (
-        f"{REASONS[OutlookStatus.RECORD_TOO_SHORT]}: {months / 12:.1f} years, {effective:.0f} effective months; "
+        f"{REASONS[OutlookStatus.RECORD_TOO_SHORT]}: {months / 12:.1f} years, {effective_months(index):.0f} effective "
+        f"months; "
         f"{settings.shortest_outlook_record} years are needed"
     )
 

@@ -7,8 +7,9 @@ no derivative is approximated by a difference.
 
 Least squares on a short record draws M towards damping. The part of it that the length of the record makes is taken
 off (Pope 1990, J. Time Ser. Anal. 11, 249-258, for any number of variables); intervals come from records simulated
-with the corrected fit and treated alike. Errors of measurement and weather in the monthly means damp the fit as well,
-which no formula here takes off: fitting over ``step`` months at a time divides that part by about ``step``.
+with the corrected fit and treated alike. Errors of measurement, and weather in the monthly means, damp the fit as well,
+which no formula here takes off; that a month's value is a mean does the opposite. Both count once in every ``step``
+months: fitted over six months at a time, M keeps most of what it is worth and loses most of that.
 """
 
 from __future__ import annotations
@@ -26,6 +27,7 @@ from profiles.precursor.series import check_varies, overlap
 
 Array = NDArray[np.float64]
 
+STEP = 6  # months: as good as 1 where values are exact, and much better where they are means or noisy (ours)
 REPLICATES = 400  # simulated records behind an interval: its ends are known to some 7 % of its half-width (ours)
 LEAST_PAIRS = 60  # pairs of months below which no oscillator is fitted: five years (ours)
 _STABLE = 0.999  # the correction never takes an eigenvalue of M beyond this (Kilian 1998, Rev. Econ. Stat. 80, 218-230)
@@ -187,7 +189,7 @@ class RechargeFit:
     oscillating_share: float
 
 
-def fit_recharge(state: Array, *, step: int = 1, replicates: int = REPLICATES, seed: int = 0) -> RechargeFit:
+def fit_recharge(state: Array, *, step: int = STEP, replicates: int = REPLICATES, seed: int = 0) -> RechargeFit:
     """Fit the oscillator, correct it and give it intervals.
 
     Parameters
@@ -273,7 +275,7 @@ def recharge_oscillator(
     volume: xr.DataArray,
     *,
     base: Base | None = None,
-    step: int = 1,
+    step: int = STEP,
     replicates: int = REPLICATES,
     seed: int = 0,
 ) -> xr.Dataset:
