@@ -25,7 +25,7 @@ from profiles.pipeline.precursor_inputs import (
     precursor_settings,
     read_inputs,
 )
-from profiles.vocabulary import CAUTION, describe
+from profiles.vocabulary import CAUTION, VARIABLES, describe
 
 #: Of the series, those that a forecast may use; a pattern is fitted on the whole record, and so knows the future.
 FORECAST_FROM = ("volume", "western_volume", "tilt", "wind")
@@ -265,24 +265,25 @@ def _write(
         "leads": pd.DataFrame(_lead_rows(lead_lags)),
         "events": _event_table(events),
     }
-    if forecast.hindcast is not None and forecast.scores is not None and forecast.reliability is not None:
-        for path, dataset, title in (
-            (folder.hindcast, forecast.hindcast, "hindcast of an index"),
-            (folder.scores, forecast.scores, "scores of the hindcast"),
-            (folder.reliability, forecast.reliability, "reliability of the hindcast's probabilities"),
-        ):
-            store.write_dataset(path, dataset, attributes(title, _HINDCAST_TEXT, dataset))
-        tables["hindcast"] = _score_table(forecast.scores)
+    if forecast.scores is not None:
+        tables["hindcast"] = forecast.scores.to_dataframe().reset_index()
+    if forecast.reliability is not None:
         tables["reliability"] = forecast.reliability.to_dataframe().reset_index()
     if forecast.outlook is not None:
-        store.write_dataset(folder.outlook, forecast.outlook, attributes("outlook", CAUTION, forecast.outlook))
         tables["outlook"] = pd.DataFrame(_outlook_rows(forecast.outlook))
-    if forecast.oscillator is not None:
-        store.write_dataset(
-            folder.oscillator,
-            forecast.oscillator,
-            attributes("recharge oscillator", _HINDCAST_TEXT, forecast.oscillator),
-        )
+    for path, dataset, title, text in (
+        (folder.hindcast, forecast.hindcast, "hindcast of an index", _HINDCAST_TEXT),
+        (folder.scores, forecast.scores, "scores of the hindcast", _HINDCAST_TEXT),
+        (folder.reliability, forecast.reliability, "reliability of the hindcast's probabilities", _HINDCAST_TEXT),
+        (folder.oscillator, forecast.oscillator, "recharge oscillator", _OSCILLATOR_TEXT),
+        (folder.outlook, forecast.outlook, "outlook", CAUTION),
+    ):
+        # What an earlier analysis left would not belong to this one.
+        path.unlink(missing_ok=True)
+        if dataset is not None:
+            store.write_dataset(path, _with_named_coordinates(dataset), attributes(title, text, dataset))
+    for name in ("hindcast", "reliability", "outlook"):
+        folder.table(name).unlink(missing_ok=True)
     for name, table in tables.items():
         store.write_table(folder.table(name), table)
 
@@ -294,6 +295,25 @@ _PRECURSOR_TEXT = (
 _HINDCAST_TEXT = (
     "Made and verified out of sample: everything fitted is fitted anew without the years that are forecast."
 )
+_OSCILLATOR_TEXT = (
+    "Two-variable recharge oscillator fitted to index and volume; regression leans towards damping, and the correction "
+    "for the length of the record takes only part of that away."
+)
+_COORDINATES = {
+    "lead": {"long_name": "months from the last month known to the month forecast"},
+    "target": {"long_name": "month forecast"},
+    "quantile": {"long_name": "probability below", "units": "1"},
+    "bin": {"long_name": "middle of the bin of stated probability", "units": "1"},
+}
+
+
+def _with_named_coordinates(dataset: xr.Dataset) -> xr.Dataset:
+    """Return the dataset with a long name on every coordinate of numbers, those of its own kept."""
+    named = dataset.copy()
+    for name in set(named.coords) & {*_COORDINATES, "time"}:
+        known = VARIABLES["time"].attributes() if name == "time" else _COORDINATES[str(name)]
+        named[name].attrs = known | named[name].attrs
+    return named
 
 
 def _attributes(folder: Folder, analysis: _Analysis) -> Callable[[str, str, xr.Dataset], dict[str, Any]]:
@@ -349,6 +369,8 @@ def _together(analysis: _Analysis, lead_lags: Mapping[str, xr.Dataset], events: 
         compat="override",
         fill_value={name: -1 for name in ("significant_in_window", "pair_count_in_window")},
     ).reindex(predictor=names)
+    if "window" in joined.dims:
+        joined = joined.transpose(..., "window")  # times last (CF-1.11, section 2.4)
     units = "; ".join(f"{name}: {one.attrs.get('units', '1')}" for name, one in analysis.predictors.items())
     whole = xr.merge(
         [
@@ -443,10 +465,6 @@ def _event_rows(events: xr.Dataset) -> list[dict[str, Any]]:
                     before["months_before"].values}  # fmt: skip
         rows.append(row)
     return rows
-
-
-def _score_table(scores: xr.Dataset) -> pd.DataFrame:
-    return scores.to_dataframe().reset_index()
 
 
 def _outlook_rows(outlook: xr.Dataset) -> list[dict[str, Any]]:
