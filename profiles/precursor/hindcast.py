@@ -129,10 +129,11 @@ def issue(
     month = calendar_month(series[0]["time"]) - 1
     standard, centre = _fitted(series, used, volume, settings, detrend=detrend)
     departures = {name: np.full((settings.longest_lead, month.size), np.nan) for name in centre}
+    started = by_target(np.broadcast_to(np.where(used, 0.0, np.nan), (settings.longest_lead, month.size)))
     for part in blocks(used, settings.spread_blocks, settings.longest_lead):
         inner, guesses = _fitted(series, part.used, volume, settings, detrend=detrend)
         for name, guess in guesses.items():
-            departure = by_target(guess) - inner.anomaly
+            departure = by_target(guess) - inner.anomaly + started  # neither start nor target outside ``used``
             departures[name][:, part.held] = departure[:, part.held]
     spread = {name: spread_by_month(found, month) for name, found in departures.items()}
     usual = category_shares(standard.anomaly[used], month[used], settings.threshold)
