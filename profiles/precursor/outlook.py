@@ -243,4 +243,3 @@ class _Plan:
         month = self.aims % 12
         centre = issued.centre[self.forecaster][:, self.start]
         return centre, issued.spread[self.forecaster][np.arange(leads), month], issued.freedom, issued.usual[month]
-

@@ -79,7 +79,11 @@ class Score:
     units: str | None = "1"
 
 
-_BASELINE_NAMES = {"climatology": "climatology", "persistence": "persistence", "damped_persistence": "damped persistence"}
+_BASELINE_NAMES = {
+    "climatology": "climatology",
+    "persistence": "persistence",
+    "damped_persistence": "damped persistence",
+}
 
 SCORES: Mapping[str, Score] = {
     "correlation": Score("correlation of forecast and observed anomalies", np.arctanh, np.tanh),

@@ -74,7 +74,9 @@ def test_forecasts_of_a_year_know_nothing_of_it_but_the_month_they_start_from(ma
         for name in ("forecast", "spread", "probability"):
             np.testing.assert_array_equal(after[name].isel(target), before[name].isel(target), err_msg=name)
     # From another start within the year they differ, and forecasts of the next year differ by what was fitted.
-    assert not np.allclose(after["forecast"].isel(lead=0, time=first + 2)[1:], before["forecast"].isel(lead=0, time=first + 2)[1:])
+    assert not np.allclose(
+        after["forecast"].isel(lead=0, time=first + 2)[1:], before["forecast"].isel(lead=0, time=first + 2)[1:]
+    )
     later = {"lead": 0, "time": first + 30}
     assert not np.allclose(after["spread"].isel(later), before["spread"].isel(later))
 
@@ -89,7 +91,9 @@ def test_an_expanding_window_does_not_see_later_years(make_record: object) -> No
     ).isel(time=slice(12 * 11))
     xr.testing.assert_equal(before, after)
     # Eight years have to precede a year, and the gap of three months: the tenth is the first with a forecast.
-    given_years = np.isfinite(before["forecast"].sel(forecaster="regression", lead=1)).values.reshape(-1, 12).all(axis=1)
+    given_years = (
+        np.isfinite(before["forecast"].sel(forecaster="regression", lead=1)).values.reshape(-1, 12).all(axis=1)
+    )
     np.testing.assert_array_equal(np.flatnonzero(given_years), [9, 10])
 
 
@@ -164,7 +168,8 @@ def test_a_trend_is_taken_off_where_asked(make_record: object) -> None:
     index, predictors = make_record(14, 3)  # type: ignore[operator]
     drift = 0.01 * np.arange(index.size)
     plain, drifting = (
-        hindcast(one, predictors, settings=SMALL, detrend=True) for one in (index, index.copy(data=index.values + drift))
+        hindcast(one, predictors, settings=SMALL, detrend=True)
+        for one in (index, index.copy(data=index.values + drift))
     )
     np.testing.assert_allclose(drifting["observed"], plain["observed"], atol=1e-9)
     np.testing.assert_allclose(drifting["forecast"], plain["forecast"], atol=1e-9)
@@ -224,7 +229,9 @@ def test_effective_months_of_noise_and_of_red_noise() -> None:
 def test_a_record_of_six_years_is_too_short_and_its_effective_months_are_told(record: tuple) -> None:
     index, predictors = record
     short = {name: one[:72] for name, one in predictors.items()}
-    with pytest.raises(DataError, match=r"too short for a hindcast; expected 96 months .* in every series, \d+ effective"):
+    with pytest.raises(
+        DataError, match=r"too short for a hindcast; expected 96 months .* in every series, \d+ effective"
+    ):
         hindcast(index[:72], short)
 
 
