@@ -282,6 +282,9 @@ class LeadLagSettings(Settings):
     least_effective: Annotated[Number, Field(gt=3.0)] = Field(
         6.0, description="effective months without which there is no correlation (ours)"
     )
+    least_months: Annotated[int, Field(strict=True, ge=12)] = Field(
+        24, description="months in common without which there is no correlation (ours)"
+    )
     least_years: Annotated[int, Field(strict=True, ge=4)] = Field(
         10, description="years without which a calendar month has no correlation of its own (ours)"
     )

@@ -164,7 +164,7 @@ def _standard_grid(field: xr.DataArray, where: str) -> xr.DataArray:
     return grid.transpose("time", "latitude", "longitude").sortby(["latitude", "longitude"])
 
 
-_UNITS = {"latitude": "degree[s]?_?n(orth)?", "longitude": "degree[s]?_?e(ast)?"}
+_UNITS = {"time": "(?!)", "latitude": "degree[s]?_?n(orth)?", "longitude": "degree[s]?_?e(ast)?"}
 _NAMES = {"time": "time|month|date|t", "latitude": "lat.*|y|nav_lat", "longitude": "lon.*|x|nav_lon"}
 
 
@@ -174,7 +174,7 @@ def _coordinate(field: xr.DataArray, kind: str, where: str) -> str:
     for name in along:
         attributes = field[name].attrs
         stated = attributes.get("standard_name") == kind or attributes.get("axis") == kind[0].upper() == "T"
-        if stated or re.fullmatch(_UNITS.get(kind, "$^"), str(attributes.get("units", "")).lower()):
+        if stated or re.fullmatch(_UNITS[kind], str(attributes.get("units", "")).lower()):
             return name
     for name in along:
         if re.fullmatch(_NAMES[kind], name.lower()):

@@ -48,7 +48,8 @@ def lead_lag(
         Monthly series of anomalies on ``time`` (see :func:`profiles.precursor.anomalies`); any day of a month stands
         for it. The months that both span are used; NaN between them is missing.
     leads : sequence of int
-        Months. At a positive lead the predictor comes first: the target is that many months later.
+        Months. At a positive lead the predictor comes first: the target is that many months later. One that leaves
+        fewer than three pairs is NaN.
     settings : LeadLagSettings, optional
         Default: the defaults.
 
@@ -75,7 +76,7 @@ def lead_lag(
     Raises
     ------
     RequestError
-        Where the leads are not whole numbers in ascending order, or longer than the record.
+        Where the leads are not whole numbers in ascending order.
     DataError
         Where the series do not overlap, are no monthly series, are constant, or too short: the message says how many
         effective months there are.
@@ -117,13 +118,6 @@ class _Work:
         first, second = overlap(*pair)
         for role, series in (("predictor", first), ("target", second)):
             check_varies(series, f"{role} {series.name}")
-        if np.abs(leads).max() > first.size - 3:
-            raise RequestError(
-                "a lead is longer than the record",
-                where="leads",
-                expected=f"at most {first.size - 3} months either way, for {first.size} months in common",
-                found=str(int(leads[np.abs(leads).argmax()])),
-            )
         reflections = fit_reflection(first.values), fit_reflection(second.values)
         memories = tuple(autocorrelation_of(reflection, first.size) for reflection in reflections)
         return cls(
@@ -157,13 +151,14 @@ def _checked_leads(leads: Sequence[int] | ArrayLike) -> NDArray[np.int64]:
 def _check_length(work: _Work, overall: PairedStatistics) -> None:
     """Raise DataError where no lead has enough effective months."""
     effective = float(np.nan_to_num(overall.effective_size).max())
-    if effective >= work.settings.least_effective:
+    settings = work.settings
+    if effective >= settings.least_effective and work.predictor.size >= settings.least_months:
         return
     months = month_of(work.predictor["time"])
     raise DataError(
         "the series are too short for a correlation at any lead",
         where=f"{work.predictor.name} and {work.target.name}",
-        expected=f"{work.settings.least_effective:g} or more effective months",
+        expected=f"{settings.least_effective:g} or more effective months, of {settings.least_months} or more",
         found=f"{effective:.1f} effective of {int(overall.count.max())} months with both values, "
         f"{months[0]} to {months[-1]}",
         advice="take a longer record; months that resemble their neighbours count for little",
@@ -175,12 +170,7 @@ def _overall(work: _Work, overall: PairedStatistics) -> xr.Dataset:
     settings = work.settings
     result = _labelled(overall, ("lead",), "", settings)
     resampled = _resampled(work, work.ahead, overall, 0)
-    tail = 50.0 * (1.0 - settings.level)
-    lower, upper = np.nanpercentile(resampled, [tail, 100.0 - tail], axis=0)
-    draws = resampled.shape[0]
-    opposite = np.minimum((resampled <= 0.0).sum(axis=0), (resampled >= 0.0).sum(axis=0))
-    result["bootstrap_lower"], result["bootstrap_upper"] = ("lead", lower), ("lead", upper)
-    result["bootstrap_p_value"] = ("lead", np.minimum(2.0 * (1 + opposite) / (1 + draws), 1.0))
+    result = result.assign(_bootstrap_variables(resampled, settings.level))
     found = peak(overall.correlation, resampled, work.leads, settings.level)
     one, other = _independent_pairs(work)
     simulated = np.stack([_plain_correlation(one, shifted(other, [lead])[:, 0]) for lead in work.leads], axis=-1)
@@ -189,6 +179,18 @@ def _overall(work: _Work, overall: PairedStatistics) -> xr.Dataset:
     ahead = work.leads > 0
     first = peak(overall.correlation[ahead], resampled[:, ahead], work.leads[ahead], settings.level)
     return result.assign(_peak_variables(first, "precursor")).assign_coords(lead=work.leads)
+
+
+def _bootstrap_variables(resampled: Array, level: float) -> dict[str, Any]:
+    """Return interval and p-value of each lead; NaN where there was nothing to resample."""
+    known = np.isfinite(resampled).all(axis=0)
+    values = np.where(known, resampled, 0.0)
+    tail = 50.0 * (1.0 - level)
+    lower, upper = np.percentile(values, [tail, 100.0 - tail], axis=0)
+    opposite = np.minimum((values <= 0.0).sum(axis=0), (values >= 0.0).sum(axis=0))
+    p_value = np.minimum(2.0 * (1 + opposite) / (1 + len(resampled)), 1.0)
+    named = {"bootstrap_lower": lower, "bootstrap_upper": upper, "bootstrap_p_value": p_value}
+    return {name: ("lead", np.where(known, ends, np.nan)) for name, ends in named.items()}
 
 
 def _resampled(work: _Work, ahead: Array, statistics: PairedStatistics, stream: int, first: int = 0) -> Array:
@@ -213,7 +215,7 @@ def _independent_pairs(work: _Work) -> tuple[Array, Array]:
 def _plain_correlation(first: Array, second: Array) -> Array:
     """Return the correlation along the last axis over the pairs that are there."""
     both = np.isfinite(first) & np.isfinite(second)
-    count = both.sum(axis=-1, keepdims=True)
+    count = np.maximum(both.sum(axis=-1, keepdims=True), 1)
     x, y = (np.where(both, values, 0.0) for values in (first, second))
     x, y = (np.where(both, values - values.sum(axis=-1, keepdims=True) / count, 0.0) for values in (x, y))
     size = (x**2).sum(axis=-1) * (y**2).sum(axis=-1)
@@ -226,8 +228,7 @@ def _by_month(work: _Work) -> xr.Dataset:
     one, other = _independent_pairs(work)
     statistics, simulated = [], []
     for month in range(1, 13):
-        start = int(np.flatnonzero(work.months == month)[0]) if (work.months == month).any() else None
-        chosen = slice(start, None, 12) if start is not None else slice(0, 0)
+        chosen = slice((month - int(work.months[0])) % 12, None, 12)
         statistics.append(paired_statistics(work.predictor.values[chosen], work.ahead[:, chosen], *yearly))
         simulated.append(
             np.stack(

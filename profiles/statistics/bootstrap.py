@@ -47,11 +47,13 @@ def weighted_correlation(weights: Array, first: Array, second: Array) -> Array:
     Returns
     -------
     ndarray, shape (draws, pairing)
+        NaN where no pair was drawn, or one of the two does not vary over those that were.
     """
     both = np.isfinite(first) & np.isfinite(second)
     # Means first, or the sums of squares lose their digits.
     x, y = (np.where(both, values - np.nanmean(values), 0.0) for values in (first, second))
-    total = weights @ both.astype(np.float64)
+    count = weights @ both.astype(np.float64)
+    total = np.where(count > 0.0, count, np.nan)
     mean_x, mean_y = (weights @ values / total for values in (x, y))
     covariance = weights @ (x * y) / total - mean_x * mean_y
     variance_x, variance_y = (weights @ (values**2) / total - mean**2 for values, mean in ((x, mean_x), (y, mean_y)))

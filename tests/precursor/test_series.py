@@ -14,6 +14,12 @@ from profiles.precursor.series import as_table, calendar_month, check_varies, mi
 
 NAN = np.nan
 MONTHS = np.arange("2031-01", "2033-01", dtype="datetime64[M]").astype("datetime64[ns]")
+
+
+def later(months):
+    return (MONTHS.astype("datetime64[M]") + months).astype("datetime64[ns]")
+
+
 VALUES = 26.0 + np.sin(np.arange(24.0))
 
 
@@ -145,7 +151,7 @@ def test_small_variations_of_a_large_number_are_no_constant():
 
 def test_overlap_is_what_all_span():
     one = monthly_series(VALUES, MONTHS, name="a")
-    other = monthly_series(VALUES, MONTHS + np.timedelta64(181, "D"), name="b")
+    other = monthly_series(VALUES, later(6), name="b")
     parts = overlap(one, other)
     assert [part.size for part in parts] == [18, 18]
     assert (parts[0]["time"].values == parts[1]["time"].values).all()
@@ -153,7 +159,7 @@ def test_overlap_is_what_all_span():
 
 def test_series_apart_are_refused_with_both_spans():
     one = monthly_series(VALUES, MONTHS, name="a")
-    other = monthly_series(VALUES, MONTHS + np.timedelta64(3000, "D"), name="b")
+    other = monthly_series(VALUES, later(98), name="b")
     with pytest.raises(DataError, match=r"do not overlap; .*found a 2031-01 to 2032-12, b 2039-03 to 2041-02"):
         overlap(one, other)
 
