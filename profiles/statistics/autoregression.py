@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.signal import lfilter
 
 Array = NDArray[np.float64]
 
@@ -139,6 +138,8 @@ def simulate(reflection: Array, length: int, draws: int, generator: np.random.Ge
     -----
     The first ``length`` steps of each are thrown away, so that the start is forgotten.
     """
+    from scipy.signal import lfilter  # here, for it takes long to import and the other rooms do not need it
+
     polynomial = np.concatenate([[1.0], -coefficients_of(reflection)])
     noise = generator.standard_normal((draws, 2 * length))
     return np.asarray(lfilter([1.0], polynomial, noise, axis=-1))[:, length:]

@@ -2,7 +2,8 @@
 
 Sources: the OSTIA analysis of sea-surface temperature from satellites and in situ data (Donlon et al. 2012), monthly
 means April 2006 to September 2010, and the southern-oscillation index of Trenberth (1984, Mon. Wea. Rev. 112, 326-332),
-both as packed in iris-sample-data; the sea-surface temperature of 0-10S, 90-80W of 1950 to 2010 as packed in statsmodels.
+both as packed in iris-sample-data; the sea-surface temperature of 0-10S, 90-80W of 1950 to 2010 as packed in
+statsmodels.
 """
 
 from __future__ import annotations
