@@ -198,7 +198,7 @@ def _index(
         index = read_series(
             sources.sst, name="surface_temperature_index", column=sources.sst_variable, missing=sources.missing, box=box
         )
-        area = f", mean of {index.attrs['box']}" if "box" in index.attrs else ""
+        area = f", mean of {index.attrs['box']}" if "box" in index.attrs else ", a series as it stands"
         return index, f"index: {sources.sst.name}{area}", [sources.sst]
     surface = array.surface
     files: list[Path] = []

@@ -141,7 +141,7 @@ def test_an_index_of_another_form_is_the_same(files):
         for name in ("sst.csv", "sst.txt")
     )
     np.testing.assert_allclose(one.index, other.index, atol=6e-4)
-    assert other.notes == ("volume and tilt: series.csv", "index: sst.txt")
+    assert other.notes == ("volume and tilt: series.csv", "index: sst.txt, a series as it stands")
     assert other.inputs == (files / "series.csv", files / "sst.txt")
 
 
