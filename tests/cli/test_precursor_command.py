@@ -59,7 +59,7 @@ def test_summary_says_leads_events_and_why_no_outlook(files, tmp_path):
     withheld = next(line for line in lines if line.startswith("outlook withheld: "))
     assert "6.0 years" in withheld
     assert lines[-2:] == [CAUTION, f"see {out / 'precursor.nc'} and {out / 'tables'}"]
-    steps = ("series", "lead-lag", "events", "hindcast", "files")
+    steps = ("series", "lead-lag", "events", "hindcast", "files", "report")
     assert result.stderr.splitlines() == [f"precursor: {step}" for step in steps]
 
 
