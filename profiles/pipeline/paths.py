@@ -93,6 +93,11 @@ class Folder:
         return self.out / "precursor_outlook.nc"
 
     @property
+    def precursor_section(self) -> Path:
+        """The report's section on precursors, and what it was made from."""
+        return self.out / HIDDEN / "precursor_section.json"
+
+    @property
     def page(self) -> Path:
         """The report."""
         return self.out / "report.html"

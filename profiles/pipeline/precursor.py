@@ -25,6 +25,7 @@ from profiles.pipeline.precursor_inputs import (
     precursor_settings,
     read_inputs,
 )
+from profiles.pipeline.precursor_report import write_precursor_report
 from profiles.vocabulary import CAUTION, VARIABLES, describe
 
 #: Of the series, those that a forecast may use; a pattern is fitted on the whole record, and so knows the future.
@@ -105,6 +106,9 @@ def precursor(
         store.make_folder(path)
     with store.folder_lock(folder.folders()[1]):
         _write(folder, analysis, lead_lags, events, forecast)
+        say("report")
+        told = [*inputs.notes, *notes, forecast.withheld]
+        write_precursor_report(folder, inputs.inputs, [note for note in told if note])
     return _outcome(folder, analysis, lead_lags, events, forecast, notes)
 
 
