@@ -348,7 +348,10 @@ def outlook_plume(outlook: xr.Dataset, anomaly: xr.DataArray) -> Figure:
         0.075, 0.905, CAUTION, fontsize=10.5, fontweight="bold", va="bottom", color=style.INK,
         bbox={"facecolor": "#fff6e5", "edgecolor": style.ORANGE, "pad": 3.0},
     )  # fmt: skip
-    _headline(figure, f"Research outlook from {month_label(outlook.attrs['start'])}, by {name_of(outlook.attrs['forecaster'])}")
+    _headline(
+        figure,
+        f"Research outlook from {month_label(outlook.attrs['start'])}, by {name_of(outlook.attrs['forecaster'])}",
+    )
     return figure
 
 
@@ -380,7 +383,15 @@ def _draw_plume(axis: Axes, given: xr.Dataset, recent: xr.DataArray) -> None:
         ends = [from_last(given["plume"].sel(quantile=end).values) for end in (low, high)]
         label = f"{100 * (high - low):.0f} % of outcomes"
         axis.fill_between(time, *ends, color=style.BLUE, alpha=opacity, linewidth=0, label=label)
-    axis.plot(time, from_last(given["forecast"].values), color=style.BLUE, linewidth=1.8, marker="o", markersize=4, label="forecast")
+    axis.plot(
+        time,
+        from_last(given["forecast"].values),
+        color=style.BLUE,
+        linewidth=1.8,
+        marker="o",
+        markersize=4,
+        label="forecast",
+    )
 
 
 def _draw_probabilities(axis: Axes, given: xr.Dataset) -> None:
@@ -539,7 +550,9 @@ def _edges(centres: NDArray[Any]) -> Floats:
     return np.concatenate([[2 * centres[0] - middles[0]], middles, [2 * centres[-1] - middles[-1]]])
 
 
-def _mesh(axis: Axes, across: Floats, up: Floats, values: Floats, colours: Colormap, limits: tuple[float, float]) -> None:
+def _mesh(
+    axis: Axes, across: Floats, up: Floats, values: Floats, colours: Colormap, limits: tuple[float, float]
+) -> None:
     axis.set_facecolor(style.MISSING)
     axis.pcolormesh(across, up, np.ma.masked_invalid(values), cmap=colours, vmin=limits[0], vmax=limits[1])
 

@@ -28,7 +28,9 @@ _FOLDS = (
     "Every year was forecast by what was fitted without it and without the months near it: climatology, scales, coefficients "
     "and spread alike."
 )
-_INTERVALS = "95 % intervals come from leaving out blocks of years in turn, so that months that belong together count together."
+_INTERVALS = (
+    "95 % intervals come from leaving out blocks of years in turn, so that months that belong together count together."
+)
 
 CAPTIONS: Mapping[str, Caption] = {
     "precursor_outlook": Caption(
@@ -280,7 +282,9 @@ def _first_outlook(outlook: xr.Dataset | None) -> Finding:
         return Finding("Outlook", "withheld", CAUTION)
     last = given.isel(lead=-1)
     month = month_label(str(last["target"].values.astype("datetime64[M]")))
-    shares = [f"{name} {percent(float(last['probability'].sel(category=name)))}" for name in ("warm", "neutral", "cold")]
+    shares = [
+        f"{name} {percent(float(last['probability'].sel(category=name)))}" for name in ("warm", "neutral", "cold")
+    ]
     return Finding(f"Outlook for {month}, {int(last['lead'])} months ahead", ", ".join(shares), CAUTION)
 
 
@@ -316,4 +320,3 @@ def write_precursor_page(path: Path, section: str, title: str) -> None:
     """
     template = environment().get_template("precursor_page.html")
     write_text(path, template.render(title=title, caution=CAUTION, section=Markup(section)))
-
