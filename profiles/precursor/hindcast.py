@@ -27,6 +27,7 @@ Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
 
 CATEGORIES = ("cold", "neutral", "warm")
+LEAST_REFITTED = 6  # years on which a forecast is fitted anew without a block of them, for the errors of scores (ours)
 VOLUME = "volume"  # the predictor that the recharge oscillator takes
 
 
@@ -61,6 +62,13 @@ def folds(year: NDArray[np.int64], gap: int, scheme: Literal["years_out", "expan
             used = used | (place > last + gap)
         made.append(Fold(held, used))
     return made
+
+
+def year_blocks(year: NDArray[np.int64], length: int) -> NDArray[np.int64]:
+    """Return the number of the block of years that each month belongs to; what is left over joins the last block."""
+    block = (year - year.min()) // length
+    last = max((year.max() - year.min() + 1) // length - 1, 0)
+    return np.minimum(block, last)
 
 
 def blocks(used: Mask, count: int, gap: int) -> list[Fold]:
@@ -222,7 +230,9 @@ def hindcast(
         On ``time``, the month forecast, the months that all series span. ``forecast`` (forecaster, lead, time), an
         anomaly in the units of the index, and its ``spread``, one standard deviation; ``probability`` (forecaster, lead,
         time, category); ``observed`` (time), the anomaly that came, from the climatology of the fold, and
-        ``observed_category`` (0 cold, 1 neutral, 2 warm, -1 none). NaN where the month lies less than the lead after
+        ``observed_category`` (0 cold, 1 neutral, 2 warm, -1 none). ``forecast_without`` (block, forecaster, lead, time) and
+        ``observed_without`` (block, time) are the same when one more block of years is left out of all that is fitted:
+        what the errors of the scores come from. NaN where the month lies less than the lead after
         the first, where the start lacks a value, and where, in an expanding window, too few years precede.
 
     Raises
@@ -238,9 +248,15 @@ def hindcast(
     time = series[0]["time"]
     year = month_of(time).astype("datetime64[Y]").astype(np.int64)
     parts = _usable_folds(folds(year, settings.longest_lead, settings.scheme), series, settings)
-    tables = _Tables.empty(_names(volume), settings.longest_lead, time.size)
+    block = year_blocks(year, settings.block_years)
+    tables = _Tables.empty(_names(volume), settings.longest_lead, time.size, int(block.max()) + 1)
     for part in parts:
         tables.fill(part.held, issue(series, part.used, volume, settings, detrend=detrend), series[0], settings)
+        for left_out in np.setdiff1d(block, block[part.held]):
+            used = part.used & (block != left_out)
+            if used.sum() >= 12 * LEAST_REFITTED:
+                fitted = _fitted(series, used, volume, settings, detrend=detrend)
+                tables.fill_without(int(left_out), part.held, *fitted)
     return tables.labelled(series[0], predictors, settings)
 
 
@@ -311,12 +327,26 @@ class _Tables:
     spread: Array
     probability: Array
     observed: Array
+    forecast_without: NDArray[np.float32]
+    observed_without: Array
 
     @classmethod
-    def empty(cls, names: list[str], leads: int, times: int) -> _Tables:
+    def empty(cls, names: list[str], leads: int, times: int, blocks: int) -> _Tables:
         shape = (len(names), leads, times)
-        forecast, spread = np.full(shape, np.nan), np.full(shape, np.nan)
-        return cls(names, forecast, spread, np.full((*shape, len(CATEGORIES)), np.nan), np.full(times, np.nan))
+        return cls(
+            names,
+            np.full(shape, np.nan),
+            np.full(shape, np.nan),
+            np.full((*shape, len(CATEGORIES)), np.nan),
+            np.full(times, np.nan),
+            np.full((blocks, *shape), np.nan, dtype=np.float32),
+            np.full((blocks, times), np.nan),
+        )
+
+    def fill_without(self, block: int, held: Mask, standard: Standardised, centre: Mapping[str, Array]) -> None:
+        self.observed_without[block, held] = standard.anomaly[held]
+        for place, name in enumerate(self.names):
+            self.forecast_without[block, place][:, held] = by_target(centre[name])[:, held]
 
     def fill(self, held: Mask, issued: Issued, index: xr.DataArray, settings: HindcastSettings) -> None:
         month = calendar_month(index["time"])[held] - 1
@@ -343,6 +373,16 @@ class _Tables:
                 "spread": (dims, self.spread, units | {"long_name": "standard deviation of the forecast"}),
                 "probability": ((*dims, "category"), self.probability, {"units": "1", "long_name": "probability"}),
                 "observed": ("time", self.observed, units | {"long_name": "anomaly of the index that came"}),
+                "forecast_without": (
+                    ("block", *dims),
+                    self.forecast_without,
+                    units | {"long_name": "forecast when a block of years is left out besides"},
+                ),
+                "observed_without": (
+                    ("block", "time"),
+                    self.observed_without,
+                    units | {"long_name": "anomaly that came, from the climatology without a block of years"},
+                ),
                 "observed_category": ("time", category, {"long_name": "category that came; -1: none"}),
             },
             coords={
@@ -350,6 +390,7 @@ class _Tables:
                 "lead": ("lead", np.arange(1, settings.longest_lead + 1), {"units": "month"}),
                 "time": index["time"],
                 "category": list(CATEGORIES),
+                "block": ("block", np.arange(len(self.observed_without)), {"long_name": "block of years left out"}),
             },
         )
         return dataset.assign_attrs(

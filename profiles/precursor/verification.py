@@ -1,15 +1,18 @@
 """Scores of a hindcast by lead and target season, each with an interval that respects autocorrelation.
 
-Forecasts of neighbouring months, and of neighbouring leads, share their fate: an event is hit or missed as a whole. So the
-error of a score comes from leaving out blocks of years in turn (the delete-a-group jackknife; Miller 1974, Biometrika 61,
-1-15), on a scale where the score is more nearly normal, with Student's t of as many degrees of freedom as there are
-blocks, less one.
+Forecasts of neighbouring months, and of neighbouring leads, share their fate: an event is hit or missed as a whole. And
+all forecasts share what was fitted. So the error of a score comes from leaving out blocks of years in turn, of what is
+scored and, for all scores of the forecast itself, of what is fitted (the delete-a-group jackknife; Miller 1974,
+Biometrika 61, 1-15), on a scale where the score is more nearly normal, with Student's t of as many degrees of freedom as
+there are blocks, less one. Scores of probabilities take the fitted as given. ``tests/bench/reliability.py`` prints how
+often the intervals hold.
 """
 
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 import xarray as xr
@@ -18,6 +21,7 @@ from scipy.special import stdtrit
 
 from profiles.errors import DataError
 from profiles.precursor.forecasters import BASELINES
+from profiles.precursor.hindcast import year_blocks
 from profiles.precursor.series import calendar_month, month_of
 
 Array = NDArray[np.float64]
@@ -27,13 +31,6 @@ WHOLE_YEAR = "all"
 #: Three target months around each calendar month, by their initials, January's first: DJF, JFM, ...
 SEASONS = tuple("".join(_LETTERS[(at + step) % 12] for step in (-1, 0, 1)) for at in range(12))
 BIN_EDGES = np.linspace(0.0, 1.0, 11)
-
-
-def year_blocks(year: NDArray[np.int64], length: int) -> NDArray[np.int64]:
-    """Return the number of the block of years that each month belongs to; what is left over joins the last block."""
-    block = (year - year.min()) // length
-    last = max((year.max() - year.min() + 1) // length - 1, 0)
-    return np.minimum(block, last)
 
 
 def leave_out_weights(block: NDArray[np.int64]) -> Array:
@@ -132,12 +129,9 @@ def verify(hindcast: xr.Dataset) -> xr.Dataset:
             expected=f"two or more blocks of {hindcast.attrs['block_years']} years",
             found=f"{np.unique(year).size} years",
         )
-    replicates, seasons = leave_out_weights(block), season_weights(calendar_month(time) - 1)
-    weights = (replicates[:, None, :] * seasons).reshape(-1, time.size)
-    sums = _Sums.of(hindcast, weights)
-    shape = (len(replicates), len(seasons))
+    sums = _Sums.of(hindcast, leave_out_weights(block), season_weights(calendar_month(time) - 1))
     scores = _scores(sums, list(hindcast["forecaster"].values.astype(str)))
-    return _labelled(hindcast, {name: _unfold(values, shape) for name, values in scores.items()}, sums, shape)
+    return _labelled(hindcast, scores, sums.count[0].astype(np.int64), int(block.max()) + 1)
 
 
 def season_weights(month: NDArray[np.int64]) -> Array:
@@ -148,7 +142,7 @@ def season_weights(month: NDArray[np.int64]) -> Array:
 
 @dataclass(frozen=True)
 class _Sums:
-    """Weighted means over time; ``count`` (weight, lead), the others (weight, forecaster, lead)."""
+    """Weighted means over time; ``count`` (replicate, lead, season), the others (replicate, forecaster, lead, season)."""
 
     count: Array
     forecast: Array
@@ -163,22 +157,19 @@ class _Sums:
     reliability: Array
 
     @classmethod
-    def of(cls, hindcast: xr.Dataset, weights: Array) -> _Sums:
-        forecast, probability = hindcast["forecast"].values, hindcast["probability"].values
-        valid = np.isfinite(forecast).all(axis=0) & np.isfinite(hindcast["observed"].values)
-        observed = np.broadcast_to(np.where(valid, hindcast["observed"].values, 0.0), forecast.shape)
-        forecast = np.where(valid, forecast, 0.0)
-        probability = np.where(valid[..., None], probability, 0.0)
-        came = np.where(valid[..., None], _came(hindcast), 0.0)
-        count = np.einsum("wt,lt->wl", weights, valid.astype(np.float64))
+    def of(cls, hindcast: xr.Dataset, replicates: Array, seasons: Array) -> _Sums:
+        valid = _scored(hindcast)
+        forecast, observed = _refitted(hindcast, valid)
+        probability = np.where(valid[..., None], hindcast["probability"].values, 0.0)
+        came = np.broadcast_to(np.where(valid[..., None], _came(hindcast), 0.0), probability.shape)
+        weights = replicates[:, None, :] * seasons
+        count = np.einsum("rst,lt->rls", weights, valid.astype(np.float64))
 
         def mean(values: Array) -> Array:
+            """Return the means of values (forecaster, lead, time), or of such for each replicate."""
+            axes = "rflt" if values.ndim == 4 else "flt"
             with np.errstate(divide="ignore", invalid="ignore"):
-                return np.einsum("wt,flt->wfl", weights, values, optimize=True) / count[:, None, :]
-
-        def slope() -> Array:
-            """Covariance over variance of what came and its probability, each category about its own mean."""
-            return _within_slope(mean, probability, np.broadcast_to(came, probability.shape))
+                return np.einsum(f"rst,{axes}->rfls", weights, values, optimize=True) / count[:, None]
 
         return cls(
             count,
@@ -191,8 +182,31 @@ class _Sums:
             mean(((probability - came).cumsum(axis=-1)[..., :-1] ** 2).sum(axis=-1)),
             mean((probability * came).sum(axis=-1)),
             mean((probability**2).sum(axis=-1)),
-            slope(),
+            _within_slope(mean, probability, came),
         )
+
+
+def _scored(hindcast: xr.Dataset) -> NDArray[np.bool_]:
+    """Return where every forecaster has a forecast and something came, (lead, time)."""
+    return np.asarray(np.isfinite(hindcast["forecast"].values).all(axis=0) & np.isfinite(hindcast["observed"].values))
+
+
+def _refitted(hindcast: xr.Dataset, valid: NDArray[np.bool_]) -> tuple[Array, Array]:
+    """Return forecasts and what came, (replicate, forecaster, lead, time): all, then without each block; 0 if not valid.
+
+    Where no forecast could be fitted without the block, or the month lies in it, the one with it stands.
+    """
+    forecast, observed = hindcast["forecast"].values, hindcast["observed"].values
+    if "forecast_without" not in hindcast:
+        one = np.where(valid, forecast, 0.0)[None]
+        return one, np.broadcast_to(np.where(valid, observed, 0.0), one.shape)
+    refitted = hindcast["forecast_without"].values.astype(np.float64)
+    without = hindcast["observed_without"].values[:, None, None, :]
+    whole = np.isfinite(refitted) & np.isfinite(without)
+    forecasts = np.concatenate([forecast[None], np.where(whole, refitted, forecast)])
+    came = np.broadcast_to(observed, forecast.shape)
+    observations = np.concatenate([came[None], np.where(whole, without, came)])
+    return np.where(valid, forecasts, 0.0), np.where(valid, observations, 0.0)
 
 
 def _came(hindcast: xr.Dataset) -> Array:
@@ -225,14 +239,11 @@ def _scores(sums: _Sums, names: list[str]) -> dict[str, Array]:
     return scores | {"overconfidence": sums.sharpness - sums.earned}
 
 
-def _unfold(values: Array, shape: tuple[int, int]) -> Array:
-    """Return (replicate, forecaster, lead, season) from (replicate x season, forecaster, lead)."""
-    return np.moveaxis(values.reshape(*shape, *values.shape[1:]), 1, -1)
-
-
-def _labelled(hindcast: xr.Dataset, scores: Mapping[str, Array], sums: _Sums, shape: tuple[int, int]) -> xr.Dataset:
+def _labelled(
+    hindcast: xr.Dataset, scores: Mapping[str, Array], count: NDArray[np.int64], blocks: int
+) -> xr.Dataset:
     dims = ("forecaster", "lead", "season")
-    variables = {}
+    variables: dict[str, Any] = {}
     for name, values in scores.items():
         score = SCORES[name]
         units = {"units": score.units or str(hindcast["forecast"].attrs["units"])}
@@ -240,14 +251,10 @@ def _labelled(hindcast: xr.Dataset, scores: Mapping[str, Array], sums: _Sums, sh
         variables[name] = (dims, values[0], units | {"long_name": score.long_name})
         variables[f"{name}_low"] = (dims, low, units | {"long_name": f"lower end of the 95 % interval of {name}"})
         variables[f"{name}_high"] = (dims, high, units | {"long_name": f"upper end of the 95 % interval of {name}"})
-    count = sums.count.reshape(*shape, -1)[0].T.astype(np.int64)
     counted = {"units": "1", "long_name": "number of forecasts scored"}
     coordinates = {"forecaster": hindcast["forecaster"], "lead": hindcast["lead"], "season": [WHOLE_YEAR, *SEASONS]}
-    dataset = xr.Dataset(
-        {**variables, "forecast_count": (("lead", "season"), count, counted)},  # type: ignore[dict-item]
-        coords=coordinates,
-    )
-    return dataset.assign_attrs(hindcast.attrs, block_count=shape[0] - 1)
+    variables["forecast_count"] = (("lead", "season"), count, counted)
+    return xr.Dataset(variables, coords=coordinates).assign_attrs(hindcast.attrs, block_count=blocks)
 
 
 def reliability(hindcast: xr.Dataset, *, first_lead: int = 1, last_lead: int | None = None) -> xr.Dataset:
@@ -271,13 +278,13 @@ def reliability(hindcast: xr.Dataset, *, first_lead: int = 1, last_lead: int | N
     part = hindcast.sel(lead=slice(first_lead, last_lead))
     year = month_of(part["time"]).astype("datetime64[Y]").astype(np.int64)
     weights = leave_out_weights(year_blocks(year, int(hindcast.attrs["block_years"])))
-    forecast, probability = part["forecast"].values, part["probability"].values
-    valid = np.isfinite(forecast).all(axis=0) & np.isfinite(part["observed"].values)
+    valid = _scored(part)
     came = np.where(valid[..., None], _came(part), 0.0)
-    probability = np.where(valid[..., None], probability, 0.0)
+    probability = np.where(valid[..., None], part["probability"].values, 0.0)
     binned = _by_bin(weights, probability, came, valid)
     pooled = _pooled(weights, probability, came, valid)
     dims = ("forecaster", "category", "bin")
+    variables: dict[str, Any]
     shares, counts = binned["share"], binned["count"][0]
     low, high = np.clip(jackknife_interval(shares, _same, _same), 0.0, 1.0)
     variables = {
@@ -304,7 +311,9 @@ def reliability(hindcast: xr.Dataset, *, first_lead: int = 1, last_lead: int | N
 def _by_bin(weights: Array, probability: Array, came: Array, valid: NDArray[np.bool_]) -> dict[str, Array]:
     """Return count, share and stated, each (replicate, forecaster, category, bin)."""
     place = np.clip(np.digitize(probability, BIN_EDGES) - 1, 0, BIN_EDGES.size - 2)
-    counts, events, stated = [], [], []
+    counts: list[Array] = []
+    events: list[Array] = []
+    stated: list[Array] = []
     for one in range(BIN_EDGES.size - 1):
         inside = ((place == one) & valid[..., None]).astype(np.float64)
         for kept, values in ((counts, inside), (events, inside * came), (stated, inside * probability)):

@@ -9,6 +9,7 @@ from scipy import stats
 
 from profiles.errors import DataError
 from profiles.precursor import reliability, verify
+from profiles.precursor.hindcast import year_blocks
 from profiles.precursor.series import middle_of
 from profiles.precursor.verification import (
     SCORES,
@@ -16,7 +17,6 @@ from profiles.precursor.verification import (
     jackknife_interval,
     leave_out_weights,
     season_weights,
-    year_blocks,
 )
 
 
