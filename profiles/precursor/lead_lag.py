@@ -13,16 +13,15 @@ from numpy.typing import ArrayLike, NDArray
 from profiles.config import LeadLagSettings
 from profiles.errors import DataError, RequestError
 from profiles.precursor.field_significance import FieldSignificance, field_significance, simulated_pairs
+from profiles.precursor.memory import Memory, fit_memory
 from profiles.precursor.peak import Peak, peak
 from profiles.precursor.series import calendar_month, check_varies, middle_of, month_of, monthly_series, overlap
 from profiles.precursor.shifting import shifted
 from profiles.precursor.sign_split import split_regression
 from profiles.statistics import (
     PairedStatistics,
-    autocorrelation_of,
     block_length,
     block_weights,
-    fit_reflection,
     paired_statistics,
     weighted_correlation,
 )
@@ -83,12 +82,13 @@ def lead_lag(
 
     Notes
     -----
-    See :func:`profiles.statistics.paired_statistics` for the test and its sources. Its false-alarm rates are printed by
+    See :func:`profiles.statistics.paired_statistics` for the test and its sources, and
+    :func:`profiles.precursor.memory.fit_memory` for what it knows of the series. Its false-alarm rates are printed by
     ``tests/bench/false_alarm.py``. Draws come from a stated seed: the same series give the same numbers.
     """
     settings = settings or LeadLagSettings()
     work = _Work.of(predictor, target, _checked_leads(leads), settings)
-    overall = work.statistics(work.ahead)
+    overall = work.statistics()
     _check_length(work, overall)
     parts = [_overall(work, overall), _by_month(work), _by_sign(work), _in_windows(work)]
     result = xr.merge(parts, combine_attrs="drop_conflicts", join="exact", compat="no_conflicts")
@@ -103,8 +103,7 @@ class _Work:
     target: xr.DataArray
     leads: NDArray[np.int64]
     settings: LeadLagSettings
-    reflections: tuple[Array, Array]
-    memories: tuple[Array, Array]
+    memories: tuple[Memory, Memory]
     ahead: Array
 
     @classmethod
@@ -118,15 +117,20 @@ class _Work:
         first, second = overlap(*pair)
         for role, series in (("predictor", first), ("target", second)):
             check_varies(series, f"{role} {series.name}")
-        reflections = fit_reflection(first.values), fit_reflection(second.values)
-        memories = tuple(autocorrelation_of(reflection, first.size) for reflection in reflections)
-        return cls(
-            first, second, leads, settings, reflections, (memories[0], memories[1]), shifted(second.values, leads)
-        )
+        one, other = (fit_memory(series.values, calendar_month(series["time"])) for series in (first, second))
+        return cls(first, second, leads, settings, (one, other), shifted(second.values, leads))
 
-    def statistics(self, ahead: Array) -> PairedStatistics:
-        """Return the statistics of the predictor with what lies so many months ahead, (..., lead, time)."""
-        return paired_statistics(self.predictor.values, ahead, *self.memories)
+    def statistics(self, inside: slice = slice(None)) -> PairedStatistics:
+        """Return the statistics of each lead over a part of the record; both of a pair lie in it."""
+        one, other = self.memories
+        return paired_statistics(
+            self.predictor.values[inside],
+            shifted(self.target.values[inside], self.leads),
+            one.autocorrelation,
+            other.autocorrelation,
+            first_scale=one.scale[inside],
+            second_scale=shifted(other.scale[inside], self.leads),
+        )
 
     def generator(self, stream: int) -> np.random.Generator:
         """Return random numbers of their own for each use."""
@@ -204,10 +208,11 @@ def _resampled(work: _Work, ahead: Array, statistics: PairedStatistics, stream: 
 
 def _independent_pairs(work: _Work) -> tuple[Array, Array]:
     """Return pairs of independent series with the memory of the record, missing where the record is."""
-    pair = simulated_pairs(*work.reflections, work.predictor.size, work.settings.draws, work.generator(1))
+    first, second = (memory.reflection for memory in work.memories)
+    pair = simulated_pairs(first, second, work.predictor.size, work.settings.draws, work.generator(1))
     one, other = (
-        np.where(np.isfinite(series.values), values, np.nan)
-        for values, series in zip(pair, (work.predictor, work.target), strict=True)
+        np.where(np.isfinite(series.values), values * memory.scale, np.nan)
+        for values, memory, series in zip(pair, work.memories, (work.predictor, work.target), strict=True)
     )
     return one, other
 
@@ -224,7 +229,8 @@ def _plain_correlation(first: Array, second: Array) -> Array:
 
 def _by_month(work: _Work) -> xr.Dataset:
     """Return what stands on (starting_month, lead): pairs a year apart, with the memory at lags of whole years."""
-    yearly = tuple(memory[..., ::12] for memory in work.memories)
+    # Within a calendar month the spread of either is constant.
+    yearly = [memory.autocorrelation[::12] for memory in work.memories]
     one, other = _independent_pairs(work)
     statistics, simulated = [], []
     for month in range(1, 13):
@@ -257,7 +263,7 @@ def _stacked(statistics: Sequence[PairedStatistics], least: int) -> PairedStatis
 
 def _by_sign(work: _Work) -> xr.Dataset:
     centred = work.predictor.values - np.nanmean(work.predictor.values)
-    slopes, errors = split_regression(centred, work.ahead)
+    slopes, errors = split_regression(centred, work.ahead, work.months)
     names = {"regression_slope_by_sign": slopes, "regression_slope_error_by_sign": errors}
     return xr.Dataset(
         {name: (("sign", "lead"), values) for name, values in names.items()},
@@ -275,7 +281,7 @@ def _in_windows(work: _Work) -> xr.Dataset:
     for number, first in enumerate(starts):
         inside = slice(first, first + length)
         ahead = shifted(work.target.values[inside], work.leads)
-        found = paired_statistics(work.predictor.values[inside], ahead, *work.memories)
+        found = work.statistics(inside)
         statistics.append(found)
         resampled = _resampled(work, ahead, found, 2 + number, first)
         peaks.append(peak(found.correlation, resampled, work.leads, work.settings.level))

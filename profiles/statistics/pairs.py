@@ -47,7 +47,15 @@ def _normal_quantile(level: float) -> float:
     return float(stdtrit(1e12, 0.5 + level / 2.0))
 
 
-def paired_statistics(first: Array, second: Array, first_memory: Array, second_memory: Array) -> PairedStatistics:
+def paired_statistics(
+    first: Array,
+    second: Array,
+    first_memory: Array,
+    second_memory: Array,
+    *,
+    first_scale: Array | float = 1.0,
+    second_scale: Array | float = 1.0,
+) -> PairedStatistics:
     """Return correlation, regression and their test for pairs of values.
 
     Parameters
@@ -56,6 +64,9 @@ def paired_statistics(first: Array, second: Array, first_memory: Array, second_m
         At equal steps. A pair counts where both are finite.
     first_memory, second_memory : ndarray, shape (..., time)
         Autocorrelation of each at lags of 0, 1, ... of those steps, at least as many as there are times.
+    first_scale, second_scale : ndarray, shape (..., time), or float
+        Standard deviation of each at each time, up to a factor, where it changes, as with the season; finite wherever
+        the series is. The autocorrelation is then that of the series over it.
 
     Returns
     -------
@@ -77,8 +88,10 @@ def paired_statistics(first: Array, second: Array, first_memory: Array, second_m
     x, x_size = _unit(first, both, usable)
     y, y_size = _unit(second, both, usable)
     correlation = np.clip((x * y).sum(axis=-1), -1.0, 1.0)
-    mask = lagged_products(both.astype(np.float64))
-    variance = np.maximum(_variance(x, second_memory, mask, usable), _variance(y, first_memory, mask, usable))
+    variance = np.maximum(
+        _variance(x, second_memory, np.where(both, second_scale, 0.0), usable),
+        _variance(y, first_memory, np.where(both, first_scale, 0.0), usable),
+    )
     effective = np.minimum(1.0 + 1.0 / variance, usable)
     freedom = np.where(effective > 2.0, effective - 2.0, np.nan)
     unexplained = np.maximum(1.0 - correlation**2, 1e-15)
@@ -115,9 +128,9 @@ def lagged_products(values: Array) -> Array:
     return products
 
 
-def _variance(unit: Array, memory: Array, mask: Array, count: Array) -> Array:
-    """Return u'Ru / tr(PRP) over the pairs."""
+def _variance(unit: Array, memory: Array, scale: Array, count: Array) -> Array:
+    """Return u'Ru / tr(PRP) over the pairs; ``scale`` is 0 elsewhere."""
     length = unit.shape[-1]
-    spread = (lagged_products(unit) * memory[..., :length]).sum(axis=-1)
-    trace = count - (mask * memory[..., :length]).sum(axis=-1) / count
+    spread = (lagged_products(unit * scale) * memory[..., :length]).sum(axis=-1)
+    trace = (scale**2).sum(axis=-1) - (lagged_products(scale) * memory[..., :length]).sum(axis=-1) / count
     return np.where(np.isfinite(unit).all(axis=-1), spread / trace, np.nan)
