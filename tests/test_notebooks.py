@@ -25,7 +25,8 @@ def printed(notebook: Any) -> str:
     return "".join(output.text for output in outputs if output.output_type == "stream" and output.name == "stdout")
 
 
-@pytest.mark.filterwarnings("ignore")  # of the machinery that runs notebooks; the code's own warnings come from its tests
+# What runs notebooks warns of matters of its own; the warnings of our code are looked for below.
+@pytest.mark.filterwarnings("ignore")
 def test_the_notebook_on_precursors_runs_and_shows_its_figures() -> None:
     notebook = executed("volume_precursor")
     pictures = [

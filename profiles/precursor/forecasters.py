@@ -1,8 +1,8 @@
 """Ways to forecast an index from what one month knows: each, once fitted, a table of coefficients.
 
-A fitted forecaster is an array (lead, month, variable): the forecast for ``lead`` months ahead, from a start in a calendar
-month, is the sum over variables of coefficient times anomaly at the start. Anomalies are over their standard deviation in
-their calendar month, so coefficients compare. The first variable is the index itself.
+A fitted forecaster is an array (lead, month, variable): the forecast for ``lead`` months ahead, from a start in a
+calendar month, is the sum over variables of coefficient times anomaly at the start. Anomalies are over their standard
+deviation in their calendar month, so coefficients compare. The first variable is the index itself.
 """
 
 from __future__ import annotations

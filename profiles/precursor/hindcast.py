@@ -135,11 +135,11 @@ def issue(
 ) -> Issued:
     """Fit everything on ``used`` months, learn the spread by leaving out parts of them in turn, and forecast."""
     month = calendar_month(series[0]["time"]) - 1
-    standard, centre = _fitted(series, used, volume, settings, detrend=detrend)
+    standard, centre = fitted(series, used, volume, settings, detrend=detrend)
     departures = {name: np.full((settings.longest_lead, month.size), np.nan) for name in centre}
     started = by_target(np.broadcast_to(np.where(used, 0.0, np.nan), (settings.longest_lead, month.size)))
     for part in blocks(used, settings.spread_blocks, settings.longest_lead):
-        inner, guesses = _fitted(series, part.used, volume, settings, detrend=detrend)
+        inner, guesses = fitted(series, part.used, volume, settings, detrend=detrend)
         for name, guess in guesses.items():
             departure = by_target(guess) - inner.anomaly + started  # neither start nor target outside ``used``
             departures[name][:, part.held] = departure[:, part.held]
@@ -148,16 +148,19 @@ def issue(
     return Issued(standard, centre, spread, used.sum() / 12.0 - 1.0, usual)
 
 
-def _fitted(
+def fitted(
     series: Sequence[xr.DataArray], used: Mask, volume: int | None, settings: HindcastSettings, *, detrend: bool
 ) -> tuple[Standardised, dict[str, Array]]:
-    """Return anomalies and the forecasts, in the units of the index, (lead, time of the start)."""
+    """Fit everything but the spread on ``used`` months; return anomalies and forecasts, (lead, time of the start).
+
+    Forecasts are in the units of the index.
+    """
     month = calendar_month(series[0]["time"]) - 1
     standard = standardised(series, used, detrend=detrend)
-    fitted = fit_all(Training(standard.state, month, used, standard.scale, volume), settings)
+    tables = fit_all(Training(standard.state, month, used, standard.scale, volume), settings)
     aim = (month + np.arange(1, settings.longest_lead + 1)[:, None]) % 12
     return standard, {
-        name: forecasts(table, standard.state, month) * standard.scale[aim] for name, table in fitted.items()
+        name: forecasts(table, standard.state, month) * standard.scale[aim] for name, table in tables.items()
     }
 
 
@@ -228,12 +231,12 @@ def hindcast(
     -------
     xarray.Dataset
         On ``time``, the month forecast, the months that all series span. ``forecast`` (forecaster, lead, time), an
-        anomaly in the units of the index, and its ``spread``, one standard deviation; ``probability`` (forecaster, lead,
-        time, category); ``observed`` (time), the anomaly that came, from the climatology of the fold, and
-        ``observed_category`` (0 cold, 1 neutral, 2 warm, -1 none). ``forecast_without`` (block, forecaster, lead, time) and
-        ``observed_without`` (block, time) are the same when one more block of years is left out of all that is fitted:
-        what the errors of the scores come from. NaN where the month lies less than the lead after
-        the first, where the start lacks a value, and where, in an expanding window, too few years precede.
+        anomaly in the units of the index, and its ``spread``, one standard deviation; ``probability`` (forecaster,
+        lead, time, category); ``observed`` (time), the anomaly that came, from the climatology of the fold, and
+        ``observed_category`` (0 cold, 1 neutral, 2 warm, -1 none). ``forecast_without`` (block, forecaster, lead,
+        time) and ``observed_without`` (block, time) are the same when one more block of years is left out of all that
+        is fitted: what the errors of the scores come from. NaN where the month lies less than the lead after the
+        first, where the start lacks a value, and where, in an expanding window, too few years precede.
 
     Raises
     ------
@@ -255,8 +258,8 @@ def hindcast(
         for left_out in np.setdiff1d(block, block[part.held]):
             used = part.used & (block != left_out)
             if used.sum() >= 12 * LEAST_REFITTED:
-                fitted = _fitted(series, used, volume, settings, detrend=detrend)
-                tables.fill_without(int(left_out), part.held, *fitted)
+                refitted = fitted(series, used, volume, settings, detrend=detrend)
+                tables.fill_without(int(left_out), part.held, *refitted)
     return tables.labelled(series[0], predictors, settings)
 
 
@@ -311,8 +314,8 @@ def _usable_folds(parts: list[Fold], series: Sequence[xr.DataArray], settings: H
     found = f"{whole.size} months, {int(whole.sum())} with a value in every series, {effective:.0f} effective"
     raise DataError(
         "the record is too short for a hindcast",
-        expected=f"{12 * settings.least_training_years} months or more to fit on, without the year that is forecast and "
-        f"the {settings.longest_lead} months on either side",
+        expected=f"{12 * settings.least_training_years} months or more to fit on, without the year that is forecast "
+        f"and the {settings.longest_lead} months on either side",
         found=f"{found}; at most {most} to fit on",
         advice="bring a longer record, or ask for shorter leads",
     )

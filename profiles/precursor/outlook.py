@@ -79,14 +79,14 @@ def outlook(
     Returns
     -------
     xarray.Dataset
-        On ``lead``, with the coordinate ``target`` (middle of the month forecast): ``forecast``, an anomaly in the units of
-        the index from the climatology of the whole record; its ``spread``, one standard deviation, learnt out of
-        sample; ``plume`` (lead, quantile); ``probability`` and ``usual_probability`` (lead, category), of the forecast
-        and of any year; ``status`` (lead), of :class:`OutlookStatus`. NaN where it is withheld. The attributes hold the
-        ``caution``, the ``start`` month and ``reason``, in words, where anything is withheld.
+        On ``lead``, with the coordinate ``target`` (middle of the month forecast): ``forecast``, an anomaly in the
+        units of the index from the climatology of the whole record; its ``spread``, one standard deviation, learnt out
+        of sample; ``plume`` (lead, quantile); ``probability`` and ``usual_probability`` (lead, category), of the
+        forecast and of any year; ``status`` (lead), of :class:`OutlookStatus`. NaN where it is withheld. The
+        attributes hold the ``caution``, the ``start`` month and ``reason``, in words, where anything is withheld.
 
-        A lead is withheld where the lower end of the 95 % interval of ``skill_climatology`` or ``probability_skill`` is not
-        above 0, at it or a shorter one; and where their estimates for its target season are not.
+        A lead is withheld where the lower end of the 95 % interval of ``skill_climatology`` or ``probability_skill``
+        is not above 0, at it or a shorter one; and where their estimates for its target season are not.
 
     Raises
     ------

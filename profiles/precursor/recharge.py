@@ -36,7 +36,7 @@ _INTERVAL = (2.5, 97.5)  # percentiles
 
 @dataclass(frozen=True)
 class Propagator:
-    """``matrix`` (2, 2): z(t + step) = matrix z(t) + e; ``noise`` (2, 2) covariance of e; ``pairs`` it was fitted on."""
+    """``matrix`` (2, 2) of z(t + step) = matrix z(t) + e; ``noise`` (2, 2), covariance of e; ``pairs`` fitted on."""
 
     matrix: Array
     noise: Array
@@ -60,7 +60,9 @@ def fit_propagator(state: Array, *, step: int = 1, used: NDArray[np.bool_] | Non
     DataError
         Where fewer than :data:`LEAST_PAIRS` pairs are left.
     """
-    known = np.isfinite(state).all(axis=0) & (True if used is None else used)
+    known: NDArray[np.bool_] = np.asarray(np.isfinite(state).all(axis=0))
+    if used is not None:
+        known = known & used
     first = np.flatnonzero(known[:-step] & known[step:])
     if first.size < LEAST_PAIRS:
         raise DataError(
@@ -69,7 +71,7 @@ def fit_propagator(state: Array, *, step: int = 1, used: NDArray[np.bool_] | Non
             found=str(first.size),
         )
     before, after = _centred(state[:, first]), _centred(state[:, first + step])
-    matrix = np.linalg.solve(before @ before.T, before @ after.T).T
+    matrix = np.asarray(np.linalg.solve(before @ before.T, before @ after.T).T, dtype=np.float64)
     rest = after - matrix @ before
     return Propagator(matrix, rest @ rest.T / (first.size - state.shape[0] - 1), int(first.size))
 

@@ -1,11 +1,11 @@
 """Scores of a hindcast by lead and target season, each with an interval that respects autocorrelation.
 
-Forecasts of neighbouring months, and of neighbouring leads, share their fate: an event is hit or missed as a whole. And
-all forecasts share what was fitted. So the error of a score comes from leaving out blocks of years in turn, of what is
-scored and, for all scores of the forecast itself, of what is fitted (the delete-a-group jackknife; Miller 1974,
-Biometrika 61, 1-15), on a scale where the score is more nearly normal, with Student's t of as many degrees of freedom as
-there are blocks, less one. Scores of probabilities take the fitted as given. ``tests/bench/reliability.py`` prints how
-often the intervals hold.
+Forecasts of neighbouring months, and of neighbouring leads, share their fate: an event is hit or missed as a whole.
+And all forecasts share what was fitted. So the error of a score comes from leaving out blocks of years in turn, of
+what is scored and, for all scores of the forecast itself, of what is fitted (the delete-a-group jackknife; Miller
+1974, Biometrika 61, 1-15), on a scale where the score is more nearly normal, with Student's t of as many degrees of
+freedom as there are blocks, less one. Scores of probabilities take the fitted as given. ``tests/bench/reliability.py``
+prints how often the intervals hold.
 """
 
 from __future__ import annotations
@@ -68,7 +68,7 @@ def _skill(ratio: Array) -> Array:
 
 @dataclass(frozen=True)
 class Score:
-    """A score: what it is, and the scale, there and back, on which its error is taken. ``units`` of the index if None."""
+    """A score: what it is, the scale, there and back, on which its error is taken; ``units`` None: of the index."""
 
     long_name: str
     to: Callable[[Array], Array] = _same
@@ -142,7 +142,7 @@ def season_weights(month: NDArray[np.int64]) -> Array:
 
 @dataclass(frozen=True)
 class _Sums:
-    """Weighted means over time; ``count`` (replicate, lead, season), the others (replicate, forecaster, lead, season)."""
+    """Weighted means over time: (replicate, forecaster, lead, season); ``count`` (replicate, lead, season)."""
 
     count: Array
     forecast: Array
@@ -192,9 +192,10 @@ def _scored(hindcast: xr.Dataset) -> NDArray[np.bool_]:
 
 
 def _refitted(hindcast: xr.Dataset, valid: NDArray[np.bool_]) -> tuple[Array, Array]:
-    """Return forecasts and what came, (replicate, forecaster, lead, time): all, then without each block; 0 if not valid.
+    """Return forecasts and what came, (replicate, forecaster, lead, time): as made, then without each block.
 
-    Where no forecast could be fitted without the block, or the month lies in it, the one with it stands.
+    0 where ``valid`` is false. Where no forecast could be fitted without the block, or the month lies in it, the one
+    with it stands.
     """
     forecast, observed = hindcast["forecast"].values, hindcast["observed"].values
     if "forecast_without" not in hindcast:
@@ -239,9 +240,7 @@ def _scores(sums: _Sums, names: list[str]) -> dict[str, Array]:
     return scores | {"overconfidence": sums.sharpness - sums.earned}
 
 
-def _labelled(
-    hindcast: xr.Dataset, scores: Mapping[str, Array], count: NDArray[np.int64], blocks: int
-) -> xr.Dataset:
+def _labelled(hindcast: xr.Dataset, scores: Mapping[str, Array], count: NDArray[np.int64], blocks: int) -> xr.Dataset:
     dims = ("forecaster", "lead", "season")
     variables: dict[str, Any] = {}
     for name, values in scores.items():
@@ -272,8 +271,8 @@ def reliability(hindcast: xr.Dataset, *, first_lead: int = 1, last_lead: int | N
     xarray.Dataset
         ``observed_share`` with ``_low`` and ``_high`` (95 %, from leaving out blocks of years), the mean
         ``stated_probability`` and ``count`` on (forecaster, category, bin), tenths of probability; and
-        ``reliability_slope`` and ``overconfidence``, as in :func:`verify`, with their intervals, on (forecaster). NaN where a
-        bin is empty.
+        ``reliability_slope`` and ``overconfidence``, as in :func:`verify`, with their intervals, on (forecaster). NaN
+        where a bin is empty.
     """
     part = hindcast.sel(lead=slice(first_lead, last_lead))
     year = month_of(part["time"]).astype("datetime64[Y]").astype(np.int64)

@@ -22,7 +22,6 @@ from profiles.report.tables import text, views
 from profiles.store import write_text
 from profiles.vocabulary import CAUTION
 
-
 #: The line of the contents that leads to the section on precursors, where there is one.
 PRECURSOR_LINK = '<li><a href="#precursor">Precursors of the index</a></li>\n'
 

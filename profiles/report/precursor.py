@@ -160,7 +160,7 @@ def lead_lag_in_windows(lead_lag: xr.Dataset) -> Figure:
     lead = _edges(lead_lag["lead"].values)
     for axis, name in zip(panels, predictors, strict=True):
         one = lead_lag.sel(predictor=name).transpose("window", "lead", ...)
-        centre = date2num(one["window"].values)
+        centre = _days(one["window"].values)
         _mesh(axis, _edges(centre), lead, one["correlation_in_window"].values.T, style.ANOMALY, (-1.0, 1.0))
         strongest = one["peak_lead_in_window"].values
         below, above = (
@@ -224,7 +224,7 @@ def skill_by_lead(scores: xr.Dataset) -> Figure:
 
 @style.styled
 def skill_by_season(scores: xr.Dataset, *, forecaster: str) -> Figure:
-    """Draw the correlation by lead and target season of damped persistence and of a forecast, and what the latter gains."""
+    """Draw correlations by lead and target season, of damped persistence and of a forecast, and what that gains."""
     parts = scores.sel(season=[str(name) for name in scores["season"].values if name != WHOLE_YEAR])
     figure, panels = _panels(3, 3, height=3.9, right=0.93, between=0.1, legend=False)
     panels[1].tick_params(labelleft=False)
@@ -244,7 +244,9 @@ def skill_by_season(scores: xr.Dataset, *, forecaster: str) -> Figure:
         axis.set_xticks(range(12), [str(name) for name in one["season"].values], rotation=90, fontsize=8)
         axis.set_title(title, fontsize=10.5)
         axis.set_xlabel("target season")
-        axis.yaxis.set_major_locator(FixedLocator(scores["lead"].values[[0, *range(2, scores.sizes["lead"], 3)]]))
+        axis.yaxis.set_major_locator(
+            FixedLocator([float(scores["lead"][at]) for at in (0, *range(2, scores.sizes["lead"], 3))])
+        )
     panels[0].set_ylabel("lead (months)")
     _bar_beside(figure, panels[1], style.DEPTH, (0.0, 1.0), "")
     _bar_beside(figure, panels[2], style.ANOMALY, (-0.8, 0.8), "")
@@ -293,8 +295,8 @@ def reliability_diagram(reliability: xr.Dataset, *, forecaster: str) -> Figure:
     axis.set_ylim(0.0, 1.0)
     axis.set_ylabel("share of times that it came")
     axis.legend(loc="upper left")
-    slope, low, high = (float(one[f"reliability_slope{end}"]) for end in ("", "_low", "_high"))
-    axis.text(0.98, 0.04, f"slope {slope:.2f} ({low:.2f} to {high:.2f})", ha="right", transform=axis.transAxes)
+    slope, least, most = (float(one[f"reliability_slope{end}"]) for end in ("", "_low", "_high"))
+    axis.text(0.98, 0.04, f"slope {slope:.2f} ({least:.2f} to {most:.2f})", ha="right", transform=axis.transAxes)
     below.set_xlabel("probability that was stated")
     below.set_ylabel("forecasts (%)")
     _headline(figure, "What came of stated probabilities")
@@ -324,9 +326,9 @@ def outlook_plume(outlook: xr.Dataset, anomaly: xr.DataArray) -> Figure:
     above.plot(recent["time"], recent.values, color=style.BLACK, linewidth=1.6, label="observed")
     _draw_plume(above, outlook.isel(lead=given), recent)
     _draw_probabilities(below, outlook.isel(lead=given))
-    ends = date2num(outlook["target"].values)
+    ends = _days(outlook["target"].values)
     for axis in (above, below):
-        axis.axvline(date2num(recent["time"].values[-1]), color=style.INK, linewidth=0.8)
+        axis.axvline(_days(recent["time"].values)[-1], color=style.INK, linewidth=0.8)
         if not given.all():
             first = ends[~given][0] - 15.0
             axis.axvspan(first, ends[-1] + 15.0, facecolor="none", edgecolor=style.MISSING, hatch="////", linewidth=0)
@@ -335,7 +337,7 @@ def outlook_plume(outlook: xr.Dataset, anomaly: xr.DataArray) -> Figure:
             0.5 * (first + ends[-1] + 15.0), 0.5, "withheld", ha="center", va="center", fontsize=10,
             bbox={"facecolor": "white", "edgecolor": style.LACKING, "pad": 3.0},
         )  # fmt: skip
-    above.set_xlim(date2num(recent["time"].values[0]), ends[-1] + 15.0)
+    above.set_xlim(_days(recent["time"].values)[0], ends[-1] + 15.0)
     above.tick_params(labelbottom=False)
     style.time_axis(below)
     above.set_ylabel(f"anomaly of the index ({units})")
@@ -359,7 +361,7 @@ def _beside_probabilities(outlook: xr.Dataset) -> str:
     """Return what is to be known of the probabilities, in lines that fit beside them."""
     threshold = f"{float(outlook.attrs['threshold']):g} {_units(outlook['forecast'])}"
     words = [
-        f"Numbers: probability (%) of an anomaly of {threshold} or more above zero (warm), below it (cold), or between.",
+        f"Numbers: probability (%) of an anomaly of {threshold} or more above zero (warm), below (cold), or between.",
         "Dotted: how often they come at that time of the year.",
     ]
     reason = str(outlook.attrs.get("reason", ""))
@@ -382,7 +384,7 @@ def _draw_plume(axis: Axes, given: xr.Dataset, recent: xr.DataArray) -> None:
     for (low, high), opacity in zip(pairs, (0.25, 0.45), strict=True):
         ends = [from_last(given["plume"].sel(quantile=end).values) for end in (low, high)]
         label = f"{100 * (high - low):.0f} % of outcomes"
-        axis.fill_between(time, *ends, color=style.BLUE, alpha=opacity, linewidth=0, label=label)
+        axis.fill_between(time, ends[0], ends[1], color=style.BLUE, alpha=opacity, linewidth=0, label=label)
     axis.plot(
         time,
         from_last(given["forecast"].values),
@@ -497,6 +499,11 @@ def readable(units: str) -> str:
     return {"degree_Celsius": "°C", "1": "standard deviations", "m (1000 km)-1": "m per 1000 km"}.get(units, units)
 
 
+def _days(time: NDArray[np.datetime64]) -> Floats:
+    """Return times as the axes count them, in days."""
+    return np.asarray(date2num(time), dtype=np.float64)  # type: ignore[no-untyped-call]
+
+
 def month_label(month: str) -> str:
     """Return a month, 2070-12, as people write it."""
     return datetime.strptime(month, "%Y-%m").strftime("%B %Y")
@@ -608,7 +615,7 @@ def write_precursor_figures(
     dict
         The files by the name of the figure, in the order in which a report shows them.
     """
-    lead_lag = precursor.sel(predictor=np.isfinite(precursor["correlation"]).any("lead"))
+    lead_lag = precursor.sel(predictor=precursor["correlation"].notnull().any("lead"))
     index = str(precursor.attrs["target"])
     figures: dict[str, Callable[[], Figure]] = {"precursor_lead_lag": lambda: lead_lag_curves(lead_lag)}
     if np.isfinite(lead_lag["correlation_by_month"]).any():

@@ -29,8 +29,8 @@ START = np.datetime64("2031-01", "M")
 class Case:
     """An oscillator and how it is seen.
 
-    ``lean`` is how much more the index is damped than the volume, as a share of the mean damping; ``drive`` the noise on
-    (index, volume); ``noise`` the error of a month's value over the standard deviation of the series.
+    ``lean`` is how much more the index is damped than the volume, as a share of the mean damping; ``drive`` the noise
+    on (index, volume); ``noise`` the error of a month's value over the standard deviation of the series.
     """
 
     name: str

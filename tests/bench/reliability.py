@@ -8,13 +8,14 @@ one that a setting was chosen on.
 
 Printed for each forecaster: the mean over seeds of the reliability slope with all leads together, its standard error,
 least and largest; and of the overconfidence (sharpness less what was earned, in points of probability), which must not
-be above 0. By lead: skill and slope of the combined forecast, and the share of seeds in which the 95 % interval of its
-scores holds the mean over seeds.
+be above 0. By lead: skill and slope of the combined forecast, and the share of seeds in which the 95 % interval of a
+score holds the truth: what the same forecast, fitted on the whole record, scores on the other oceans.
 """
 
 from __future__ import annotations
 
 import argparse
+from collections.abc import Sequence
 
 import numpy as np
 import xarray as xr
@@ -27,16 +28,19 @@ from profiles.drill.streams import stream
 from profiles.drill.supplements import COMPANION_SURFACE_SD, INDEX_LONGITUDE
 from profiles.drill.truth import LATITUDE, array_truth, cells
 from profiles.precursor import hindcast, monthly_series, reliability, verify
-from profiles.precursor.series import middle_of
-from profiles.precursor.verification import SCORES
+from profiles.precursor.forecasters import by_target
+from profiles.precursor.hindcast import aligned, fitted, place_of_volume
+from profiles.precursor.series import middle_of, month_of
+
+Record = tuple[xr.DataArray, dict[str, xr.DataArray]]
 
 #: Standard deviation and month-to-month memory of the error of each, as measured on the companion (truth less map).
 ERRORS = {"volume": (0.26e14, 0.85), "western_volume": (0.25e14, 0.85), "tilt": (0.5, 0.5)}
-COVERED = ("correlation", "rms", "skill_climatology", "reliability_slope")
+COVERED = ("correlation", "rms", "skill_climatology", "skill_damped_persistence")
 FORECASTER = "combined"
 
 
-def ocean(seed: int, years: int) -> tuple[xr.DataArray, dict[str, xr.DataArray]]:
+def ocean(seed: int, years: int) -> Record:
     """Return the index and the predictors of an ocean."""
     time = middle_of(np.arange("2031-01", np.datetime64("2031-01", "M") + 12 * years, dtype="datetime64[M]"))
     simulated = Ocean.simulate(time, seed)
@@ -59,9 +63,43 @@ def ocean(seed: int, years: int) -> tuple[xr.DataArray, dict[str, xr.DataArray]]
     return monthly_series(index, time, name="surface_temperature_index"), seen
 
 
+def scores_elsewhere(own: Record, others: Sequence[Record], settings: HindcastSettings) -> dict[str, np.ndarray]:
+    """Return what forecasts fitted on one record score on others, by lead."""
+    series = aligned(*own)
+    everything = np.ones(series[0].size, bool)
+    guesses: dict[str, list[np.ndarray]] = {}
+    came = []
+    for other in others:
+        # The other record in place of the own one, fitted on the own: climatology, scale and coefficients.
+        joined = [xr.DataArray(np.concatenate([mine.values, theirs.values]), dims="time", name=mine.name)
+                  for mine, theirs in zip(series, aligned(*other), strict=True)]  # fmt: skip
+        months = middle_of(month_of(series[0]["time"])[0] + np.arange(joined[0].size))
+        joined = [one.assign_coords(time=months) for one in joined]
+        used = np.concatenate([everything, np.zeros(joined[0].size - everything.size, bool)])
+        standard, centre = fitted(joined, used, place_of_volume(own[1]), settings, detrend=False)
+        kept = slice(everything.size + settings.longest_lead, None)
+        came.append(standard.anomaly[kept])
+        for name, guess in centre.items():
+            guesses.setdefault(name, []).append(by_target(guess)[:, kept])
+    observed = np.concatenate(came)
+    forecast = {name: np.concatenate(parts, axis=1) for name, parts in guesses.items()}
+    error = {name: ((guess - observed) ** 2).mean(axis=1) for name, guess in forecast.items()}
+    return {
+        "correlation": np.array([np.corrcoef(guess, observed)[0, 1] for guess in forecast[FORECASTER]]),
+        "rms": np.sqrt(error[FORECASTER]),
+        "skill_climatology": 1.0 - error[FORECASTER] / error["climatology"],
+        "skill_damped_persistence": 1.0 - error[FORECASTER] / error["damped_persistence"],
+    }
+
+
 def summaries(values: np.ndarray) -> list[float]:
     """Return mean, standard error, least and largest of the seeds."""
     return [values.mean(), values.std(ddof=1) / np.sqrt(values.size), values.min(), values.max()]
+
+
+def _held(scores: xr.Dataset, name: str, truth: Sequence[float]) -> np.ndarray:
+    """Return in which seeds the interval of a score holds the truth."""
+    return (scores[f"{name}_low"].values <= truth) & (truth <= scores[f"{name}_high"].values)
 
 
 def main() -> None:
@@ -72,8 +110,10 @@ def main() -> None:
     options = parser.parse_args()
     settings = HindcastSettings(scheme=options.scheme)
     diagrams, scores = [], []
-    for seed in range(options.first, options.first + options.seeds):
-        made = hindcast(*ocean(seed, options.years), settings=settings)
+    records = [ocean(seed, options.years) for seed in range(options.first, options.first + options.seeds)]
+    truth = [scores_elsewhere(own, [other for other in records if other is not own], settings) for own in records]
+    for record in records:
+        made = hindcast(*record, settings=settings)
         diagrams.append(reliability(made)[["reliability_slope", "overconfidence"]])
         scores.append(verify(made).sel(forecaster=FORECASTER, season="all", drop=True))
     pooled, by_lead = xr.concat(diagrams, "seed"), xr.concat(scores, "seed")
@@ -88,18 +128,10 @@ def main() -> None:
     for lead in by_lead["lead"].values:
         one = by_lead.sel(lead=lead)
         slope = summaries(one["reliability_slope"].values)
-        rows.append(
-            [f"{lead}", float(one["skill_climatology"].mean()), *slope, *(_held(one, name) for name in COVERED)]
-        )
+        held = [np.mean(_held(one, name, [true[name][lead - 1] for true in truth])) for name in COVERED]
+        rows.append([f"{lead}", float(one["skill_climatology"].mean()), *slope, *held])
     columns = ("lead", "skill", "slope", "error", "least", "largest", *(f"{name} held" for name in COVERED))
     show(f"{title}: {FORECASTER}", columns, rows)
-
-
-def _held(scores: xr.Dataset, name: str) -> float:
-    """Return how often the interval holds the mean over seeds, taken on the scale of the interval."""
-    score = SCORES[name]
-    mean = score.back(np.nanmean(score.to(scores[name].values)))
-    return float(((scores[f"{name}_low"] <= mean) & (mean <= scores[f"{name}_high"])).mean())
 
 
 if __name__ == "__main__":

@@ -1,8 +1,8 @@
 """The recharge model of Jin (1997) with its published parameters, and its oscillation found again in a record.
 
 Jin 1997, J. Atmos. Sci. 54, 811-829: dT/dt = R T + gamma h, dh/dt = -r h - alpha b T, R = gamma b - c, b = b0 mu, with
-c = 1, gamma = 0.75, r = 0.25, alpha = 0.125, b0 = 2.5, and time in units of two months. At mu = 2/3 it neither grows nor
-decays, and its period is 3.42 years; at 0.6 it is damped with 3.22, at 0.7 it grows with 3.59 years.
+c = 1, gamma = 0.75, r = 0.25, alpha = 0.125, b0 = 2.5, and time in units of two months. At mu = 2/3 it neither grows
+nor decays, and its period is 3.42 years; at 0.6 it is damped with 3.22, at 0.7 it grows with 3.59 years.
 """
 
 from __future__ import annotations

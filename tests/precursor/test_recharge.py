@@ -148,8 +148,8 @@ def test_labelled_oscillator_gives_rates_in_the_units_of_the_series(record: tupl
     found = recharge_oscillator(index, predictors["volume"], replicates=50)
     assert float(found["period_low"]) < 39.0 < float(found["period_high"])
     assert found["period"].attrs["units"] == "month"
-    # In the units of the series T = 0.9 w and h = 1e14 v, where dw/dt = sin(...) v: 2 pi/39 * 0.9 / 1e14 = 1.45e-15 °C per
-    # month and m3; the fit knows it to some 20 %.
+    # In the units of the series T = 0.9 w and h = 1e14 v, where dw/dt = sin(...) v: 2 pi/39 * 0.9 / 1e14 = 1.45e-15
+    # °C per month and m3; the fit knows it to some 20 %.
     assert float(found["rates"].sel(equation="index", term="volume")) == pytest.approx(1.45e-15, rel=0.35)
     assert float(found["rates"].sel(equation="volume", term="index")) < 0.0
 

@@ -62,7 +62,8 @@ def drawn(months: int, seed: int, *, boldness: float = 1.0) -> xr.Dataset:
 
 @pytest.fixture
 def worked() -> xr.Dataset:
-    """Two years: the forecast is 1 in one half of each year, -1 in the other; what comes is that, or 0 every third month."""
+    """Two years: the forecast is 1 in half of each year, -1 in the other; what comes is that, or 0 every third "
+    "month."""
     forecast = np.tile([1.0] * 6 + [-1.0] * 6, 2)
     observed = np.where(np.arange(24) % 3 == 2, 0.0, forecast)
     probability = np.where(forecast[:, None] > 0, [0.0, 0.25, 0.75], [0.75, 0.25, 0.0])
@@ -160,8 +161,8 @@ def test_interval_of_a_mean_is_that_of_students_t() -> None:
 
 
 def test_intervals_hold_the_score_where_errors_persist() -> None:
-    # Forecasts and errors that persist for some months: the interval of the correlation holds the true 1/sqrt(2) in about
-    # 19 of 20 records of 30 years. Of 60, fewer than 50 would hold in 1 of 1000 such tests.
+    # Forecasts and errors that persist for some months: the interval of the correlation holds the true 1/sqrt(2) in
+    # about 19 of 20 records of 30 years. Of 60, fewer than 50 would hold in 1 of 1000 such tests.
     held = 0
     for seed in range(60):
         noise = np.random.default_rng(seed).standard_normal((2, 360))
