@@ -82,7 +82,7 @@ def lead_lag_curves(lead_lag: xr.Dataset) -> Figure:
     for axis in panels[::columns]:
         axis.set_ylabel("correlation with the index")
     panels[0].legend(loc="lower left", bbox_to_anchor=(-0.02, 1.12), ncols=4, fontsize=9, borderpad=0.0)
-    _headline(figure, "How each predictor goes with the index, by lead")
+    _headline(figure, "Correlation of each predictor with the index so many months later")
     return figure
 
 
@@ -173,6 +173,7 @@ def lead_lag_in_windows(lead_lag: xr.Dataset) -> Figure:
         axis.set_ylim(lead[0], lead[-1])
         axis.yaxis.set_major_locator(MultipleLocator(12))
         axis.set_title(name_of(name), fontsize=11)
+        axis.tick_params(axis="x", labelsize=8)
         axis.set_xlabel("middle of the window" if axis in panels[-columns:] else "")
     for axis in panels[::columns]:
         axis.set_ylabel("lead (months)")
