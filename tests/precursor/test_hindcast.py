@@ -258,3 +258,25 @@ def test_a_constant_predictor_is_refused(record: tuple) -> None:
     index, predictors = record
     with pytest.raises(DataError, match="tilt: the series is constant"):
         hindcast(index, predictors | {"tilt": xr.zeros_like(index)})
+
+
+def test_forecasts_without_a_block_know_nothing_of_it(make_record: object) -> None:
+    index, predictors = make_record(15, 2)  # type: ignore[operator]
+    settings = HindcastSettings(longest_lead=3, spread_blocks=4, block_years=5)
+    place = np.arange(index.size)
+    block = (place >= 60) & (place < 120)  # the second of three
+    before = hindcast(index, predictors, settings=settings)
+    after = hindcast(
+        changed(index, block), {name: changed(one, block) for name, one in predictors.items()}, settings=settings
+    )
+    # Forecasts of years outside the block, from starts outside it, in its third month or later.
+    outside = np.flatnonzero(~block & ((place < 60) | (place >= 123)))
+    for name in ("forecast_without", "observed_without"):
+        np.testing.assert_array_equal(
+            after[name].isel(block=1, time=outside), before[name].isel(block=1, time=outside), err_msg=name
+        )
+        assert not np.allclose(
+            after[name].isel(block=0, time=outside[-12:]), before[name].isel(block=0, time=outside[-12:])
+        )
+    # Months of the block itself are not forecast without it.
+    assert np.isnan(before["forecast_without"].isel(block=1, time=np.flatnonzero(block))).all()

@@ -202,3 +202,21 @@ def test_leads_of_a_reliability_can_be_chosen(made: xr.Dataset) -> None:
 def test_a_hindcast_of_one_block_has_no_intervals(worked: xr.Dataset) -> None:
     with pytest.raises(DataError, match="too short for scores with intervals; expected two or more blocks of 3 years"):
         verify(worked.assign_attrs(block_years=3))
+
+
+def test_what_was_fitted_counts_in_the_error_of_a_score(worked: xr.Dataset) -> None:
+    # Without a block the forecast is three times as large, and its error another: the two years then no longer agree.
+    times = np.array([1.0, 3.0]).reshape(2, 1, 1, 1)
+    without = worked.assign(
+        forecast_without=(("block", *worked["forecast"].dims), worked["forecast"].values * times),
+        observed_without=(("block", "time"), np.stack([worked["observed"].values] * 2)),
+    )
+    plain, refitted = (verify(one).sel(forecaster="regression", lead=1, season="all") for one in (worked, without))
+    assert float(refitted["rms"]) == float(plain["rms"])
+    # Both years are alike: taking the fitted as given there is no error; with it the mean square is 1/3, or that of
+    # 2 where it was hit and 3 where it was not, (16 * 4 + 8 * 9) / 24 = 17/3.
+    assert float(plain["rms_high"]) == pytest.approx(float(plain["rms"]))
+    logs = 0.5 * np.log(np.array([1.0 / 3.0, 17.0 / 3.0]))
+    error = np.sqrt(0.5 * ((logs - logs.mean()) ** 2).sum())
+    expected = np.exp(logs[0] + stats.t.ppf(0.975, 1) * error)
+    assert float(refitted["rms_high"]) == pytest.approx(expected)
