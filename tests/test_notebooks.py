@@ -6,10 +6,9 @@ import os
 from pathlib import Path
 from typing import Any
 
+import nbclient
+import nbformat
 import pytest
-
-nbformat = pytest.importorskip("nbformat")
-nbclient = pytest.importorskip("nbclient")
 
 ROOT = Path(__file__).parents[1]
 
