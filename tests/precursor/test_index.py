@@ -109,9 +109,11 @@ def test_kelvin_that_is_not_stated_is_refused():
 
 
 def test_land_is_left_out_by_nan_and_by_the_relief():
-    # Nino-1+2 reaches the coast of South America: land cells hold 1000 where the file has a value there, or NaN.
+    # The box reaches the coast of Peru: 4 to 6S, 81 to 80W lies inland (Sullana, Chulucanas). Land cells hold 1000
+    # where the file has a value there, or NaN.
     field = grid(lambda row, column: 24.0 + 0 * row, np.arange(-14.5, 5), np.arange(265.5, 285))
-    land = (field["longitude"] > 279.6) & (field["latitude"] < -3.0)
+    land = (field["longitude"] == 279.5) & field["latitude"].isin([-4.5, -5.5])
+    assert int(land.sum()) == 2
     filled = field.where(~land, 1000.0)
     np.testing.assert_allclose(surface_temperature_index(filled, "nino12").values, 24.0)
     np.testing.assert_allclose(surface_temperature_index(field.where(~land), "nino12").values, 24.0)

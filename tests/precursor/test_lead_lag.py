@@ -105,7 +105,8 @@ def test_by_starting_month_is_that_month_of_the_predictor(planted, found):
     march = found.sel(starting_month=3, lead=6)
     assert march["correlation_by_month"] == pytest.approx(expected.rvalue)
     assert march["pair_count_by_month"] == place.size == 40
-    assert 10.0 < march["effective_size_by_month"] <= 40.0
+    # A year apart little is left of the memory: 0.9^12 = 0.28, twice in the product.
+    assert 30.0 < march["effective_size_by_month"] <= 40.0
 
 
 def test_a_month_with_too_few_years_is_missing_and_counted(planted):
