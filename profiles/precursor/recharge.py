@@ -174,6 +174,7 @@ class RechargeFit:
     decay_time : float
         e-folding time of the damping; of the slower mode where the fit does not oscillate.
     decay_time_interval : tuple of float
+        Its upper end is inf where the record does not tell the damping from none.
     decay_time_uncorrected : float
         As least squares gave it.
     oscillating_share : float
@@ -223,11 +224,16 @@ def fit_recharge(state: Array, *, step: int = STEP, replicates: int = REPLICATES
         corrected=better,
         period=_inverse(frequency, 2.0 * np.pi),
         period_interval=(_inverse(quick, 2.0 * np.pi), _inverse(slow, 2.0 * np.pi)),
-        decay_time=_inverse(decay),
-        decay_time_interval=(_inverse(high), _inverse(low)),
+        decay_time=_inverse(_damped(decay, step)),
+        decay_time_interval=(_inverse(_damped(high, step)), _inverse(_damped(low, step))),
         decay_time_uncorrected=_inverse(decay_and_frequency(fit.matrix, step)[0]),
         oscillating_share=float(np.mean(frequencies > 0.0)),
     )
+
+
+def _damped(decay: float | Array, step: int) -> float:
+    """Return a decay rate; 0 where it is that of the bound, which says no more than that there may be none."""
+    return float(decay) if float(decay) * step > -1.01 * np.log(_STABLE) else 0.0
 
 
 def _inverse(rate: float | Array, turn: float = 1.0) -> float:

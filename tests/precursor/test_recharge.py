@@ -143,6 +143,13 @@ def test_a_state_that_does_not_oscillate_says_so() -> None:
     assert fit.decay_time_interval[0] < -1.0 / np.log(0.95) < fit.decay_time_interval[1]
 
 
+def test_a_short_record_does_not_tell_slow_damping_from_none() -> None:
+    # Six years are less than two periods, and a tenth of the e-folding time.
+    matrix = turning(39.0, 700.0)
+    state = simulate(matrix, np.eye(2) - matrix @ matrix.T, 72, 1, np.random.default_rng(3))[0]
+    assert fit_recharge(state, step=1, replicates=100).decay_time_interval[1] == np.inf
+
+
 def test_labelled_oscillator_gives_rates_in_the_units_of_the_series(record: tuple) -> None:
     index, predictors = record
     found = recharge_oscillator(index, predictors["volume"], replicates=50)
