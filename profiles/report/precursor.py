@@ -459,13 +459,14 @@ def events_and_volume(precursor: xr.Dataset, index: str) -> Figure:
             markersize=8,
             markeredgecolor=style.INK,
             markeredgewidth=0.6,
-            label=f"{kind} ({int(chosen.sum())})",
+            label=f"{kind} ({int(np.isfinite(before).sum())})",
         )
     beside.axhline(0.0, color=style.LACKING, linewidth=0.8)
     beside.axvline(0.0, color=style.LACKING, linewidth=0.8)
     beside.set_xlabel(f"{label}\n{months} months before the onset")
     beside.set_ylabel(f"peak of the event ({_units(precursor['peak_value'])})")
-    beside.legend(loc="upper left")
+    beside.margins(0.12)
+    beside.legend(loc="lower left", bbox_to_anchor=(-0.02, 1.0), ncols=2)
     _headline(figure, f"Warm and cold events, and the {name_of(name)} before each")
     return figure
 

@@ -72,8 +72,7 @@ CAPTIONS: Mapping[str, Caption] = {
     "precursor_events": Caption(
         "Events",
         "Warm (orange, upward) and cold (green, downward) events by the stated rule, the predictor above them, and "
-        "its anomaly "
-        "six months before the onset of each event against the event's peak.",
+        "its anomaly six months before the onset of each event against the event's peak, where the record has both.",
         "Predictor and index against time with their warm and cold events, and a scatter of peak against predictor.",
     ),
     "precursor_skill": Caption(
