@@ -26,6 +26,10 @@ _FAR = 8.0  # robust standard deviations from the median beyond which a value of
 #: A temperature, or an anomaly of one, cannot lie beyond this in °C (the sea's is below 40); kelvin always does.
 LARGEST_TEMPERATURE = 60.0
 
+#: What a sea-surface temperature in kelvin looks like where no units are stated: its median, its standard deviation.
+SEA_IN_KELVIN = (271.0, 310.0)
+LARGEST_SPREAD = 10.0
+
 
 def month_of(time: ArrayLike | xr.DataArray) -> Months:
     """Return the calendar month of each time as ``datetime64[M]``."""
@@ -174,16 +178,16 @@ def _left_fill_values(numbers: Array) -> NDArray[np.intp]:
 
 
 def _check_temperature(present: Array, where: str, units: str | None) -> None:
-    if units is None or not units.startswith(("degree_C", "degC", "K")):
-        return
-    middle = float(np.median(present))
-    if abs(middle) > LARGEST_TEMPERATURE:
+    middle, spread = float(np.median(present)), float(np.std(present))
+    stated = units is not None and units.startswith(("degree_C", "degC", "K"))
+    kelvin = SEA_IN_KELVIN[0] < middle < SEA_IN_KELVIN[1] and spread < LARGEST_SPREAD
+    if (stated and abs(middle) > LARGEST_TEMPERATURE) or (units is None and kelvin):
         raise DataError(
             "the temperatures are not in °C",
             where=where,
             expected=f"degrees Celsius, at most {LARGEST_TEMPERATURE:g}",
-            found=f"a median of {middle:.1f}" + (", which looks like kelvin" if 200.0 < middle < 330.0 else ""),
-            advice="subtract 273.15, or state units = 'K' in a CF file",
+            found=f"a median of {middle:.1f}" + (", which looks like kelvin" if kelvin else ""),
+            advice="subtract 273.15, or state the units: 'K' in a CF file, or what else it is",
         )
 
 

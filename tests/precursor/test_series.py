@@ -113,6 +113,14 @@ def test_kelvin_taken_for_celsius_is_refused(shift):
         monthly_series(VALUES + shift, MONTHS, name="surface_temperature_index")
 
 
+def test_kelvin_without_a_name_or_units_is_refused_too():
+    with pytest.raises(
+        DataError, match=r"looks like kelvin; subtract 273.15, or state the units"
+    ):
+        monthly_series(VALUES + 273.15, MONTHS, name="x")
+    assert monthly_series(VALUES + 273.15, MONTHS, name="x", units="m").size == 24
+
+
 def test_other_quantities_may_be_large():
     assert monthly_series(1e15 * VALUES, MONTHS, name="warm_water_volume_total").attrs["units"] == "m3"
 
