@@ -26,8 +26,7 @@ _SHOWN_LEAD = 6  # months; the lead of the findings
 
 _FOLDS = (
     "Every year was forecast by what was fitted without it and without the months near it: climatology, scales, "
-    "coefficients "
-    "and spread alike."
+    "coefficients and spread alike."
 )
 _INTERVALS = (
     "95 % intervals come from leaving out blocks of years in turn, so that months that belong together count together."
@@ -37,36 +36,30 @@ CAPTIONS: Mapping[str, Caption] = {
     "precursor_outlook": Caption(
         "Outlook",
         "Anomaly of the index: observed, and forecast from the last month of the record, with the ranges that hold "
-        "50 and "
-        "90 % of outcomes; below, the probabilities of warm, neutral and cold. The spread was learnt from forecasts "
-        "of years "
-        "that were not fitted on. Leads and seasons at which the hindcast shows no skill are withheld.",
+        "50 and 90 % of outcomes; below, the probabilities of warm, neutral and cold. The spread was learnt from "
+        "forecasts of years that were not fitted on. Leads and seasons at which the hindcast shows no skill are "
+        "withheld.",
         "Plume of the forecast anomaly of the index against time after the observed one, above the probabilities of "
-        "warm, "
-        "neutral and cold by month.",
+        "warm, neutral and cold by month.",
         caution=True,
     ),
     "precursor_lead_lag": Caption(
         "Lead and lag",
         "Correlation of each predictor's monthly anomaly with the index so many months later. Band: 95 % interval "
-        "with the "
-        "effective sample size; points: significant by the t-test with that size, which decides; dotted: the "
-        "interval of a block "
-        "bootstrap. Diamond: the strongest lead with its 95 % interval.",
+        "with the effective sample size; points: significant by the t-test with that size, which decides; dotted: "
+        "the interval of a block bootstrap. Diamond: the strongest lead with its 95 % interval.",
         "Correlation with the index against lead, a panel for each predictor, with its interval.",
     ),
     "precursor_by_month": Caption(
         "By calendar month",
         "The same for each calendar month of the predictor, a year apart from pair to pair. Hatched: not "
-        "significant at 5 %; "
-        "of so many cells a twentieth would be significant by chance.",
+        "significant at 5 %; of so many cells a twentieth would be significant by chance.",
         "Correlation as colour against lead and calendar month, a panel for each predictor.",
     ),
     "precursor_windows": Caption(
         "Over the decades",
         "The same in moving windows of the record, by the middle of the window. Points: the strongest lead of each "
-        "window "
-        "with its 95 % interval. Neighbouring windows share most of their months.",
+        "window with its 95 % interval. Neighbouring windows share most of their months.",
         "Correlation as colour against the middle of the window and lead, a panel for each predictor.",
     ),
     "precursor_events": Caption(
@@ -82,18 +75,16 @@ CAPTIONS: Mapping[str, Caption] = {
     ),
     "precursor_seasons": Caption(
         "Hindcast by target season",
-        f"Scores by lead and the three months around the month forecast. {_INTERVALS} Where persistence drops "
-        f"across a season, "
-        "what the volume adds is largest.",
+        f"Scores by lead and the three months around the month forecast. {_INTERVALS} Where persistence drops across "
+        "a season, what the volume adds is largest.",
         "Correlation of damped persistence and of the forecast, and the gain, as colour against target season and "
         "lead.",
     ),
     "precursor_reliability": Caption(
         "Reliability",
         "How often a category came against the probability that it had been given, all leads together, with 95 % "
-        "intervals; "
-        "below, how often each probability was given. On the line the probabilities are right; flatter, they are "
-        "too bold.",
+        "intervals; below, how often each probability was given. On the line the probabilities are right; flatter, "
+        "they are too bold.",
         "Observed share against stated probability for warm, neutral and cold, above a histogram of stated "
         "probabilities.",
         half_width=True,
@@ -284,8 +275,7 @@ def _oscillator(oscillator: xr.Dataset) -> Finding:
     )
     note = (
         f"e-folding of its damping {decay}, {months('decay_time_uncorrected')} before the correction for the length "
-        f"of the "
-        "record; noise in the series damps it further"
+        "of the record; noise in the series damps it further"
     )
     return Finding("Period of the recharge oscillator", period, note)
 
