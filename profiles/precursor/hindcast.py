@@ -369,7 +369,8 @@ class _Tables:
     ) -> xr.Dataset:
         units = {"units": str(index.attrs.get("units", "1"))}
         dims = ("forecaster", "lead", "time")
-        category = categories(self.observed, settings.threshold)
+        category = categories(self.observed, settings.threshold).astype(np.int8)
+        flags = {"flag_values": np.arange(-1, 3, dtype=np.int8), "flag_meanings": " ".join(["none", *CATEGORIES])}
         dataset = xr.Dataset(
             {
                 "forecast": (dims, self.forecast, units | {"long_name": "forecast anomaly of the index"}),
@@ -386,7 +387,7 @@ class _Tables:
                     self.observed_without,
                     units | {"long_name": "anomaly that came, from the climatology without a block of years"},
                 ),
-                "observed_category": ("time", category, {"long_name": "category that came; -1: none"}),
+                "observed_category": ("time", category, flags | {"long_name": "category that came"}),
             },
             coords={
                 "forecaster": self.names,
