@@ -19,6 +19,9 @@ from profiles.precursor.recharge import fit_propagator, real_power
 Array = NDArray[np.float64]
 
 
+_LEAST_PAIRS = 24  # months with one a propagator's step later; fewer than for an oscillator with intervals (ours)
+
+
 @dataclass(frozen=True)
 class Training:
     """What a forecaster may see.
@@ -78,7 +81,7 @@ def recharge(training: Training, settings: HindcastSettings) -> Array:
     """The deterministic part of the recharge oscillator, started from index and volume."""
     chosen = [0, training.volume or 0]
     step = settings.propagator_months
-    fit = fit_propagator(training.state[chosen], step=step, used=training.used)
+    fit = fit_propagator(training.state[chosen], step=step, used=training.used, least=_LEAST_PAIRS)
     coefficients = training.none(settings.longest_lead)
     for lead, table in enumerate(coefficients, start=1):
         table[:, chosen] = real_power(fit.matrix, lead / step)[0]

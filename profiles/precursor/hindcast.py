@@ -306,7 +306,9 @@ def _names(volume: int | None) -> list[str]:
 
 def _usable_folds(parts: list[Fold], series: Sequence[xr.DataArray], settings: HindcastSettings) -> list[Fold]:
     whole = np.all([np.isfinite(one.values) for one in series], axis=0)
-    enough = [part for part in parts if (part.used & whole).sum() >= 12 * settings.least_training_years]
+    # Longer leads leave less of the training months when parts of them are left out in turn.
+    least = 12 * settings.least_training_years + 2 * max(settings.longest_lead - 12, 0)
+    enough = [part for part in parts if (part.used & whole).sum() >= least]
     if enough and (settings.scheme == "expanding" or len(enough) == len(parts)):
         return enough
     most = max(int((part.used & whole).sum()) for part in parts)
@@ -314,7 +316,7 @@ def _usable_folds(parts: list[Fold], series: Sequence[xr.DataArray], settings: H
     found = f"{whole.size} months, {int(whole.sum())} with a value in every series, {effective:.0f} effective"
     raise DataError(
         "the record is too short for a hindcast",
-        expected=f"{12 * settings.least_training_years} months or more to fit on, without the year that is forecast "
+        expected=f"{least} months or more to fit on, without the year that is forecast "
         f"and the {settings.longest_lead} months on either side",
         found=f"{found}; at most {most} to fit on",
         advice="bring a longer record, or ask for shorter leads",

@@ -43,7 +43,9 @@ class Propagator:
     pairs: int
 
 
-def fit_propagator(state: Array, *, step: int = 1, used: NDArray[np.bool_] | None = None) -> Propagator:
+def fit_propagator(
+    state: Array, *, step: int = 1, used: NDArray[np.bool_] | None = None, least: int = LEAST_PAIRS
+) -> Propagator:
     """Fit z(t + step) = M z(t) + e by least squares; pairs that lack a value are left out.
 
     Parameters
@@ -54,20 +56,22 @@ def fit_propagator(state: Array, *, step: int = 1, used: NDArray[np.bool_] | Non
         Months.
     used : ndarray of bool, shape (time,), optional
         Months that may be looked at. Default: all.
+    least : int
+        Pairs without which nothing is fitted.
 
     Raises
     ------
     DataError
-        Where fewer than :data:`LEAST_PAIRS` pairs are left.
+        Where fewer pairs than that are left.
     """
     known: NDArray[np.bool_] = np.asarray(np.isfinite(state).all(axis=0))
     if used is not None:
         known = known & used
     first = np.flatnonzero(known[:-step] & known[step:])
-    if first.size < LEAST_PAIRS:
+    if first.size < least:
         raise DataError(
             "too few months for a recharge oscillator",
-            expected=f"{LEAST_PAIRS} or more pairs of months {step} apart that have both index and volume",
+            expected=f"{least} or more pairs of months {step} apart that have both index and volume",
             found=str(first.size),
         )
     before, after = _centred(state[:, first]), _centred(state[:, first + step])

@@ -235,6 +235,22 @@ def test_a_record_of_six_years_is_too_short_and_its_effective_months_are_told(re
         hindcast(index[:72], short)
 
 
+@pytest.mark.parametrize("lead", [1, 12, 24])
+@pytest.mark.parametrize("scheme", ["years_out", "expanding"])
+def test_the_shortest_record_that_is_not_refused_gives_a_hindcast(record: tuple, lead: int, scheme: str) -> None:
+    settings = HindcastSettings(longest_lead=lead, scheme=scheme)  # type: ignore[arg-type]
+    index, predictors = record
+    # Training months that are asked for, twelve that are forecast, and the leads on one side or on both.
+    years = -(-(96 + 2 * max(lead - 12, 0) + 12 + (1 if scheme == "expanding" else 2) * lead) // 12)
+    short = {name: one[: 12 * years] for name, one in predictors.items()}
+    made = hindcast(index[: 12 * years], short, settings=settings)
+    assert np.isfinite(made["forecast"].sel(forecaster="combined", lead=1)).sum() >= 12
+    with pytest.raises(DataError, match="too short for a hindcast"):
+        hindcast(
+            index[: 12 * (years - 1)], {name: one[: 12 * (years - 1)] for name, one in short.items()}, settings=settings
+        )
+
+
 def test_a_centred_mean_is_refused(record: tuple) -> None:
     index, predictors = record
     smooth = running_mean(predictors["volume"], 3, kind="centred")
