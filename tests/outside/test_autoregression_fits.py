@@ -36,7 +36,7 @@ def test_effective_size_of_two_red_series_by_hand():
     generator = np.random.default_rng(1)
     first, second = (simulate(np.array([memory]), 3000, 200, generator) for memory in (0.9, 0.8))
     found = paired_statistics(first, second, 0.9 ** np.arange(3000), 0.8 ** np.arange(3000))
-    # The larger of two estimates of the variance is taken, which makes the size a few per cent smaller.
+    # The larger of two estimates of the variance counts more, which makes the size a few per cent smaller.
     assert 0.85 < np.mean(found.effective_size) / (3000.0 * 0.28 / 1.72) < 1.0
 
 

@@ -27,12 +27,13 @@ def test_effective_size_by_hand():
 
 def test_a_spread_that_changes_counts_by_hand():
     # As above, the second twice as wide at the third time: u o s = (-1, 0, 2) / sqrt 2. u'Ru = (1 + 4) / 2 - 2 / 4 = 2;
-    # tr(PRP) = 6 - (6 + 2 (1/2 + 2/2) + 2 * 2/4) / 3 = 8/3; var = 3/4. Of the first alone it was 9/14, which is less.
+    # tr(PRP) = 6 - (6 + 2 (1/2 + 2/2) + 2 * 2/4) / 3 = 8/3; var = 3/4. The other way it is 9/14 as before; the larger
+    # counts three times in the geometric mean.
     scale = np.array([1.0, 1.0, 2.0])
     found = paired_statistics(
         np.array([1.0, 2.0, 3.0]), np.array([5.0, 7.0, 9.0]), red(0.5), red(0.5), second_scale=scale
     )
-    assert found.effective_size == pytest.approx(1.0 + 4.0 / 3.0)
+    assert found.effective_size == pytest.approx(1.0 + 1.0 / ((3.0 / 4.0) ** 0.75 * (9.0 / 14.0) ** 0.25))
 
 
 def test_white_series_count_whole_and_give_the_textbook_test():
