@@ -78,11 +78,12 @@ def paired_statistics(
     Notes
     -----
     Let u be the first series over the pairs, its mean removed and of unit length. If the second is independent of it
-    and has the correlation matrix R over them, then var(r) = u'Ru / tr(PRP), P taking the mean away: the mean over u of
-    this is the product of the two autocorrelations, summed, of Bayley and Hammersley (1946) and Bartlett (1946). Here
-    the u of the record itself is kept. The same holds with the two exchanged; of the two variances the geometric mean
-    counts, the larger with a weight of 3/4, so the test is the same whichever comes first. No white series or full record is assumed: R has whatever shape was fitted, and
-    missing pairs drop out of u and P.
+    and has the covariance matrix R over them, up to a factor, then var(r) = u'Ru / tr(PRP), P taking the mean away: with
+    a constant spread the mean over u of this is the product of the two autocorrelations, summed, of Bayley and
+    Hammersley (1946) and Bartlett (1946). Here the u of the record itself is kept. The same holds with the two
+    exchanged; of the two variances the geometric mean counts, the larger with a weight of 3/4, so the test is the same
+    whichever comes first. No white series or full record is assumed: R has whatever shape was fitted, and missing pairs
+    drop out of u and P.
     """
     both = np.isfinite(first) & np.isfinite(second)
     count = both.sum(axis=-1).astype(np.float64)
