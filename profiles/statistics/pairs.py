@@ -78,8 +78,8 @@ def paired_statistics(
     Notes
     -----
     Let u be the first series over the pairs, its mean removed and of unit length. If the second is independent of it
-    and has the covariance matrix R over them, up to a factor, then var(r) = u'Ru / tr(PRP), P taking the mean away: with
-    a constant spread the mean over u of this is the product of the two autocorrelations, summed, of Bayley and
+    and has the covariance matrix R over them, up to a factor, then var(r) = u'Ru / tr(PRP), P taking the mean away:
+    with a constant spread the mean over u of this is the product of the two autocorrelations, summed, of Bayley and
     Hammersley (1946) and Bartlett (1946). Here the u of the record itself is kept. The same holds with the two
     exchanged; of the two variances the geometric mean counts, the larger with a weight of 3/4, so the test is the same
     whichever comes first. No white series or full record is assumed: R has whatever shape was fitted, and missing pairs
