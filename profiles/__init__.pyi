@@ -1,6 +1,7 @@
 from .column import isotherm_depth as isotherm_depth
 from .column import mixed_layer_depth as mixed_layer_depth
 from .ingest import read_delivery as read_delivery
+from .precursor import lead_lag as lead_lag
 from .qc import quality_control as quality_control
 from .section import objective_map as objective_map
 from .section import thermocline_slope as thermocline_slope
@@ -8,6 +9,7 @@ from .section import warm_water_volume as warm_water_volume
 
 __all__ = [
     "isotherm_depth",
+    "lead_lag",
     "mixed_layer_depth",
     "objective_map",
     "quality_control",

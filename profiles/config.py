@@ -178,8 +178,8 @@ class ColumnSettings(Settings):
     )
     series_error_persistent: NotNegative = Field(
         4.0,
-        description="m, the part that lasts through a deployment: 0.3 °C of a leaning line (McCarty et al. 1997) in 0.1 "
-        "°C per m make 3 m, a straight line across 50 m between sensors 2.2 m rms, a nominal depth 1 m (ours)",
+        description="m, the part that lasts through a deployment: 0.3 °C of a leaning line (McCarty et al. 1997) in "
+        "0.1 °C per m make 3 m, a straight line across 50 m between sensors 2.2 m rms, a nominal depth 1 m (ours)",
     )
 
 
@@ -235,6 +235,130 @@ class SectionSettings(Settings):
         west, east = self.tilt_window
         if west >= east:
             raise ValueError("tilt_window: expected the western end first")
+        return self
+
+
+# --------------------------------------------------------------------------------------------------------------
+# [precursor]
+
+
+class HindcastSettings(Settings):
+    """[precursor.hindcast]: how forecasts are made, verified out of sample and, where they show skill, issued."""
+
+    longest_lead: Annotated[int, Field(strict=True, ge=1, le=24)] = Field(
+        12, description="months from the last month known to the month forecast"
+    )
+    scheme: Literal["years_out", "expanding"] = Field(
+        "years_out",
+        description="years_out: each year is forecast from all others but those within the longest lead of it; "
+        "expanding: from earlier ones alone",
+    )
+    threshold: Positive = Field(
+        0.5,
+        description="units of the index; an anomaly beyond it is warm or cold (the published oceanic index: 0.5 °C)",
+    )
+    least_training_years: Annotated[int, Field(strict=True, ge=6)] = Field(
+        8, description="years; with fewer left to fit on, there is no hindcast (ours)"
+    )
+    shortest_outlook_record: Annotated[int, Field(strict=True, ge=10)] = Field(
+        15, description="years; a shorter record gives no outlook, whatever its hindcast says (ours)"
+    )
+    common_weight: Positive = Field(
+        10.0, description="months of data that weigh as much as the belief that a predictor says nothing (ours)"
+    )
+    seasonal_weight: Positive = Field(
+        100.0, description="months of data that weigh as much as the belief that its coefficient has no season (ours)"
+    )
+    propagator_months: Count = Field(
+        6, description="months over which the recharge oscillator is fitted; more: less damped by noise (ours)"
+    )
+    spread_blocks: Annotated[int, Field(strict=True, ge=4)] = Field(
+        10, description="parts of the training months that are left out in turn to learn the spread (ours)"
+    )
+    block_years: Count = Field(
+        3,
+        description="years that stay together where the error of a score is estimated; an event and its return (ours)",
+    )
+
+
+class LeadLagSettings(Settings):
+    """[precursor.lead_lag]: correlation and regression at each lead, and their significance."""
+
+    longest_lead: Annotated[int, Field(strict=True, ge=1, le=60)] = Field(
+        24, description="months; leads from minus this to plus this are tried"
+    )
+    level: Annotated[Number, Field(gt=0.5, lt=1.0)] = Field(
+        0.95, description="of every interval; what is significant is so at one minus this (common practice, no source)"
+    )
+    least_effective: Annotated[Number, Field(gt=3.0)] = Field(
+        6.0, description="effective months without which there is no correlation (ours)"
+    )
+    least_months: Annotated[int, Field(strict=True, ge=12)] = Field(
+        24, description="months in common without which there is no correlation (ours)"
+    )
+    least_years: Annotated[int, Field(strict=True, ge=4)] = Field(
+        10, description="years without which a calendar month has no correlation of its own (ours)"
+    )
+    window_months: Annotated[int, Field(strict=True, ge=60)] = Field(
+        180, description="months; length of the moving windows (15 years: three or four events, ours)"
+    )
+    window_step: Count = Field(12, description="months from one window to the next (ours)")
+    draws: Annotated[int, Field(strict=True, ge=100)] = Field(
+        1000, description="resampled records, and simulated pairs of independent series (common practice, no source)"
+    )
+    seed: Annotated[int, Field(strict=True, ge=0)] = Field(
+        1997, description="of the random numbers: the same series give the same figures"
+    )
+
+
+class EventSettings(Settings):
+    """[precursor.events]: what a warm or cold event is."""
+
+    running_mean: Count = Field(3, description="months, centred (the published oceanic index: 3; Trenberth 1997: 5)")
+    threshold: Positive = Field(
+        0.5, description="units of the index (the published oceanic index: 0.5 °C; Trenberth 1997: 0.4 °C)"
+    )
+    persistence: Count = Field(
+        5, description="months in a row beyond it (the published oceanic index: 5; Trenberth 1997: 6)"
+    )
+
+
+MonthName = Annotated[str, Field(pattern=r"^\d{4}-(0[1-9]|1[0-2])$")]
+
+
+class PrecursorSettings(Settings):
+    """[precursor]: volume, western volume and tilt as precursors of an index."""
+
+    base: tuple[MonthName, ...] = Field(
+        (),
+        description='first and last month of the base of anomalies, ["2031-01", "2060-12"]; empty: each record whole '
+        "(ours)",
+    )
+    detrend: bool = Field(False, description="whether a straight line in time is taken off with the climatology (ours)")
+    standardise: Literal["none", "whole", "month"] = Field(
+        "none",
+        description="whether anomalies are over their standard deviation, of all months or of each calendar month "
+        "(ours)",
+    )
+    running_mean: Count = Field(
+        1, description="months, trailing, over which volume, tilt and wind are averaged; 1: not at all (ours)"
+    )
+    box: str = Field(
+        "nino34",
+        description="of the index of surface temperature: nino12, nino3, nino34, nino4 (published boxes) or "
+        '"south,north,west,east" in degrees north and east',
+    )
+    patterns: Annotated[int, Field(strict=True, ge=0, le=5)] = Field(
+        2, description="leading patterns of the equatorial isotherm depth that are correlated besides (ours)"
+    )
+    lead_lag: LeadLagSettings = LeadLagSettings()
+    events: EventSettings = EventSettings()
+    hindcast: HindcastSettings = HindcastSettings()
+
+    @model_validator(mode="after")
+    def _two_months(self) -> Self:
+        if self.base and (len(self.base) != 2 or self.base[0] >= self.base[1]):
+            raise ValueError("base: expected the first month and the last, or none")
         return self
 
 
@@ -338,6 +462,7 @@ class Config(Settings):
     qc: QualityControlSettings = QualityControlSettings()
     column: ColumnSettings = ColumnSettings()
     section: SectionSettings = SectionSettings()
+    precursor: PrecursorSettings = PrecursorSettings()
 
     def resolve(self, path: Path) -> Path:
         """Return ``path`` as seen from the configuration file's folder."""
@@ -353,7 +478,7 @@ _COMMENT_WIDTH = 110
 
 def defaults_text() -> str:
     """Return ``config/defaults.toml``: every setting that has a default, its description as a comment above it."""
-    tables = {name: Config.model_fields[name].default for name in ("qc", "column", "section")}
+    tables = {name: Config.model_fields[name].default for name in ("qc", "column", "section", "precursor")}
     return "\n".join([_comment(_HEADER), *(_table_text(name, table) for name, table in tables.items())])
 
 

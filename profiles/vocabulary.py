@@ -309,8 +309,125 @@ _SECTION_VARIABLES = [
              _REFERENCE),
 ]  # fmt: skip
 
+_LEAD = ("lead",)
+_EVENT = ("event",)
+
+_SERIES_VARIABLES = [
+    Variable("surface_temperature_index", ("time",), "mean sea surface temperature of a box", DEGREES,
+             "sea_surface_temperature", "float64", extra=ON_SCALE),
+    Variable("surface_temperature_index_anomaly", ("time",), "anomaly of surface_temperature_index", DEGREES, None,
+             "float64", extra=DIFFERENCE),
+    Variable("pressure_difference_index", ("time",), "sea-level pressure of the eastern minus the western Pacific, standardised",
+             "1", None, "float64"),
+    Variable("pressure_difference_index_anomaly", ("time",), "anomaly of pressure_difference_index", "1", None, "float64"),
+    Variable("warm_water_volume_total", ("time",), "volume of water above the isotherm, 5S-5N, 120E-80W", "m3", None,
+             "float64"),
+    Variable("warm_water_volume_west", ("time",), "volume of water above the isotherm, 5S-5N, 120E-155W", "m3", None,
+             "float64"),
+    Variable("predictor", ("predictor",), "series that may come before the index", None, None, "str", "coordinate"),
+    Variable("predictor_anomaly", ("predictor", "time"), "anomaly of the predictor", "1", None, "float64"),
+    Variable("pattern", ("pattern",), "number of the pattern, by the variance it explains", "1", None, "int32", "coordinate"),
+    Variable("pattern_loading", ("pattern", "longitude"),
+             "isotherm depth of one standard deviation of a leading pattern along the equator", "m", None, "float64"),
+    Variable("pattern_share", ("pattern",), "share of variance that the pattern explains", "1", None, "float64"),
+    Variable("pattern_share_error", ("pattern",), "sampling error of pattern_share", "1", None, "float64", _QUALITY),
+    Variable("lead", _LEAD, "months by which the predictor comes before the target", "1", None, "int32", "coordinate"),
+    Variable("starting_month", ("starting_month",), "calendar month of the predictor", "1", None, "int32", "coordinate"),
+    Variable("sign", ("sign",), "sign of the predictor's anomaly", None, None, "str", "coordinate"),
+    Variable("window", ("window",), "middle of the moving window", None, "time", "float64", "coordinate"),
+    Variable("window_first", ("window",), "first month of the moving window", None, None, "float64", "coordinate"),
+    Variable("window_last", ("window",), "last month of the moving window", None, None, "float64", "coordinate"),
+    Variable("regression_slope_by_sign", ("sign", "lead"),
+             "slope of the target on positive and on negative anomalies of the predictor", "1", None, "float64"),
+    Variable("regression_slope_error_by_sign", ("sign", "lead"), "standard error of regression_slope_by_sign", "1", None,
+             "float64", _QUALITY),
+    Variable("bootstrap_lower", _LEAD, "lower end of the correlation's interval by the block bootstrap, shown beside", "1",
+             None, "float64", _QUALITY),
+    Variable("bootstrap_upper", _LEAD, "upper end of the correlation's interval by the block bootstrap, shown beside", "1",
+             None, "float64", _QUALITY),
+    Variable("bootstrap_p_value", _LEAD, "p-value of the block bootstrap, shown beside the one that decides", "1", None,
+             "float64", _QUALITY),
+    Variable("peak_correlation", (), "correlation at its strongest, of either sign", "1", None, "float64"),
+    Variable("precursor_correlation", (), "correlation at its strongest where the predictor comes first", "1", None, "float64"),
+    Variable("kind", _EVENT, "warm or cold", None, None, "str"),
+    Variable("onset", _EVENT, "first month beyond the threshold", None, None, "float64"),
+    Variable("end", _EVENT, "last month beyond the threshold, or of the record", None, None, "float64"),
+    Variable("peak", _EVENT, "month of the largest smoothed anomaly", None, None, "float64"),
+    Variable("peak_value", _EVENT, "smoothed anomaly at the peak", DEGREES, None, "float64", extra=DIFFERENCE),
+    Variable("duration", _EVENT, "months from onset to end, both counted", "1", None, "int32"),
+    Variable("whole", _EVENT, "1 where both onset and end lie within the record", "1", None, "int8", _QUALITY),
+    Variable("months_before", ("months_before",), "months before the onset of the event", "1", None, "int32", "coordinate"),
+    Variable("before_onset", ("predictor", "event", "months_before"),
+             "anomaly of the predictor so many months before the onset", "1", None, "float64"),
+    Variable("composite", ("predictor", "composite_kind", "lead"),
+             "mean anomaly of the predictor so many months before the peak of events", "1", None, "float64"),
+    Variable("composite_error", ("predictor", "composite_kind", "lead"), "standard error of composite, from event to event", "1", None,
+             "float64", _QUALITY),
+    Variable("composite_count", ("predictor", "composite_kind", "lead"), "number of events in composite", "1", None, "int32", _QUALITY),
+]  # fmt: skip
+
+
+def _lead_lag_variables() -> list[Variable]:
+    """Return what a lead-lag analysis gives: over all months, by starting month and in moving windows."""
+    places = {
+        "": (_LEAD, ""),
+        "_by_month": (("starting_month", "lead"), ", by starting month"),
+        "_in_window": (("window", "lead"), ", in moving windows"),
+    }
+    quantities = {
+        "correlation": ("correlation of predictor and target", "float64", "physicalMeasurement", "1"),
+        "correlation_lower": ("lower end of the interval of correlation, effective size", "float64", _QUALITY, "1"),
+        "correlation_upper": ("upper end of the interval of correlation, effective size", "float64", _QUALITY, "1"),
+        "regression_slope": ("slope of the target on the predictor", "float64", "physicalMeasurement", "1"),
+        "regression_slope_error": ("standard error of regression_slope, effective size", "float64", _QUALITY, "1"),
+        "pair_count": ("number of months with both values", "int32", _QUALITY, "1"),
+        "effective_size": ("effective number of independent months", "float64", _QUALITY, "1"),
+        "deciding_p_value": ("p-value of the t-test with the effective size, which decides", "float64", _QUALITY, "1"),
+        "significant": ("1 where the t-test with the effective size finds a correlation", "int8", _QUALITY, "1"),
+    }
+    field = {
+        "field_p_value": ("probability that independent series are anywhere as significant", "float64", "1"),
+        "significant_count": ("how many correlations are significant one by one", "int32", "1"),
+        "field_p_value_of_count": ("probability that of independent series as many are significant", "float64", "1"),
+    }
+    ends = {"": "", "_lower": ", lower end of its interval", "_upper": ", upper end of its interval"}
+    return [
+        *(
+            Variable(f"{name}{suffix}", dims, text + where, units, None, dtype, content)
+            for suffix, (dims, where) in places.items()
+            for name, (text, dtype, content, units) in quantities.items()
+        ),
+        *(
+            Variable(f"{name}{suffix}", (), text + where, units, None, dtype, _QUALITY)
+            for suffix, where in (("", ", over all leads"), ("_by_month", ", over all leads and starting months"))
+            for name, (text, dtype, units) in field.items()
+        ),
+        *(
+            Variable(f"{name}{end}", dims, f"months of lead at which the correlation is strongest{where}{text}", "1", None,
+                     "float64")
+            for name, dims, where in (("peak_lead", (), ""), ("precursor_lead", (), ", predictor first"))
+            for end, text in ends.items()
+        ),
+        *(
+            Variable(f"peak_lead{end}_in_window", ("window",),
+                     f"months of lead at which the correlation is strongest in the window{text}", "1", None, "float64")
+            for end, text in ends.items()
+        ),
+    ]  # fmt: skip
+
+
+_LEAD_LAG_VARIABLES = _lead_lag_variables()
+
 VARIABLES: Mapping[str, Variable] = {
-    variable.name: variable for variable in [*_COORDINATES, *_CHAIN_VARIABLES, *_COLUMN_VARIABLES, *_SECTION_VARIABLES]
+    variable.name: variable
+    for variable in [
+        *_COORDINATES,
+        *_CHAIN_VARIABLES,
+        *_COLUMN_VARIABLES,
+        *_SECTION_VARIABLES,
+        *_SERIES_VARIABLES,
+        *_LEAD_LAG_VARIABLES,
+    ]
 }
 
 

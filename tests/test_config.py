@@ -13,6 +13,7 @@ from profiles.config import (
     ColumnSettings,
     Config,
     Delivery,
+    PrecursorSettings,
     QualityControlSettings,
     SectionSettings,
     Settings,
@@ -24,6 +25,12 @@ from profiles.errors import ConfigError, RequestError
 DEFAULTS = Path(__file__).parents[1] / "config" / "defaults.toml"
 ARRAY = '[array]\nname = "Boobyfish Array"\n'
 MOORING = '[[moorings]]\nid = "{id}"\nlatitude = {latitude}\nlongitude = {longitude}\ndeliveries = [{deliveries}]\n'
+MODELS: dict[str, type[Settings]] = {
+    "qc": QualityControlSettings,
+    "column": ColumnSettings,
+    "section": SectionSettings,
+    "precursor": PrecursorSettings,
+}
 DELIVERY = '{ path = "a.csv", layout = "a.toml" }'
 
 
@@ -261,8 +268,8 @@ def test_the_file_of_the_defaults_is_the_models_written_out() -> None:
 
 def test_the_file_of_the_defaults_read_back_is_the_defaults() -> None:
     content = tomllib.loads(DEFAULTS.read_text(encoding="utf-8"))
-    assert set(content) == {"qc", "column", "section"}
-    for name, model in [("qc", QualityControlSettings), ("column", ColumnSettings), ("section", SectionSettings)]:
+    assert set(content) == {"qc", "column", "section", "precursor"}
+    for name, model in MODELS.items():
         assert model.model_validate(content[name]) == model()
         assert keys_of(content[name]) == keys_of(model().model_dump())
 
@@ -279,7 +286,7 @@ def test_the_file_of_the_defaults_is_a_valid_end_of_a_configuration(load: Any) -
 def test_every_default_has_a_comment_above_it() -> None:
     lines = DEFAULTS.read_text(encoding="utf-8").splitlines()
     keys = [place for place, line in enumerate(lines) if " = " in line and not line.startswith("#")]
-    assert len(keys) == sum(1 for key in all_fields(QualityControlSettings, ColumnSettings, SectionSettings) if key)
+    assert len(keys) == sum(1 for key in all_fields(*MODELS.values()) if key)
     assert [lines[place] for place in keys if len(lines[place - 1]) < 4 or not lines[place - 1].startswith("# ")] == []
 
 
@@ -311,7 +318,7 @@ def test_every_setting_with_a_unit_or_a_choice_says_whose_it_is() -> None:
     )
     silent = [
         name
-        for model in (QualityControlSettings, ColumnSettings, SectionSettings)
+        for model in MODELS.values()
         for table in [model, *(info.annotation for info in model.model_fields.values())]
         if isinstance(table, type) and issubclass(table, Settings)
         for name, info in table.model_fields.items()

@@ -39,6 +39,7 @@ PROMISED = {
         "length_latitude": EMPTY,
         "mean": "known",
     },
+    "lead_lag": {"predictor": EMPTY, "target": EMPTY, "leads": tuple(range(-24, 25)), "*": EMPTY, "settings": None},
     "thermocline_slope": {"field": EMPTY, "*": EMPTY, "window": (165.0, 265.0)},
     "warm_water_volume": {"field": EMPTY, "*": EMPTY, "region": "total"},
 }

@@ -65,7 +65,7 @@ def test_a_variable_is_described(variable: Variable) -> None:
 def test_no_variable_stands_twice() -> None:
     lists = [getattr(vocabulary, name) for name in dir(vocabulary) if name.endswith(("_VARIABLES", "_COORDINATES"))]
     names = [variable.name for variables in lists for variable in variables]
-    assert len(lists) == 4
+    assert len(lists) == 6
     assert sorted(names) == sorted(VARIABLES)
 
 
@@ -83,7 +83,8 @@ def test_a_numeric_variable_has_units_unless_it_is_a_flag_or_the_time() -> None:
     # CF-1.11, section 3.1: units are required for all variables that represent dimensional quantities. Time takes its
     # own when it is written; flags and text have none.
     bare = {name for name, variable in VARIABLES.items() if variable.units is None and variable.dtype != "str"}
-    assert bare == {"time"} | {variable.name for variable in [*FLAGGED, *MASKED]}
+    times = {"time", "window", "window_first", "window_last", "onset", "end", "peak"}
+    assert bare == times | {variable.name for variable in [*FLAGGED, *MASKED]}
 
 
 def test_slope_units_are_metres_per_thousand_kilometres() -> None:
@@ -126,7 +127,8 @@ def test_a_variable_with_the_standard_name_depth_is_positive_down(variable: Vari
 def test_a_temperature_says_whether_it_is_on_the_scale_or_a_difference(variable: Variable) -> None:
     # CF-1.11, section 3.1.2: units_metadata for temperatures in degrees Celsius.
     is_error = (variable.standard_name or "").endswith(" standard_error")
-    expected = "temperature: difference" if is_error else "temperature: on_scale"
+    is_anomaly = variable.name in ("surface_temperature_index_anomaly", "peak_value")
+    expected = "temperature: difference" if is_error or is_anomaly else "temperature: on_scale"
     assert variable.extra["units_metadata"] == expected
 
 

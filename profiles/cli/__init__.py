@@ -9,6 +9,7 @@ import typer
 
 from profiles.cli.check import check
 from profiles.cli.draft import draft
+from profiles.cli.precursor import precursor
 from profiles.cli.run import run
 from profiles.cli.version import print_version
 
@@ -24,6 +25,7 @@ app = typer.Typer(
 app.command()(run)
 app.command()(check)
 app.command()(draft)
+app.command()(precursor)
 app.callback()(print_version)
 
 

@@ -331,7 +331,7 @@ class Zone:
         """Tell whether the row right before is of the second round and no later."""
         if self._before is None or self._before[0] != place - 1:
             return False
-        return self._before[1] in self._second_round and stamp >= self._last[self._before[1]]
+        return bool(self._before[1] in self._second_round and stamp >= self._last[self._before[1]])
 
 
 def hours(length: float) -> np.timedelta64:

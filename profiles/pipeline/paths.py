@@ -73,6 +73,41 @@ class Folder:
         return self.out / "volume.nc"
 
     @property
+    def precursor(self) -> Path:
+        """The series of a precursor analysis, their lead-lag correlations and the events."""
+        return self.out / "precursor.nc"
+
+    @property
+    def hindcast(self) -> Path:
+        """The hindcast of the index."""
+        return self.out / "precursor_hindcast.nc"
+
+    @property
+    def scores(self) -> Path:
+        """The scores of the hindcast."""
+        return self.out / "precursor_scores.nc"
+
+    @property
+    def reliability(self) -> Path:
+        """The reliability of the hindcast's probabilities."""
+        return self.out / "precursor_reliability.nc"
+
+    @property
+    def oscillator(self) -> Path:
+        """The recharge oscillator."""
+        return self.out / "precursor_oscillator.nc"
+
+    @property
+    def outlook(self) -> Path:
+        """The outlook from the last month."""
+        return self.out / "precursor_outlook.nc"
+
+    @property
+    def precursor_section(self) -> Path:
+        """The report's section on precursors, and what it was made from."""
+        return self.out / HIDDEN / "precursor_section.json"
+
+    @property
     def page(self) -> Path:
         """The report."""
         return self.out / "report.html"

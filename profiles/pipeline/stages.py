@@ -396,7 +396,7 @@ def report_tasks(
             name="page",
             work=write_report,
             arguments=(config, tuple(moorings), folder),
-            inputs=(folder.section, folder.volume, *array_figures, *mooring_figures, *tables),
+            inputs=(folder.section, folder.volume, folder.precursor_section, *array_figures, *mooring_figures, *tables),
             outputs=(folder.page,),
             settings=config.model_dump(mode="json", exclude={"file"}) | {"created": _created(config, moorings, _ALL)},
         )
@@ -443,6 +443,7 @@ def draw_array(config: Config, folder: Folder) -> Report:
 
 def write_report(config: Config, moorings: Sequence[Mooring], folder: Folder) -> Report:
     """Write the page."""
+    from profiles.pipeline.precursor_report import kept_section
     from profiles.report import Facts, write_page
     from profiles.report.captions import CAPTIONS
 
@@ -461,6 +462,7 @@ def write_report(config: Config, moorings: Sequence[Mooring], folder: Folder) ->
             figures={name: folder.figure(name) for name in CAPTIONS},
             mooring_figures={mooring.id: folder.figure(f"mooring_{mooring.id}") for mooring in moorings},
             tables={name: store.read_table(folder.table(name)) for names in TABLES.values() for name in names},
+            precursor=kept_section(folder),
         )
     return {}
 

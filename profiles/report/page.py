@@ -12,6 +12,7 @@ from typing import Any
 import pandas as pd
 import xarray as xr
 from jinja2 import Environment, PackageLoader, StrictUndefined
+from markupsafe import Markup
 
 from profiles.config import Config
 from profiles.report.array import WEAK_SHARE
@@ -20,6 +21,9 @@ from profiles.report.summary import findings, mooring_return, percent, tilt_wind
 from profiles.report.tables import text, views
 from profiles.store import write_text
 from profiles.vocabulary import CAUTION
+
+#: The line of the contents that leads to the section on precursors, where there is one.
+PRECURSOR_LINK = '<li><a href="#precursor">Precursors of the index</a></li>\n'
 
 
 @dataclass(frozen=True)
@@ -82,6 +86,7 @@ def write_page(
     figures: Mapping[str, Path],
     mooring_figures: Mapping[str, Path],
     tables: Mapping[str, pd.DataFrame],
+    precursor: str = "",
 ) -> None:
     """Write the report as one HTML file without a reference to anything outside it.
 
@@ -101,6 +106,8 @@ def write_page(
         ``data_return``, ``faults`` and ``gaps`` as the quality control returns them, all moorings below one
         another; ``deliveries`` (mooring, file, rows_read, rows_kept, rows_quarantined, rows_reordered, outcome,
         problem) and ``quarantine`` (file, line, reason, text).
+    precursor : str, optional
+        The section of :func:`profiles.report.precursor_section`.
 
     Raises
     ------
@@ -108,7 +115,7 @@ def write_page(
         Where the file cannot be written.
     """
     plates = list(_plates(figures, section, facts.config))
-    content = _environment().get_template("page.html").render(
+    content = environment().get_template("page.html").render(
         facts=facts,
         caution=CAUTION,
         findings=findings(section, volume, facts.leave_one_out, tables),
@@ -117,11 +124,14 @@ def write_page(
         moorings=list(_mooring_plates(mooring_figures, tables["data_return"])),
         tables=views(tables),
         settings=list(_settings(facts.config)),
+        precursor=Markup(precursor),
+        precursor_link=Markup(PRECURSOR_LINK if precursor else ""),
     )  # fmt: skip
     write_text(path, content)
 
 
-def _environment() -> Environment:
+def environment() -> Environment:
+    """Return what renders the templates: text is escaped, a name that is missing is an error."""
     return Environment(
         loader=PackageLoader("profiles.report"),
         autoescape=True,
@@ -151,7 +161,7 @@ def _mooring_plates(mooring_figures: Mapping[str, Path], data_return: pd.DataFra
 
 def _settings(config: Config) -> Iterator[tuple[str, str]]:
     """Give every threshold of a configuration by its dotted name."""
-    for table in ("qc", "column", "section"):
+    for table in ("qc", "column", "section", "precursor"):
         yield from _dotted(table, getattr(config, table).model_dump(mode="json"))
 
 

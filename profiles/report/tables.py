@@ -163,7 +163,7 @@ def views(tables: Mapping[str, pd.DataFrame]) -> dict[str, View]:
         ``data_return``, ``faults``, ``gaps``, ``deliveries`` and ``quarantine``.
     """
     shown = {**tables, "data_return": _by_mooring(tables["data_return"])}
-    return {name: _view(name, layout, shown[name]) for name, layout in LAYOUTS.items()}
+    return {name: view(name, layout, shown[name]) for name, layout in LAYOUTS.items()}
 
 
 def _by_mooring(data_return: pd.DataFrame) -> pd.DataFrame:
@@ -171,7 +171,8 @@ def _by_mooring(data_return: pd.DataFrame) -> pd.DataFrame:
     return table.assign(return_share=table["used"] / table["expected"])
 
 
-def _view(name: str, layout: Layout, table: pd.DataFrame) -> View:
+def view(name: str, layout: Layout, table: pd.DataFrame) -> View:
+    """Return a table as it is shown; ``name`` is that of its file in ``tables/``."""
     part = _heaviest_first(table.reset_index(drop=True), layout).head(layout.most)
     cells = [[column.show(value) for value in part[column.name]] for column in layout.columns]
     left_out = len(table) > layout.most
