@@ -83,6 +83,14 @@ def test_of_blocks_that_share_time_and_depth_the_first_in_the_file_stays(write, 
     assert reasons(delivery) == {7: "a row before it, line 4 or one like it, has the time and one of the depths"}
 
 
+def test_what_a_second_block_completed_is_taken_for_a_third(write, layout):
+    row = "LEVELS at {}\nx\n2031-01-01 00:00 {}\n"
+    text = row.format("-1m", "29 a") + row.format("-25m", "18 a") + row.format("-25m -40m", "17 9 aa")
+    delivery = read(write("title\n" + text), layout)
+    np.testing.assert_array_equal(delivery.chain["temperature"], [[29, 18, NAN]])
+    assert list(reasons(delivery)) == [10]
+
+
 def test_a_time_that_comes_twice_in_blocks_alike_is_that_of_the_first(write, layout):
     block = "LEVELS at -1m\nx\n2031-01-01 00:00 {} a\n"
     delivery = read(write("title\n" + block.format(29) + block.format(28)), layout)

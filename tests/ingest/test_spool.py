@@ -87,6 +87,11 @@ def test_rows_are_sorted_with_those_of_one_time_together_in_file_order(seconds):
     assert all(earlier[1] < later[0] for earlier, later in pairwise(ends))
 
 
+def test_rows_of_one_time_stay_in_file_order_when_sorted_in_memory():
+    seconds = np.random.default_rng(1).integers(0, 9, 5_000)
+    np.testing.assert_array_equal(together(filled(seconds).by_time())["line"], np.argsort(seconds, kind="stable"))
+
+
 def test_sorting_needs_few_files_and_little_memory_at_a_time(small):
     seconds = np.random.default_rng(1).permutation(2_000)
     held = filled(seconds, 40)
