@@ -9,18 +9,18 @@ from dataclasses import dataclass
 from itertools import pairwise
 from typing import Any
 
-from profiles.ingest.drafting.content import Column, share_of
+from profiles.ingest.drafting.content import Column, share_of, sort_of
 from profiles.ingest.drafting.counts import cell_names, common_beginning
 from profiles.ingest.drafting.cutting import Cutting
 from profiles.ingest.drafting.depth_names import plausible
 from profiles.ingest.drafting.doubts import Doubt
 from profiles.ingest.drafting.meaning import depth_units_in
 from profiles.ingest.drafting.proposal import Proposal, Use, meaning, text_keys
-from profiles.ingest.drafting.readings import flags_of, missing_tokens, units_of
+from profiles.ingest.drafting.readings import flags_of, reading_settings
 from profiles.ingest.drafting.sample import Line, Sample
 from profiles.ingest.drafting.table import comment_mark
-from profiles.ingest.drafting.time_columns import time_guesses
-from profiles.ingest.drafting.words import depth_units, roles_of
+from profiles.ingest.drafting.time_columns import TimeGuess, time_guesses
+from profiles.ingest.drafting.words import depth_units, roles_of, temperature_worth
 from profiles.ingest.layout.parts import DEPTH_MARK, WHITESPACE
 
 Row = list[str]
@@ -28,7 +28,7 @@ Row = list[str]
 _LEADING = re.compile(r"\s*([^\d+\-.\s]*)")
 _DEPTH_CELL = re.compile(r"([^\d+\-]*?)([+-]?[0-9]+(?:[.,][0-9]+)?)([^\d]*)")
 _BETWEEN = ("", ",", ";", ",;")  # what may stand between depths beside the delimiter of the rows
-_REGULAR = 0.8  # share of the blocks that must be alike (ours)
+_REGULAR = 0.6  # share of the blocks that must be alike; few blocks may have a damaged one among them (ours)
 _MOST_BEHIND = 3  # cells of the line of depths behind the last of them
 
 
@@ -42,7 +42,10 @@ class Block:
 
 @dataclass(frozen=True)
 class Depths:
-    """Where the depths stand in the headers: the line, cells before them, pattern; how many; other cells of a row."""
+    """Where the depths stand in the headers: the line, cells before them, pattern; how many; other cells of a row.
+
+    The count is 0 for a block whose header cannot be understood.
+    """
 
     row: int
     skip: int
@@ -53,14 +56,17 @@ class Depths:
 
 
 def blocked_proposals(sample: Sample, cutting: Cutting) -> list[Proposal]:
-    """Return layouts in blocks, if headers with depths come again."""
+    """Return layouts in blocks, if headers with depths come again.
+
+    Where all headers are the same line by line, it is one table whose header was repeated, and no blocks are proposed.
+    """
     if cutting.fixed:
         return []
     mark = comment_mark(sample.head, cutting)
     for comment in dict.fromkeys(("", mark)):
         lines = [line for line in sample.head if not (comment and line.text.lstrip().startswith(comment))]
         blocks, before = find_blocks(lines, cutting)
-        if len(blocks) > 1:
+        if len({tuple(line.text.strip() for line in block.header) for block in blocks}) > 1:
             proposal = _proposal(sample, cutting, comment, blocks, before)
             if proposal is not None:
                 return [proposal]
@@ -73,23 +79,14 @@ def blocked_proposals(sample: Sample, cutting: Cutting) -> list[Proposal]:
 
 def find_blocks(lines: Sequence[Line], cutting: Cutting) -> tuple[list[Block], list[Line]]:
     """Return the blocks of some lines, and the lines before the first; fewer than two where there are none."""
-    words = [_leading(line.text) for line in lines]
-    if not words:
-        return [], []
-    data_word = Counter(words).most_common(1)[0][0]
-    runs: list[tuple[int, int]] = []
-    for place, word in enumerate(words):
-        if word != data_word:
-            if runs and runs[-1][1] == place:
-                runs[-1] = (runs[-1][0], place + 1)
-            else:
-                runs.append((place, place + 1))
+    runs = _runs([_leading(line.text) for line in lines])
     if len(runs) < 2:
         return [], []
     length = Counter(stop - start for start, stop in runs[1:]).most_common(1)[0][0]
     heads = [(stop - length, stop) for start, stop in runs if stop - start >= length]
-    regular = sum(stop - start == length for start, stop in runs[1:])
-    if len(heads) < 2 or regular < _REGULAR * len(runs[1:]):
+    word = Counter(_leading(lines[start].text) for start, _ in heads).most_common(1)[0][0]
+    heads = [(start, stop) for start, stop in heads if _leading(lines[start].text) == word]
+    if len(heads) < max(2, _REGULAR * len(runs)):
         return [], []
     rows = cutting.cut([line.text for line in lines])
     ends = [*(start for start, _ in heads[1:]), len(lines)]
@@ -97,6 +94,19 @@ def find_blocks(lines: Sequence[Line], cutting: Cutting) -> tuple[list[Block], l
         Block(tuple(lines[start:stop]), tuple(rows[stop:end])) for (start, stop), end in zip(heads, ends, strict=True)
     ]
     return [block for block in blocks if block.rows], list(lines[: heads[0][0]])
+
+
+def _runs(words: Sequence[str]) -> list[tuple[int, int]]:
+    """Return where neighbouring lines begin otherwise than most lines do."""
+    usual = Counter(words).most_common(1)[0][0] if words else ""
+    runs: list[tuple[int, int]] = []
+    for place, word in enumerate(words):
+        if word != usual:
+            if runs and runs[-1][1] == place:
+                runs[-1] = (runs[-1][0], place + 1)
+            else:
+                runs.append((place, place + 1))
+    return runs
 
 
 def _leading(text: str) -> str:
@@ -123,17 +133,28 @@ def _depths_of(row: int, between: str, blocks: Sequence[Block], cutting: Cutting
     apart = dict.fromkeys(map(ord, between), delimiter)
     cells = [cutting.cut([block.header[row].text.translate(apart)])[0] for block in blocks]
     found = [_depth_cells(each) for each in cells]
-    known = [each for each in found if each is not None]
-    if len(known) < len(found):
+    if _first_counts(cells, found):
+        found = [None if each is None else (each[0] + 1, each[1], each[2] - 1) for each in found]
+    widths = [_width(block) for block in blocks]
+    forms = Counter(
+        (*each[:2], width - each[2]) for each, width in zip(found, widths, strict=True) if each is not None and each[2]
+    )
+    if not forms:
         return None
-    if all(each[skip] == str(count - 1) for each, (skip, _, count) in zip(cells, known, strict=True)):
-        known = [(skip + 1, pattern, count - 1) for skip, pattern, count in known]  # the first counts the others
-    counts = tuple(count for _, _, count in known)
-    beside = [_width(block) - count for block, count in zip(blocks, counts, strict=True)]
-    usual, agreeing = Counter(beside).most_common(1)[0]
-    if min(counts) < 1 or usual < 1 or agreeing < _REGULAR * len(beside) or len({each[:2] for each in known}) != 1:
+    (skip, pattern, beside), agreeing = forms.most_common(1)[0]
+    if beside < 1 or agreeing < max(2, _REGULAR * len(blocks)):
         return None
-    return Depths(row + 1, known[0][0], known[0][1], counts, usual, between)
+    counts = tuple(
+        each[2] if each is not None and (*each[:2], width - each[2]) == (skip, pattern, beside) else 0
+        for each, width in zip(found, widths, strict=True)
+    )
+    return Depths(row + 1, skip, pattern, counts, beside, between)
+
+
+def _first_counts(cells: Sequence[Row], found: Sequence[tuple[int, str, int] | None]) -> bool:
+    """Tell whether the first of the numbers says how many follow."""
+    known = [(row, each) for row, each in zip(cells, found, strict=True) if each is not None]
+    return bool(known) and all(row[skip] == str(count - 1) for row, (skip, _, count) in known)
 
 
 def _width(block: Block) -> int:
@@ -167,72 +188,91 @@ def _depth_cells(cells: Row) -> tuple[int, str, int] | None:
 # The layout
 
 
-def _proposal(
-    sample: Sample, cutting: Cutting, comment: str, blocks: Sequence[Block], before: Sequence[Line]
-) -> Proposal | None:
-    depths = find_depths(blocks, cutting)
-    begins = _begins(blocks)
-    if depths is None or not begins:
-        return None
-    glued = _glued_cells(blocks, depths)
-    leading = depths.beside - len(glued)
+@dataclass(frozen=True)
+class _Read:
+    """The rows of all blocks in columns: the cells before the readings, all readings, the marks behind them."""
+
+    leading: list[Column]
+    readings: Column
+    glued: list[set[str]]
+
+
+def _read(blocks: Sequence[Block], depths: Depths, decimal: str) -> _Read:
     rows = [
         (row, count)
         for block, count in zip(blocks, depths.counts, strict=True)
         for row in block.rows
-        if len(row) == count + depths.beside
+        if count and len(row) == count + depths.beside
     ]
-    hints = "\n".join([*(line.text for line in (*before, *blocks[0].header)), sample.path.name])
-    columns = [Column(place, "", (), tuple(row[place] for row, _ in rows), cutting.decimal) for place in range(leading)]
-    guesses = time_guesses(columns, hints) if columns else []
-    cells = Column(
-        0, "", (), tuple(cell for row, count in rows for cell in row[leading : leading + count]), cutting.decimal
-    )
-    if (
-        not guesses
-        or share_of(cells.texts[:2000], cutting.decimal, ("number", "missing")) < 0.9
-        or plausible([cells]) < 0
-    ):
+    glued = _glued_cells(rows, depths)
+    first = depths.beside - len(glued)
+    leading = [Column(place, "", (), tuple(row[place] for row, _ in rows), decimal) for place in range(first)]
+    cells = tuple(cell for row, count in rows for cell in row[first : first + count])
+    return _Read(leading, Column(0, "", (), cells, decimal), glued)
+
+
+def _proposal(
+    sample: Sample, cutting: Cutting, comment: str, blocks: Sequence[Block], before: Sequence[Line]
+) -> Proposal | None:
+    depths, begins = find_depths(blocks, cutting), _begins(blocks)
+    if depths is None or not begins or temperature_worth(depths.pattern) < 0:
         return None
-    time = guesses[0]
-    time_keys, scale, doubts = meaning(time, "", hints, None)
-    units, unit_doubt = units_of([cells], hints)
-    missing, missing_doubts = missing_tokens([cells], units)
-    doubts += [*([unit_doubt] if unit_doubt else []), *missing_doubts]
-    names = cell_names(leading, time, {})
-    block: dict[str, Any] = {"begins": begins, "header_rows": len(blocks[0].header), "before": names}
+    read = _read(blocks, depths, cutting.decimal)
+    shown = next(block for block, count in zip(blocks, depths.counts, strict=True) if count)
+    hints = "\n".join([*(line.text for line in (*before, *shown.header)), sample.path.name])
+    guesses = time_guesses(read.leading, hints) if read.leading else []
+    numeric = share_of(read.readings.texts[:2000], cutting.decimal, ("number", "missing"))
+    if not guesses or numeric < 0.9 or plausible([read.readings]) < 0:
+        return None
+    time, names = guesses[0], cell_names(len(read.leading), guesses[0], {})
+    time_keys, temperature, doubts = meaning(time, "", hints, None)
+    reading_keys, reading_doubts = reading_settings([read.readings], hints)
+    depth, depth_doubts = _depth_keys(depths, shown, hints)
+    block, quality, mark_doubts = _block_keys(begins, shown, names, read.glued)
     content = text_keys(sample, cutting) | ({"comment": comment} if comment else {})
-    content |= {"kind": "blocked", "header_rows": len(before), "missing": missing, "block": block}
-    content |= {"time": time.named(names) | time_keys}
-    content["depth"], depth_doubts = _depth_keys(depths, blocks, hints)
-    content["temperature"] = {"units": units} | scale
-    doubts += depth_doubts
-    if glued:
-        flags, doubt = flags_of(glued[0])
-        behind = ["marks", *(f"marks_{place}" for place in range(2, len(glued) + 1))]
-        block["after"] = behind
-        content["quality"] = {"column": behind[0], "flags": flags}
-        doubts.append(doubt)
+    content |= {"kind": "blocked", "header_rows": len(before), "missing": reading_keys["missing"], "block": block}
+    content |= {"time": time.named(names) | time_keys, "depth": depth}
+    content |= {"temperature": {"units": reading_keys["units"]} | temperature, **quality}
+    doubts += [*reading_doubts, *depth_doubts, *mark_doubts, *_unused(names)]
+    header = [(line, "header") for line in before] + [(line, "header of a block") for line in shown.header]
+    return Proposal(
+        content,
+        (*sample.doubts, *doubts),
+        _uses(depths, time, names),
+        tuple(header),
+        cutting.in_words,
+        time.named_rival(names, time_keys),
+    )
+
+
+def _block_keys(
+    begins: str, block: Block, names: list[str], glued: Sequence[set[str]]
+) -> tuple[dict[str, Any], dict[str, Any], list[Doubt]]:
+    """Return [block], [quality] if there are marks, and doubts about them."""
+    keys: dict[str, Any] = {"begins": begins, "header_rows": len(block.header), "before": names}
+    if not glued:
+        return keys, {}, []
+    flags, doubt = flags_of(glued[0])
+    keys["after"] = ["marks", *(f"marks_{place}" for place in range(2, len(glued) + 1))]
+    doubts = [doubt]
     if len(glued) > 1:
         other = f"{len(glued)} cells behind the readings have a character for each of them"
         doubts.append(Doubt("which marks are of the quality", "the first", other))
-    if leading > len(time.places):
-        doubts.append(
-            Doubt(
-                "cells that are not used",
-                ", ".join(name for name in names if name.startswith("cell_")),
-                "they stand before the readings and are no part of the stamp",
-            )
-        )
-    uses = (
+    return keys, {"quality": {"column": "marks", "flags": flags}}, doubts
+
+
+def _uses(depths: Depths, time: TimeGuess, names: Sequence[str]) -> tuple[Use, ...]:
+    return (
         Use(f"line {depths.row} of each block's header, from cell {depths.skip + 1} on", "depths"),
         *(Use(f"rows, cell {place + 1}", f"time ({names[place]})") for place in time.places),
-        Use(f"rows, from cell {leading + 1} on", "temperature at the depths of the block"),
+        Use(f"rows, from cell {len(names) + 1} on", "temperature at the depths of the block"),
     )
-    header = [(line, "header") for line in before] + [(line, "header of the first block") for line in blocks[0].header]
-    return Proposal(
-        content, (*sample.doubts, *doubts), uses, tuple(header), cutting.in_words, time.named_rival(names, time_keys)
-    )
+
+
+def _unused(names: Sequence[str]) -> list[Doubt]:
+    left = ", ".join(name for name in names if name.startswith("cell_"))
+    why = "they stand before the readings and are no part of the stamp"
+    return [Doubt("cells that are not used", left, why)] if left else []
 
 
 def _begins(blocks: Sequence[Block]) -> str:
@@ -241,20 +281,14 @@ def _begins(blocks: Sequence[Block]) -> str:
     match = re.match(r"[^\d]*", prefix)
     begins = (match.group() if match is not None else "").rstrip(" \t+-.,;\"'") or prefix.strip()
     others = [line.text.lstrip() for block in blocks for line in block.header[1:]]
-    others += [row[0] for block in blocks for row in block.rows if row]
+    others += [row[0] for block in blocks for row in block.rows if row and sort_of(row[0], ".") != "word"]
     return "" if not begins or any(text.startswith(begins) for text in others) else begins
 
 
-def _glued_cells(blocks: Sequence[Block], depths: Depths) -> list[set[str]]:
+def _glued_cells(rows: Sequence[tuple[Row, int]], depths: Depths) -> list[set[str]]:
     """Return the characters of the last cells of the rows that have one for each reading, cell by cell."""
-    rows = [
-        (row, count)
-        for block, count in zip(blocks, depths.counts, strict=True)
-        for row in block.rows
-        if len(row) == count + depths.beside
-    ]
     found: list[set[str]] = []
-    several = len(set(depths.counts)) > 1 or min(depths.counts) > 1
+    several = len(set(depths.counts) - {0}) > 1 or max(depths.counts) > 1
     for behind in range(1, depths.beside if several else 1):
         fitting = [
             row[-behind]
@@ -267,8 +301,8 @@ def _glued_cells(blocks: Sequence[Block], depths: Depths) -> list[set[str]]:
     return found
 
 
-def _depth_keys(depths: Depths, blocks: Sequence[Block], hints: str) -> tuple[dict[str, Any], list[Doubt]]:
-    line = blocks[0].header[depths.row - 1].text
+def _depth_keys(depths: Depths, block: Block, hints: str) -> tuple[dict[str, Any], list[Doubt]]:
+    line = block.header[depths.row - 1].text
     after = depths.pattern.split(DEPTH_MARK)[1]
     stated = depth_units(after) or depth_units(line) or ("dbar" if "pressure" in roles_of(line) else None)
     units = stated or depth_units_in(hints) or "m"

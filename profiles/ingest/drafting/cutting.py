@@ -155,8 +155,7 @@ def _fixed(texts: Sequence[str], judged: Sequence[_Judged]) -> list[Cutting]:
     for decimal in ".,":
         places = find_places(texts, decimal)
         if len(places) > 1:
-            lengths = {len(text) for text in texts}
-            trimmed = min(lengths) < places[-1][1]
+            trimmed = sum(len(text) < places[-1][1] for text in texts) > 1
             cutting = Cutting(WHITESPACE, decimal, tuple(places), trimmed)
             candidate = _judged(cutting, texts)
             if candidate.is_clean:

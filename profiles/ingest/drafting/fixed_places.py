@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 _SPLIT_SHARE = 0.02  # of the lines that may have no end of a column where the others have one: damaged ones
+_MOST = 0.9  # share of the lines that tells how a column is aligned (ours)
 _SIGN_SHARE = 0.9  # a sign that stands in nearly all lines separates the parts of a date, no columns
 
 
@@ -47,7 +48,7 @@ def _signs(table: NDArray[np.str_], blank: NDArray[np.bool_]) -> NDArray[np.bool
 def _is_left_aligned(blank: NDArray[np.bool_]) -> bool:
     """Tell whether the texts of a column begin at one place and end at several."""
     filled = ~blank[~blank.all(axis=1)]
-    return bool(filled[:, 0].all()) and not filled[:, -1].all()
+    return bool(filled[:, 0].mean() > _MOST and filled[:, -1].mean() < _MOST)
 
 
 def _widened(spans: list[tuple[int, int]], is_left: list[bool]) -> list[tuple[int, int]]:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 from collections import Counter
 from collections.abc import Iterable, Sequence
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -18,6 +19,13 @@ COLDEST, WARMEST = -4.0, 50.0  # °C; beyond is no water (ours), air on deck inc
 _KELVIN_FROM, _FAHRENHEIT_FROM = 200.0, 45.0  # medians of the readings (ours)
 _REPEATED_DIGIT = re.compile(r"-?0*([1-9])[.,]?(?:\1|[.,])*0*")
 _LARGE = 1e3  # beyond any temperature in any unit
+
+
+def reading_settings(columns: Sequence[Column], hints: str) -> tuple[dict[str, Any], list[Doubt]]:
+    """Return units and missing tokens of temperatures, and what is unsure about them."""
+    units, doubt = units_of(columns, hints)
+    missing, doubts = missing_tokens(columns, units)
+    return {"units": units, "missing": missing}, [*([doubt] if doubt is not None else []), *doubts]
 
 
 # --------------------------------------------------------------------------------------------------------------

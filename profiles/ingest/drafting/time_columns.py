@@ -152,11 +152,22 @@ def _judged(guess: TimeGuess, least_order: float) -> TimeGuess | None:
         return None
     sizes = _steps(clock)
     regular = Counter(sizes.tolist()).most_common(1)[0][1] / sizes.size if sizes.size else 0.0
-    distinct = np.unique(valid).size / valid.size
+    times = np.unique(valid)
+    distinct = times.size / valid.size
+    covered = _covered(times, sizes)
     likely = bool(middle[0] >= _LIKELY[0] and middle[-1] <= _LIKELY[1])
     readable = valid.size / clock.size
-    worth = guess.worth + order + 0.5 * regular + 0.7 * distinct + 0.3 * likely + 4.0 * (readable - 1.0)
+    worth = guess.worth + order + 0.5 * regular + 0.7 * distinct + 0.3 * likely + 0.3 * covered + 4.0 * (readable - 1.0)
     return replace(guess, worth=worth)
+
+
+def _covered(times: Times, sizes: NDArray[np.int64]) -> float:
+    """Return the share of the record's length that the commonest step accounts for; years that leap leave gaps."""
+    if times.size < 2:
+        return 1.0
+    usual = Counter(sizes.tolist()).most_common(1)[0][0]
+    length = int((times[-1] - times[0]).astype(np.int64))
+    return min(1.0, float(usual) * (times.size - 1) / length)
 
 
 def _name_worth(columns: Sequence[Column]) -> float:

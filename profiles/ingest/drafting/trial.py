@@ -29,6 +29,7 @@ _TOKEN = re.compile(r"column '.*': '(.*)' is neither a number nor a missing toke
 _MARK = re.compile(r"the quality mark '(.*)' is in no table", re.DOTALL)
 _ROUNDS = 3  # of reading the whole file while tokens are found that the sample did not have
 _AS_GOOD = 0.985  # of the rows that the best keeps; what keeps so many is as good (ours)
+_A_FEW = 2  # rows: a damaged one may fit a wrong layout by chance (ours)
 _OFTEN = 3  # times that an unknown word has to stand in the file to be a token (ours)
 
 
@@ -64,7 +65,9 @@ def on_sample(proposals: list[Proposal], sample: Sample) -> list[Trial]:
         path.write_bytes(text.encode("utf-8", "surrogateescape"))
         trials = [_tried(proposal, path) for proposal in proposals]
     most = max((trial.rows_kept for trial in trials), default=0)
-    return sorted(trials, key=lambda trial: -(most if trial.rows_kept > _AS_GOOD * most else trial.rows_kept))
+    return sorted(
+        trials, key=lambda trial: -(most if trial.rows_kept >= min(_AS_GOOD * most, most - _A_FEW) else trial.rows_kept)
+    )
 
 
 def _tried(proposal: Proposal, path: Path) -> Trial:
