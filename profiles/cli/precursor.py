@@ -155,7 +155,7 @@ def _score_lines(outcome: PrecursorOutcome) -> Iterator[str]:
             yield (
                 f"  {row['lead']:2d} months: correlation {_with_interval(row, 'correlation')}, "
                 f"skill over climatology {_with_interval(row, 'skill_climatology')}, "
-                f"over persistence {_with_interval(row, 'skill_persistence')}"
+                f"over damped persistence {_with_interval(row, 'skill_damped_persistence')}"
             )
 
 

@@ -521,7 +521,7 @@ def _scalars(dataset: xr.Dataset | None) -> dict[str, float]:
     return {str(name): float(value) for name, value in dataset.data_vars.items() if not value.dims}
 
 
-_SHOWN_SCORES = ("correlation", "skill_climatology", "skill_persistence", "probability_skill")
+_SHOWN_SCORES = ("correlation", "skill_climatology", "skill_damped_persistence", "probability_skill")
 
 
 def _score_rows(scores: xr.Dataset | None, forecaster: str) -> list[dict[str, Any]]:

@@ -89,7 +89,7 @@ def outcome(tmp_path):
         "precursor_effective_size": 44.0, "precursor_deciding_p_value": 1e-8, "field_p_value": 0.012,
     }  # fmt: skip
     behind = row | {"predictor": "western_volume", "peak_lead": -5.0, "peak_correlation": -0.7}
-    names = ("correlation", "skill_climatology", "skill_persistence", "probability_skill")
+    names = ("correlation", "skill_climatology", "skill_damped_persistence", "probability_skill")
     score = {f"{name}{end}": 0.5 for name in names for end in ("", "_low", "_high")}
     forecast = {
         "lead": 1, "month": "2071-01", "forecast": -0.9, "spread": 0.4, "status": 0, "quantile_0.05": -1.5,
@@ -124,7 +124,7 @@ def test_outlook_is_printed_as_a_research_figure_and_what_is_withheld_is_said(tm
     assert "events (a rule): 2 warm, 1 cold" in lines
     oscillator = next(line for line in lines if line.startswith("recharge oscillator"))
     assert "period 44 months (38 to 54), damped over 17 months (12 to 26); such fits lean towards damping" in oscillator
-    assert [line[:12] for line in lines if "over persistence" in line] == ["   1 months:"]
+    assert [line[:12] for line in lines if "over damped persistence" in line] == ["   1 months:"]
     at = lines.index("outlook from the last month, a research figure:")
     assert lines[at + 1] == "  2071-01: -0.90 (-1.50 to -0.30, 90 %), warm 0%, neutral 12%, cold 88%"
     assert lines[at + 2] == "outlook withheld in part: no skill at 2 months"
