@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import importlib
 import json
 
 import numpy as np
@@ -17,6 +18,13 @@ from profiles.vocabulary import CAUTION
 
 def call(*arguments):
     return CliRunner().invoke(app, ["precursor", *(str(argument) for argument in arguments)])
+
+
+@pytest.fixture
+def undrawn(monkeypatch):
+    """Leave out the figures and the page, which take the longest and have tests of their own."""
+    module = importlib.import_module("profiles.pipeline.precursor")
+    monkeypatch.setattr(module, "write_precursor_report", lambda *arguments: None)
 
 
 @pytest.fixture(scope="module")
@@ -63,6 +71,7 @@ def test_summary_says_leads_events_and_why_no_outlook(files, tmp_path):
     assert result.stderr.splitlines() == [f"precursor: {step}" for step in steps]
 
 
+@pytest.mark.usefixtures("undrawn")
 def test_json_is_one_document_and_nothing_else(files, tmp_path):
     result = call(tmp_path, "--series", files / "series.csv", "--sst", files / "sst.csv", "--json")
     document = json.loads(result.stdout)
@@ -73,6 +82,7 @@ def test_json_is_one_document_and_nothing_else(files, tmp_path):
     assert {row["forecast"] for row in document["outlook"]} == {None}  # withheld: no number, and no NaN in JSON
 
 
+@pytest.mark.usefixtures("undrawn")
 def test_quiet_prints_nothing(files, tmp_path):
     result = call(tmp_path, "--series", files / "series.csv", "--sst", files / "sst.csv", "--quiet")
     assert (result.exit_code, result.stdout, result.stderr) == (0, "", "")
@@ -168,6 +178,7 @@ def test_a_mistake_says_what_and_shows_no_traceback(files, tmp_path, arguments, 
     assert result.stdout == ""
 
 
+@pytest.mark.usefixtures("undrawn")
 def test_a_declared_missing_value_is_accepted(files, tmp_path):
     good = pd.read_csv(files / "sst.csv")
     good.assign(sst=good["sst"].where(good.index != 5, -99.99)).to_csv(tmp_path / "filled.csv", index=False)
@@ -175,6 +186,7 @@ def test_a_declared_missing_value_is_accepted(files, tmp_path):
     assert call(tmp_path / "out", *series, "--missing", "-99.99", "--quiet").exit_code == 0
 
 
+@pytest.mark.usefixtures("undrawn")
 def test_settings_come_from_the_configuration_named(files, tmp_path):
     config = tmp_path / "array.toml"
     config.write_text(

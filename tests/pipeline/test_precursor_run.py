@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import importlib
 from pathlib import Path
 
 import numpy as np
@@ -21,6 +22,13 @@ QUICK = PrecursorSettings(
     lead_lag=LeadLagSettings(draws=100, longest_lead=9), hindcast=HindcastSettings(longest_lead=3)
 )
 YEARS = 24
+
+
+@pytest.fixture
+def undrawn(monkeypatch):
+    """Leave out the figures and the page, which take the longest and have tests of their own."""
+    module = importlib.import_module("profiles.pipeline.precursor")
+    monkeypatch.setattr(module, "write_precursor_report", lambda *arguments: None)
 
 
 @pytest.fixture(scope="module")
@@ -167,6 +175,7 @@ def test_six_years_are_too_short_for_an_outlook_and_leave_no_older_one(files, tm
     assert len(outcome.leads) == 3
 
 
+@pytest.mark.usefixtures("undrawn")
 def test_wind_and_pressure_are_predictors_and_pressure_forecasts_nothing(files, swings, tmp_path):
     months = np.arange("2031-01", f"{2031 + YEARS}-01", dtype="datetime64[M]").astype(str)
     pd.DataFrame({"month": months, "u": -5.0 + swings[:, 0]}).to_csv(tmp_path / "wind.csv", index=False)
@@ -199,6 +208,7 @@ def test_trailing_means_begin_later_and_know_no_future(files):
     np.testing.assert_array_equal(smooth.index, plain.index)
 
 
+@pytest.mark.usefixtures("undrawn")
 def test_depths_of_moorings_are_mapped_to_volume_and_tilt(tmp_path, swings):
     months = np.arange("2031-01", "2046-01", dtype="datetime64[M]").astype("datetime64[ns]")
     longitude = np.repeat([150.0, 180.0, 205.0, 235.0, 260.0], 3)
