@@ -16,13 +16,14 @@ from profiles.ingest.drafting.depth_names import plausible
 from profiles.ingest.drafting.doubts import Doubt
 from profiles.ingest.drafting.meaning import depth_units_in
 from profiles.ingest.drafting.proposal import Proposal, Use, meaning, text_keys
-from profiles.ingest.drafting.readings import missing_tokens, units_of
+from profiles.ingest.drafting.readings import reading_settings
 from profiles.ingest.drafting.sample import Line, Sample
 from profiles.ingest.drafting.table import comment_mark
 from profiles.ingest.drafting.time_columns import TimeGuess, time_guesses
 from profiles.ingest.drafting.words import depth_units, roles_of, temperature_worth
 
 _FIRST_LINES = 60  # among which the first profile begins (ours)
+_ALIKE = 0.3  # share of the lines that count which may look like readings (ours)
 _COVERED = 0.8  # share of the lines that the profiles must make up
 
 Row = list[str]
@@ -37,18 +38,47 @@ class Walk:
     covered: float
 
 
+@dataclass(frozen=True)
+class Profiles:
+    """A file of profiles: its lines without comments, their cells, and which of them begin a profile."""
+
+    cutting: Cutting
+    comment: str
+    comments: tuple[Line, ...]
+    lines: tuple[Line, ...]
+    rows: tuple[Row, ...]
+    walk: Walk
+    is_whole: bool
+
+    @property
+    def header(self) -> tuple[Line, ...]:
+        """Lines before the first profile."""
+        return self.lines[: self.walk.heads[0]]
+
+    @property
+    def records(self) -> list[Row]:
+        """Cells of the lines that begin a profile."""
+        return [self.rows[head] for head in self.walk.heads]
+
+    @property
+    def spans(self) -> list[tuple[int, int]]:
+        """Where the readings of each profile start and stop."""
+        return _profiles(self.walk, len(self.rows), self.is_whole)
+
+
 def counted_proposals(sample: Sample, cutting: Cutting) -> list[Proposal]:
     """Return layouts with a profile per record, if lines count those that follow."""
     if cutting.fixed:
         return []
     comment = comment_mark(sample.head, cutting)
-    lines = [line for line in sample.head if not (comment and line.text.lstrip().startswith(comment))]
-    comments = [line for line in sample.head if comment and line.text.lstrip().startswith(comment)]
-    rows = cutting.cut([line.text for line in lines])
+    is_comment = [bool(comment) and line.text.lstrip().startswith(comment) for line in sample.head]
+    lines = tuple(line for line, each in zip(sample.head, is_comment, strict=True) if not each)
+    comments = tuple(line for line, each in zip(sample.head, is_comment, strict=True) if each)
+    rows = tuple(cutting.cut([line.text for line in lines]))
     walk = best_walk(rows, cutting.decimal, is_whole=not sample.tail)
     if walk is None:
         return []
-    proposal = _proposal(sample, cutting, comment, lines, comments, rows, walk)
+    proposal = _proposal(sample, Profiles(cutting, comment, comments, lines, rows, walk, not sample.tail))
     return [proposal] if proposal is not None else []
 
 
@@ -108,8 +138,9 @@ def _is_sound(rows: Sequence[Row], walk: Walk, decimal: str, is_whole: bool) -> 
     width, agreeing = Counter(map(len, readings)).most_common(1)[0]
     if width < 2 or agreeing < 0.9 * len(readings):
         return False
-    form = _usual_form(readings, decimal)
-    if form == _usual_form([rows[head] for head in walk.heads], decimal) or "stamp" in form:
+    form = Counter(_form(row, decimal) for row in readings[:300]).most_common(1)[0][0]
+    alike = sum(_form(rows[head], decimal) == form for head in walk.heads)
+    if alike > _ALIKE * len(walk.heads) or "stamp" in form:
         return False  # the rows of a table, one of whose whole numbers happens to count
     numeric = share_of([cell for row in readings[:300] for cell in row], decimal, ("number", "missing"))
     return numeric > 0.8 and _depth_cell(rows, profiles, width, decimal) is not None
@@ -121,10 +152,9 @@ def _is_one_profile(rows: Sequence[Row], walk: Walk, is_whole: bool) -> bool:
     return is_whole and count > 2 and walk.heads[0] + count + 1 == len(rows)
 
 
-def _usual_form(rows: Sequence[Row], decimal: str) -> tuple[str, ...]:
-    """Return what the cells of most rows are: whole numbers, other numbers, stamps, words."""
-    forms = Counter(tuple("whole" if cell.isdigit() else sort_of(cell, decimal) for cell in row) for row in rows[:300])
-    return forms.most_common(1)[0][0]
+def _form(row: Row, decimal: str) -> tuple[str, ...]:
+    """Return what the cells of a row are: whole numbers, other numbers, stamps, words."""
+    return tuple("whole" if cell.isdigit() else sort_of(cell, decimal) for cell in row)
 
 
 def _profiles(walk: Walk, length: int, is_whole: bool) -> list[tuple[int, int]]:
@@ -163,66 +193,57 @@ def _depth_cell(rows: Sequence[Row], profiles: Sequence[tuple[int, int]], width:
 # The layout
 
 
-def _proposal(
-    sample: Sample,
-    cutting: Cutting,
-    comment: str,
-    lines: Sequence[Line],
-    comments: Sequence[Line],
-    rows: Sequence[Row],
-    walk: Walk,
-) -> Proposal | None:
-    header = lines[: walk.heads[0]]
-    hints = "\n".join([*(line.text for line in (*comments, *header)), sample.path.name])
-    records = columns_of([rows[head] for head in walk.heads], cutting.decimal)
-    guesses = [guess for guess in time_guesses(records, hints) if walk.count not in guess.places]
-    profiles = _profiles(walk, len(rows), not sample.tail)
-    readings, width = _readings(rows, profiles)
-    depth = _depth_cell(rows, profiles, width, cutting.decimal)
-    if not guesses or depth is None:
+@dataclass(frozen=True)
+class Readings:
+    """The lines of readings: names and columns of their cells, and which are depth and temperature."""
+
+    names: list[str]
+    columns: list[Column]
+    depth: int
+    temperature: int
+
+
+def _proposal(sample: Sample, profiles: Profiles) -> Proposal | None:
+    count = profiles.walk.count
+    hints = "\n".join([*(line.text for line in (*profiles.comments, *profiles.header)), sample.path.name])
+    guesses = time_guesses(columns_of(profiles.records, profiles.cutting.decimal), hints)
+    time = next((guess for guess in guesses if count not in guess.places), None)
+    readings = _readings(profiles)
+    if time is None or readings is None:
         return None
-    time = guesses[0]
-    names = cell_names(len(rows[walk.heads[0]]), time, {walk.count: "count"})
-    reading_names, columns = _reading_columns(readings, width, depth, cutting, [*header, *comments])
-    temperature = _temperature(columns, depth)
-    if temperature is None:
-        return None
+    names = cell_names(len(profiles.records[0]), time, {count: "count"})
     time_keys, scale, doubts = meaning(time, "", hints, None)
-    units, unit_doubt = units_of([columns[temperature]], hints)
-    missing, missing_doubts = missing_tokens([columns[temperature]], units)
-    depth_keys, depth_doubts = _depth(columns[depth], reading_names[depth], hints)
-    doubts += [
-        *([unit_doubt] if unit_doubt else []),
-        *missing_doubts,
-        *depth_doubts,
-        *_left(reading_names, depth, temperature),
-    ]
-    record: dict[str, Any] = {"names": names, "count": "count"}
-    begins = _begins([rows[head][0] for head in walk.heads])
-    if begins and not any(
-        text.text.lstrip().startswith(begins) for place, text in enumerate(lines) if place not in set(walk.heads)
-    ):
-        record["begins"] = begins
-    content = text_keys(sample, cutting) | ({"comment": comment} if comment else {})
+    reading_keys, reading_doubts = reading_settings([readings.columns[readings.temperature]], hints)
+    depth_keys, depth_doubts = _depth(readings.columns[readings.depth], readings.names[readings.depth], hints)
+    begins = _begins(profiles)
+    content = text_keys(sample, profiles.cutting) | ({"comment": profiles.comment} if profiles.comment else {})
     content |= {
         "kind": "counted",
-        "header_rows": len(header),
-        "names": reading_names,
-        "missing": missing,
-        "record": record,
+        "header_rows": len(profiles.header),
+        "names": readings.names,
+        "missing": reading_keys["missing"],
+        "record": {"names": names, "count": "count"} | ({"begins": begins} if begins else {}),
         "time": time.named(names) | time_keys,
         "depth": depth_keys,
-        "temperature": {"column": reading_names[temperature], "units": units} | scale,
+        "temperature": {"column": readings.names[readings.temperature], "units": reading_keys["units"]} | scale,
     }
-    uses = (
-        Use(f"lines that begin a profile, cell {walk.count + 1}", "how many readings follow"),
-        *(Use(f"lines that begin a profile, cell {place + 1}", f"time ({names[place]})") for place in time.places),
-        Use(f"lines of readings, cell {depth + 1}", "depth"),
-        Use(f"lines of readings, cell {temperature + 1}", "temperature"),
-    )
-    shown = [(line, "comment") for line in comments] + [(line, "header") for line in header]
+    shown = [(line, "comment") for line in profiles.comments] + [(line, "header") for line in profiles.header]
     return Proposal(
-        content, (*sample.doubts, *doubts), uses, tuple(shown), cutting.in_words, time.named_rival(names, time_keys)
+        content,
+        (*sample.doubts, *doubts, *reading_doubts, *depth_doubts, *_left(readings)),
+        _uses(count, time, names, readings),
+        tuple(shown),
+        profiles.cutting.in_words,
+        time.named_rival(names, time_keys),
+    )
+
+
+def _uses(count: int, time: TimeGuess, names: Sequence[str], readings: Readings) -> tuple[Use, ...]:
+    return (
+        Use(f"lines that begin a profile, cell {count + 1}", "how many readings follow"),
+        *(Use(f"lines that begin a profile, cell {place + 1}", f"time ({names[place]})") for place in time.places),
+        Use(f"lines of readings, cell {readings.depth + 1}", "depth"),
+        Use(f"lines of readings, cell {readings.temperature + 1}", "temperature"),
     )
 
 
@@ -246,31 +267,25 @@ def cell_names(width: int, time: TimeGuess, others: dict[int, str]) -> list[str]
     return names
 
 
-def _readings(rows: Sequence[Row], profiles: Sequence[tuple[int, int]]) -> tuple[list[Row], int]:
-    inside = [row for start, stop in profiles for row in rows[start:stop]]
+def _readings(profiles: Profiles) -> Readings | None:
+    """Return the readings, named by a line of the header where one fits; None without depth and temperature."""
+    decimal = profiles.cutting.decimal
+    inside = [row for start, stop in profiles.spans for row in profiles.rows[start:stop]]
     width = Counter(map(len, inside)).most_common(1)[0][0]
-    return [row for row in inside if len(row) == width], width
-
-
-def _reading_columns(
-    readings: Sequence[Row], width: int, depth: int, cutting: Cutting, header: Sequence[Line]
-) -> tuple[list[str], list[Column]]:
-    """Return names and columns of the readings; the names from a line of the header where one fits."""
-    found = next(_headings(header, width, depth), None)
-    labels = found if found is not None else [""] * width
-    names = [label or f"cell_{place + 1}" for place, label in enumerate(labels)]
-    if found is None or len(set(names)) < width:
-        names = [f"cell_{place + 1}" for place in range(width)]
-    columns = [
-        Column(place, names[place], (), tuple(row[place] for row in readings), cutting.decimal)
-        for place in range(width)
-    ]
-    if found is None:
-        names[depth] = "depth"
-        temperature = _temperature(columns, depth)
-        if temperature is not None:
-            names[temperature] = "temperature"
-    return names, columns
+    depth = _depth_cell(profiles.rows, profiles.spans, width, decimal)
+    if depth is None:
+        return None
+    found = next(_headings((*profiles.header, *profiles.comments), width, depth), None) or [""] * width
+    fitting = [row for row in inside if len(row) == width]
+    columns = [Column(place, found[place], (), tuple(row[place] for row in fitting), decimal) for place in range(width)]
+    temperature = _temperature(columns, depth)
+    if temperature is None:
+        return None
+    if all(found) and len(set(found)) == width:
+        return Readings(found, columns, depth, temperature)
+    names = [f"cell_{place + 1}" for place in range(width)]
+    names[depth], names[temperature] = "depth", "temperature"
+    return Readings(names, columns, depth, temperature)
 
 
 def _headings(header: Sequence[Line], width: int, depth: int) -> Iterator[list[str]]:
@@ -298,13 +313,11 @@ def _depth(column: Column, name: str, hints: str) -> tuple[dict[str, Any], list[
     return keys, doubts
 
 
-def _left(names: Sequence[str], depth: int, temperature: int) -> list[Doubt]:
-    left = [repr(name) for place, name in enumerate(names) if place not in (depth, temperature)]
-    if len(names) == 2:
-        return []
-    return [
-        Doubt("columns that are not used", ", ".join(left), "of the cells of a reading, depth and temperature are used")
-    ]
+def _left(readings: Readings) -> list[Doubt]:
+    used = (readings.depth, readings.temperature)
+    left = ", ".join(repr(name) for place, name in enumerate(readings.names) if place not in used)
+    why = "of the cells of a reading, depth and temperature are used"
+    return [Doubt("columns that are not used", left, why)] if left else []
 
 
 def common_beginning(texts: Sequence[str]) -> str:
@@ -314,7 +327,12 @@ def common_beginning(texts: Sequence[str]) -> str:
     return first[:length] if length is not None else first[: min(len(first), len(last))]
 
 
-def _begins(firsts: Sequence[str]) -> str:
-    """Return the word or sign that is the first cell of all records, or an empty text."""
-    word = firsts[0]
-    return word if set(firsts) == {word} and re.fullmatch(r"[^\W\d_]{2,}:?|[#%!*>$&@]+", word) else ""
+def _begins(profiles: Profiles) -> str:
+    """Return the word or sign that is the first cell of all records and begins no other line, or an empty text."""
+    words = {row[0] for row in profiles.records}
+    word = words.pop()
+    if words or not re.fullmatch(r"[^\W\d_]{2,}:?|[#%!*>$&@]+", word):
+        return ""
+    heads = set(profiles.walk.heads)
+    others = (line.text for place, line in enumerate(profiles.lines) if place not in heads)
+    return "" if any(text.lstrip().startswith(word) for text in others) else word

@@ -9,7 +9,7 @@ from itertools import pairwise
 import numpy as np
 from numpy.typing import NDArray
 
-_SPLIT_SHARE = 0.02  # of the lines that may have no end of a column where the others have one: damaged ones
+_ONE_LENGTH = 0.6  # share of the lines (ours)
 _MOST = 0.9  # share of the lines that tells how a column is aligned (ours)
 _SIGN_SHARE = 0.9  # a sign that stands in nearly all lines separates the parts of a date, no columns
 
@@ -20,15 +20,16 @@ def find_places(texts: Sequence[str], decimal: str) -> list[tuple[int, int]]:
     Two neighbouring characters are of two columns where in no line both belong to one word; a sign between two
     numbers that stand close begins a word.
     """
-    usual = [text for text in texts if "\t" not in text]
-    if len(usual) < len(texts) or len(usual) < 2:
+    if any("\t" in text for text in texts) or len(texts) < 2:
         return []
-    width = Counter(map(len, usual)).most_common(1)[0][0]
-    width = max(width, max(map(len, usual))) if max(map(len, usual)) < 2 * width else width
+    width, agreeing = Counter(map(len, texts)).most_common(1)[0]
+    # Where most lines have one length, the others are damaged; where they do not, their ends were cut.
+    usual = [text for text in texts if len(text) == width] if agreeing > _ONE_LENGTH * len(texts) else list(texts)
+    width = max(map(len, usual))
     table = np.array([list(text[:width].ljust(width)) for text in usual])
     blank = table == " "
     joined = ~blank[:, :-1] & ~blank[:, 1:] & ~_signs(table, blank)
-    is_border = joined.sum(axis=0) <= _SPLIT_SHARE * len(usual)
+    is_border = ~joined.any(axis=0)
     edges = [0, *(np.flatnonzero(is_border) + 1).tolist(), width]
     spans = [(start, stop) for start, stop in pairwise(edges) if not blank[:, start:stop].all()]
     return _widened(spans, [_is_left_aligned(blank[:, start:stop]) for start, stop in spans])

@@ -16,6 +16,7 @@ from profiles.ingest.layout import WHITESPACE
 
 _MARK = re.compile(r"\s*(//|--(?!\d)|[#%!*/;>$&~|@<=:'`^])")
 _DATA_SHARE = 0.6  # of a data row's cells that are numbers, stamps or missing tokens
+_FEW_LINES, _FEW_SHARE = 4, 0.05  # lines of a header that may look like data, or share of the rows below (ours)
 _GOOD: tuple[Sort, ...] = ("number", "stamp", "missing")
 
 Row = list[str]
@@ -79,6 +80,8 @@ def build_table(sample: Sample, cutting: Cutting) -> Table | None:
     first = next((place for place, row in enumerate(rows) if _fits(row, kinds, cutting.decimal)), None)
     if width < 2 or first is None or "number" not in kinds:
         return None
+    if sum(_is_data(row, cutting.decimal) for row in rows[:first]) > max(_FEW_LINES, _FEW_SHARE * (len(rows) - first)):
+        return None  # much of what would be header is data of another shape
     header, header_rows = lines[:first], rows[:first]
     body = [row for row in rows[first:] if _fits(row, kinds, cutting.decimal, strictly=False)]
     one_more = _ends_with_delimiter(header_rows, body, width, cutting)

@@ -14,7 +14,7 @@ from profiles.ingest.drafting.depth_names import NamedDepths, plausible
 from profiles.ingest.drafting.doubts import Doubt
 from profiles.ingest.drafting.meaning import depth_lists, depth_units_in, depths_by_name, one_depth
 from profiles.ingest.drafting.proposal import Proposal, Use, meaning, ranges, text_keys
-from profiles.ingest.drafting.readings import flags_of, missing_tokens, units_of
+from profiles.ingest.drafting.readings import flags_of, reading_settings
 from profiles.ingest.drafting.sample import Sample
 from profiles.ingest.drafting.table import Table, depth_groups, with_names
 from profiles.ingest.drafting.time_columns import TimeGuess
@@ -25,6 +25,8 @@ from profiles.ingest.long import MOST_DEPTHS
 _PLAIN_NUMBER = re.compile(r"[-+]?[0-9]+(?:[.,][0-9]+)?")
 _RIVAL = 1.5  # less sure than the best, and another reading of the columns is not mentioned (ours)
 _AGAIN = 0.7  # different times of a row; with fewer, several readings are of one time (ours)
+_LONGEST_MARK, _MOST_MARKS = 8, 12  # characters of a quality mark, and different ones in a column (ours)
+_MOST_STATIONS = 50  # of one file (ours)
 _FEW_DEPTHS = 60  # different depths of a column; with more they are measured ones, about the sensors' (ours)
 
 
@@ -189,31 +191,25 @@ def _wide(sample: Sample, table: Table, time: TimeGuess, sensors: Found, rival: 
     if sensors.needs_names or _repeat(table, [table.names[place] for place in time.places]):
         table = with_names(table)
     columns = [table.columns[place] for place in sensors.depth]
-    near = "\n".join(table.columns[place].label for place in time.places)
     how = next((each for column in columns if (each := aggregation(" ".join((*column.notes, column.name))))), None)
-    time_keys, temperature, doubts = meaning(time, near, table.hints, how)
-    units, unit_doubt = units_of(columns, table.hints)
-    missing, missing_doubts = missing_tokens(columns, units)
+    time_keys, temperature, doubts = meaning(time, _near(table, time), table.hints, how)
+    readings, reading_doubts = reading_settings(columns, table.hints)
     depth, depth_doubts = _depth_keys(sensors, table, columns)
-    doubts += [*sensors.doubts, *depth_doubts, *([unit_doubt] if unit_doubt else []), *missing_doubts]
+    quality, mark_places, mark_doubts = _wide_quality(table, sensors)
+    doubts += [*sensors.doubts, *depth_doubts, *reading_doubts, *mark_doubts]
     if rival is not None:
         doubts.append(_rivalry(table, sensors, rival))
-    content = _table_keys(sample, table) | {"kind": "wide", "missing": missing}
+    content = _table_keys(sample, table) | {"kind": "wide", "missing": readings["missing"]}
     content |= {
         "time": time.named(table.names) | time_keys,
         "depth": depth,
-        "temperature": {"units": units} | temperature,
+        "temperature": {"units": readings["units"]} | temperature,
+        **quality,
     }
-    quality, quality_places = _wide_quality(table, sensors)
-    if quality is not None:
-        content["quality"], doubt = quality
-        doubts.append(doubt)
-    uses = _uses(table, time, sensors, quality_places)
-    doubts += _unused(table, {*time.places, *sensors.depth, *quality_places})
     return Proposal(
         content,
-        (*sample.doubts, *doubts),
-        uses,
+        (*sample.doubts, *doubts, *_unused(table, {*time.places, *sensors.depth, *mark_places})),
+        _uses(table, time, sensors, mark_places),
         _header(table),
         table.cutting.in_words,
         time.named_rival(table.names, time_keys),
@@ -281,38 +277,33 @@ def _rivalry(table: Table, sensors: Found, rival: Found) -> Doubt:
 # Quality marks of a wide table
 
 
-def _wide_quality(table: Table, sensors: Found) -> tuple[tuple[dict[str, Any], Doubt] | None, list[int]]:
-    """Return [quality] with its doubt, and the columns it uses."""
+def _wide_quality(table: Table, sensors: Found) -> tuple[dict[str, Any], list[int], list[Doubt]]:
+    """Return [quality] if there are marks, the columns it uses, and the doubt about them."""
     marked = [
         column for column in table.columns if "quality" in roles_of(column.name) and column.place not in sensors.depth
     ]
-    if not marked:
-        return None, []
     if len(marked) == 1 and len(sensors.depth) > 1:
         return _glued(marked[0], len(sensors.depth))
     by_depth = _marks_by_depth(marked, sensors)
     if by_depth is None and len(marked) == len(sensors.depth):
         by_depth = dict(zip(sensors.depth, marked, strict=True))
-    if by_depth is None:
-        return None, []
-    chosen = list(by_depth.values())
-    if max(len(text) for column in chosen for text in column.texts) > 8 or _repeat(
-        table, [each.name for each in chosen]
-    ):
-        return None, []
+    chosen = list(by_depth.values()) if by_depth is not None else []
+    longest = max((len(text) for column in chosen for text in column.texts), default=_LONGEST_MARK + 1)
+    if by_depth is None or longest > _LONGEST_MARK or _repeat(table, [each.name for each in chosen]):
+        return {}, [], []
     flags, doubt = flags_of({text for column in chosen for text in column.texts})
-    names = {table.names[place]: column.name for place, column in by_depth.items()}
     pattern = _quality_pattern(table, sensors, by_depth)
+    names = {table.names[place]: column.name for place, column in by_depth.items()}
     keys: dict[str, Any] = {"pattern": pattern} if pattern is not None else {"columns": names}
-    return (keys | {"flags": flags}, doubt), [column.place for column in chosen]
+    return {"quality": keys | {"flags": flags}}, [column.place for column in chosen], [doubt]
 
 
-def _glued(column: Column, sensors: int) -> tuple[tuple[dict[str, Any], Doubt] | None, list[int]]:
+def _glued(column: Column, sensors: int) -> tuple[dict[str, Any], list[int], list[Doubt]]:
     fitting = [text for text in column.texts if len(text) == sensors]
     if len(fitting) < 0.9 * len(column.texts):
-        return None, []
+        return {}, [], []
     flags, doubt = flags_of(set("".join(fitting)))
-    return ({"column": column.name, "flags": flags}, doubt), [column.place]
+    return {"quality": {"column": column.name, "flags": flags}}, [column.place], [doubt]
 
 
 def _marks_by_depth(marked: Sequence[Column], sensors: Found) -> dict[int, Column] | None:
@@ -402,57 +393,37 @@ def _depth_worth(column: Column) -> float:
 def _long(
     sample: Sample, table: Table, time: TimeGuess, depth: Column, temperature: Column, rivals: Sequence[Column]
 ) -> Proposal:
-    near = "\n".join(table.columns[place].label for place in time.places)
-    time_keys, scale, doubts = meaning(time, near, table.hints, aggregation(temperature.label))
-    units, unit_doubt = units_of([temperature], table.hints)
-    missing, missing_doubts = missing_tokens([temperature], units)
+    used = dict.fromkeys(time.places, "time") | {depth.place: "depth", temperature.place: "temperature"}
+    time_keys, scale, doubts = meaning(time, _near(table, time), table.hints, aggregation(temperature.label))
+    readings, reading_doubts = reading_settings([temperature], table.hints)
     depth_keys, depth_doubts = _column_depth(depth, table)
-    doubts += [*([unit_doubt] if unit_doubt else []), *missing_doubts, *depth_doubts]
+    quality, mark_doubts = _long_quality(table, used, temperature)
+    station, station_doubts = _station(table, used)
+    doubts += [*reading_doubts, *depth_doubts]
     if rivals:
-        doubts.append(
-            Doubt(
-                "column of the temperature",
-                repr(table.names[temperature.place]),
-                "others could be meant",
-                ", ".join(repr(table.names[column.place]) for column in rivals[:3]),
-            )
-        )
-    content = _table_keys(sample, table) | {"kind": "long", "missing": missing}
+        others = ", ".join(repr(table.names[column.place]) for column in rivals[:3])
+        named = repr(table.names[temperature.place])
+        doubts.append(Doubt("column of the temperature", named, "others could be meant", others))
+    content = _table_keys(sample, table) | {"kind": "long", "missing": readings["missing"], **station}
     content |= {
         "time": time.named(table.names) | time_keys,
         "depth": depth_keys,
-        "temperature": {"column": table.names[temperature.place], "units": units} | scale,
+        "temperature": {"column": table.names[temperature.place], "units": readings["units"]} | scale,
+        **quality,
     }
-    used = dict.fromkeys(time.places, "time") | {depth.place: "depth", temperature.place: "temperature"}
-    quality = _long_quality(table, used, temperature)
-    if quality is not None:
-        flags, doubt = flags_of(set(quality.texts))
-        content["quality"] = {"column": quality.name, "flags": flags}
-        doubts.append(doubt)
-        used[quality.place] = "quality marks"
-    station = _station(table, used)
-    if station is not None:
-        content["station"] = station.name
-        used[station.place] = "station"
-        if len(set(station.texts)) > 1:
-            doubts.append(
-                Doubt(
-                    "station",
-                    repr(station.name),
-                    f"{len(set(station.texts))} stations are in one file; the one "
-                    "with most rows is read, the others go to quarantine",
-                )
-            )
-    uses = [Use(f"{place + 1} {table.names[place]!r}", use) for place, use in sorted(used.items())]
-    doubts += _unused(table, set(used))
     return Proposal(
         content,
-        (*sample.doubts, *doubts),
-        tuple(uses),
+        (*sample.doubts, *doubts, *mark_doubts, *station_doubts, *_unused(table, set(used))),
+        tuple(Use(f"{place + 1} {table.names[place]!r}", use) for place, use in sorted(used.items())),
         _header(table),
         table.cutting.in_words,
         time.named_rival(table.names, time_keys),
     )
+
+
+def _near(table: Table, time: TimeGuess) -> str:
+    """Return names and units of the columns of the stamp."""
+    return "\n".join(table.columns[place].label for place in time.places)
 
 
 def _column_depth(depth: Column, table: Table) -> tuple[dict[str, Any], list[Doubt]]:
@@ -494,25 +465,35 @@ def clusters(depths: np.ndarray[Any, np.dtype[np.float64]]) -> tuple[list[float]
     return (middles, tolerance) if 2.0 * tolerance < apart else ([], 0.0)
 
 
-def _long_quality(table: Table, used: Mapping[int, str], temperature: Column) -> Column | None:
+def _long_quality(table: Table, used: dict[int, str], temperature: Column) -> tuple[dict[str, Any], list[Doubt]]:
+    """Return [quality] if there is a column of marks, noting its use."""
     marked = [
         column
         for column in table.columns
         if column.place not in used
         and "quality" in roles_of(column.name)
-        and max(map(len, column.texts)) <= 8
-        and len(set(column.texts)) <= 12
+        and max(map(len, column.texts)) <= _LONGEST_MARK
+        and len(set(column.texts)) <= _MOST_MARKS
     ]
     named = [column for column in marked if temperature.name.casefold() in column.name.casefold()]
     behind = [column for column in marked if column.place == temperature.place + 1]
-    return next(iter([*named, *behind, *(marked if len(marked) == 1 else [])]), None)
+    column = next(iter([*named, *behind, *(marked if len(marked) == 1 else [])]), None)
+    if column is None:
+        return {}, []
+    used[column.place] = "quality marks"
+    flags, doubt = flags_of(set(column.texts))
+    return {"quality": {"column": column.name, "flags": flags}}, [doubt]
 
 
-def _station(table: Table, used: Mapping[int, str]) -> Column | None:
+def _station(table: Table, used: dict[int, str]) -> tuple[dict[str, Any], list[Doubt]]:
+    """Return the key for the column of stations if there is one, noting its use."""
     for column in table.columns:
-        if column.place not in used and "station" in roles_of(column.name) and len(set(column.texts)) <= 50:
-            return column
-    return None
+        stations = len(set(column.texts))
+        if column.place not in used and "station" in roles_of(column.name) and stations <= _MOST_STATIONS:
+            used[column.place] = "station"
+            why = f"{stations} stations are in one file; the one with most rows is read, the others go to quarantine"
+            return {"station": column.name}, [Doubt("station", repr(column.name), why)] if stations > 1 else []
+    return {}, []
 
 
 # --------------------------------------------------------------------------------------------------------------
