@@ -1091,3 +1091,22 @@ def test_a_draft_reads_every_value_where_and_when_it_was(name, tmp_path):
     stated = {**content["time"], "scale": content["temperature"]["scale"]}
     assert {key: stated.get(key) for key in made.expected} == made.expected
     assert drafted.rows_read == drafted.rows_kept + drafted.rows_quarantined
+
+
+@pytest.mark.parametrize("name", [name for name in CASES if "zip" not in name])
+def test_a_row_cut_short_changes_nothing_but_itself(name, tmp_path):
+    made = CASES[name]()
+    if made.kind not in {"wide", "long"}:
+        pytest.skip("a lost line takes its profile with it, and a header its block")
+    plain = gzip.decompress(made.content).decode("utf-16") if made.name.endswith("gz") else made.content.decode()
+    whole, cut = tmp_path / "whole" / made.name.removesuffix(".gz"), tmp_path / "cut" / made.name.removesuffix(".gz")
+    rows = plain.splitlines()
+    place = 3 * len(rows) // 4
+    short = [*rows[:place], rows[place][:13], *rows[place + 1 :]]
+    for path, part in ((whole, rows), (cut, short)):
+        path.parent.mkdir()
+        path.write_text("\n".join(part) + "\n", encoding="utf-8")
+    before, after = draft(whole, depths=made.given), draft(cut, depths=made.given)
+    assert after.proposal.content == before.proposal.content
+    assert after.rows_kept == before.rows_kept - 1
+    assert after.rows_read == before.rows_read

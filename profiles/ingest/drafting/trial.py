@@ -29,7 +29,7 @@ _TOKEN = re.compile(r"column '.*': '(.*)' is neither a number nor a missing toke
 _MARK = re.compile(r"the quality mark '(.*)' is in no table", re.DOTALL)
 _ROUNDS = 3  # of reading the whole file while tokens are found that the sample did not have
 _AS_GOOD = 0.985  # of the rows that the best keeps; what keeps so many is as good (ours)
-_A_FEW = 2  # rows: a damaged one may fit a wrong layout by chance (ours)
+_A_FEW = 1  # row: a damaged one may fit a wrong layout by chance (ours)
 _OFTEN = 3  # times that an unknown word has to stand in the file to be a token (ours)
 
 
