@@ -100,14 +100,15 @@ def _look_over(buffer: Bytes, start: int, end: int) -> tuple[int, bool]:
 
 @numba.njit(cache=True)
 def _delimited(
-    buffer: Bytes, starts: Places, ends: Places, delimiter: int, columns: int, one_more: bool
+    buffer: Bytes, starts: Places, ends: Places, delimiter: int, columns: int, one_more: bool, is_plain: bool
 ) -> tuple[NDArray[np.int32], NDArray[np.int32], NDArray[np.int32], NDArray[np.int8], NDArray[np.bool_]]:
     lines = starts.size
     first, last = np.zeros((lines, columns), np.int32), np.zeros((lines, columns), np.int32)
     count, damage, is_ascii = np.zeros(lines, np.int32), np.zeros(lines, np.int8), np.ones(lines, np.bool_)
     for line in range(lines):
         place, end, column = starts[line], ends[line], 0
-        damage[line], is_ascii[line] = _look_over(buffer, place, end)
+        if not is_plain:
+            damage[line], is_ascii[line] = _look_over(buffer, place, end)
         while not damage[line]:
             while place < end and _is_blank(buffer[place], delimiter):
                 place += 1
@@ -154,7 +155,14 @@ def delimited_cells(
     one_more : bool
         Whether a line may end with one delimiter more.
     """
-    return Cells(buffer, *_delimited(buffer, starts, ends, delimiter, columns, one_more))
+    is_plain = _is_plain(buffer, starts, ends)
+    return Cells(buffer, *_delimited(buffer, starts, ends, delimiter, columns, one_more, is_plain))
+
+
+def _is_plain(buffer: Bytes, starts: Places, ends: Places) -> bool:
+    """Tell whether lines hold nothing but ASCII, and no NUL."""
+    held = buffer[starts[0] : ends[-1]] if starts.size else buffer[:0]
+    return bool(held.size) and bool(held.min() > 0) and bool(held.max() <= ASCII_LAST)
 
 
 @numba.njit(cache=True)

@@ -27,29 +27,25 @@ FEED, RETURN, SPACE, TAB, FORM_FEED = 10, 13, 32, 9, 12
 # Kernels
 
 
-@numba.njit(cache=True)
 def find_lines(buffer: Bytes) -> tuple[Places, Places]:
     """Return where lines start and end; a feed, a return, or both in this order end a line."""
-    count = 0
-    for place in range(buffer.size):
-        if buffer[place] == FEED or (
-            buffer[place] == RETURN and not (place + 1 < buffer.size and buffer[place + 1] == FEED)
-        ):
-            count += 1
-    if buffer.size and buffer[-1] != FEED and buffer[-1] != RETURN:
-        count += 1
-    starts, ends = np.empty(count, np.int64), np.empty(count, np.int64)
-    line, start, place = 0, 0, 0
-    while place < buffer.size:
-        if buffer[place] == FEED or buffer[place] == RETURN:
-            starts[line], ends[line] = start, place
-            if buffer[place] == RETURN and place + 1 < buffer.size and buffer[place + 1] == FEED:
-                place += 1
-            start = place + 1
-            line += 1
-        place += 1
-    if start < buffer.size:
-        starts[line], ends[line] = start, buffer.size
+    is_feed = buffer == FEED
+    is_return = buffer == RETURN
+    if is_return.any():
+        is_return[:-1] &= ~is_feed[1:]  # of both, the feed
+        ends = np.flatnonzero(is_feed | is_return)
+    else:
+        ends = np.flatnonzero(is_feed)
+    starts = np.concatenate([[0], ends + 1])
+    if starts[-1] == buffer.size:
+        starts = starts[:-1]
+    else:
+        ends = np.append(ends, buffer.size)
+    # The return of both is no part of the line either.
+    behind = ends[ends < buffer.size]
+    is_both = (buffer[behind] == FEED) & (behind > 0)
+    is_both &= buffer[np.maximum(behind - 1, 0)] == RETURN
+    ends[: behind.size] -= is_both
     return starts, ends
 
 

@@ -18,8 +18,11 @@ _SYNTAX = r"[+-]?(?:[0-9]+(?:{mark}[0-9]*)?|{mark}[0-9]+)(?:[eE][+-]?[0-9]+)?"
 LARGEST = float(np.finfo(np.float32).max)  # chains are stored in float32
 
 ZERO, NINE, PLUS, MINUS, EXPONENTS = 48, 57, 43, 45, (69, 101)
-_EXACT_DIGITS = 15  # a whole number of so many digits is a float64, exactly
+_MOST_DIGITS = 18  # of a whole number that fits into 64 bits whatever its digits
+_EXACT = 2**53  # whole numbers up to it are float64, exactly
 _EXACT_POWER = 22  # and so is ten to at most this power: their quotient is rounded once, as it must be
+_HALVES = 134_217_729.0  # 2^27 + 1; cuts a float64 into two of 26 digits (Dekker 1971, Numerische Mathematik 18)
+_QUOTIENT_ERROR = 2.0**-48  # relative, of the second part of a quotient; it is nearer 2^-51
 _POWERS: NDArray[np.float64] = np.array([10.0**power for power in range(_EXACT_POWER + 1)])
 _LARGEST_EXPONENT = 9999  # beyond any float64; more digits of an exponent change nothing
 
@@ -44,24 +47,62 @@ class Problem(IntEnum):
 
 
 @numba.njit(cache=True, inline="always")  # as a call it takes three times as long
-def _mantissa(buffer: Bytes, place: int, end: int, mark: int) -> tuple[float, int, int, int, int]:
-    """Return sign, digits as a whole number, how many, how many of them behind the mark, and the place behind them."""
+def _mantissa(buffer: Bytes, place: int, end: int, mark: int) -> tuple[float, int, int, int, int, int]:
+    """Return sign, digits as a whole number, how many, how many of them behind the mark and how many zeros before the
+    others, and the place behind them."""
     sign = 1.0
     if place < end and (buffer[place] == PLUS or buffer[place] == MINUS):
         sign = -1.0 if buffer[place] == MINUS else 1.0
         place += 1
-    whole, digits, point = 0, 0, -1
+    whole, digits, zeros, point = 0, 0, 0, -1
     while place < end:
         digit = int(buffer[place]) - ZERO
         if 0 <= digit <= 9:
             whole = 10 * whole + digit
             digits += 1
+            zeros += whole == 0
         elif buffer[place] == mark and point < 0:
             point = digits
         else:
             break
         place += 1
-    return sign, whole, digits, (digits - point if point >= 0 else 0), place
+    return sign, whole, digits, (digits - point if point >= 0 else 0), zeros, place
+
+
+@numba.njit(cache=True)
+def _halves(number: float) -> tuple[float, float]:
+    """Return two numbers of at most 26 binary digits that make a number together."""
+    upper = _HALVES * number
+    upper = upper - (upper - number)
+    return upper, number - upper
+
+
+@numba.njit(cache=True)
+def _quotient(whole: int, divisor: float) -> tuple[float, bool]:
+    """Return a whole number of up to 63 bits divided by an exact divisor, and whether it is surely rounded rightly.
+
+    The quotient is found in two parts, the second from the exact rest that the first leaves; only where their sum is so
+    near the middle between two numbers that the error of the second decides, it is left open.
+    """
+    upper = float(whole)
+    lower = float(whole - int(upper))
+    first = upper / divisor
+    product = first * divisor
+    (one, two), (three, four) = _halves(first), _halves(divisor)
+    missing = ((one * three - product) + one * four + two * three) + two * four
+    second = ((upper - product) - missing + lower) / divisor
+    found = first + second * (1.0 + _QUOTIENT_ERROR)
+    return found, found == first + second * (1.0 - _QUOTIENT_ERROR)
+
+
+@numba.njit(cache=True)
+def _scaled(whole: int, power: int, powers: NDArray[np.float64]) -> tuple[float, bool]:
+    """Return a whole number times a power of ten, and whether it is surely rounded rightly."""
+    if abs(power) > _EXACT_POWER:
+        return np.nan, False
+    if whole <= _EXACT:
+        return (whole / powers[-power] if power < 0 else whole * powers[power]), True
+    return _quotient(whole, powers[-power]) if power <= 0 else (np.nan, False)
 
 
 @numba.njit(cache=True)
@@ -77,11 +118,15 @@ def _plain_numbers(
     for line in range(starts.shape[0]):
         for column in range(starts.shape[1]):
             end = int(ends[line, column])
-            sign, whole, digits, behind, place = _mantissa(buffer, int(starts[line, column]), end, mark)
-            if place != end or digits == 0 or digits > _EXACT_DIGITS:
-                values[line, column], problems[line, column] = np.nan, 3
-            else:
-                values[line, column] = sign * (whole / powers[behind])
+            sign, whole, digits, behind, zeros, place = _mantissa(buffer, int(starts[line, column]), end, mark)
+            values[line, column], problems[line, column] = np.nan, 3
+            if place == end and digits and digits - zeros <= _MOST_DIGITS:
+                if whole <= _EXACT and behind <= _EXACT_POWER:
+                    values[line, column], problems[line, column] = sign * (whole / powers[behind]), 0
+                else:
+                    value, certain = _scaled(whole, -behind, powers)
+                    if certain:
+                        values[line, column], problems[line, column] = sign * value, 0
     return values, problems
 
 
@@ -105,14 +150,14 @@ def _exponent(buffer: Bytes, place: int, end: int) -> tuple[int, bool]:
 @numba.njit(cache=True)
 def _number(buffer: Bytes, start: int, end: int, mark: int, powers: NDArray[np.float64]) -> tuple[float, int]:
     """Return the number that a cell is, and a :class:`Problem`."""
-    sign, whole, digits, behind, place = _mantissa(buffer, int(start), int(end), mark)
+    sign, whole, digits, behind, zeros, place = _mantissa(buffer, int(start), int(end), mark)
     exponent, is_whole = _exponent(buffer, place, end)
     if digits == 0 or not is_whole:
         return np.nan, 1
-    power = exponent - behind
-    if digits > _EXACT_DIGITS or abs(power) > _EXACT_POWER:
+    value, certain = _scaled(whole, exponent - behind, powers)
+    if digits - zeros > _MOST_DIGITS or not certain:
         return np.nan, 3
-    return sign * (whole / powers[-power] if power < 0 else whole * powers[power]), 0
+    return sign * value, 0
 
 
 @numba.njit(cache=True)
@@ -154,15 +199,27 @@ def _decide(
 
 
 @numba.njit(cache=True)
+def _blank(values: NDArray[np.float64], problems: NDArray[np.int8], tokens: NDArray[np.float64]) -> None:
+    """Put NaN for numbers that stand for no reading, and for those that cannot be stored, which is a problem."""
+    for line in range(values.shape[0]):
+        for column in range(values.shape[1]):
+            for token in tokens:
+                if values[line, column] == token:
+                    values[line, column] = np.nan
+            if abs(values[line, column]) > LARGEST:
+                values[line, column], problems[line, column] = np.nan, 2
+
+
+@numba.njit(cache=True)
 def _marks(
     buffer: Bytes,
     starts: NDArray[np.int32],
     ends: NDArray[np.int32],
     texts: Bytes,
     edges: NDArray[np.int64],
-    codes: NDArray[np.int8],
-) -> NDArray[np.int8]:
-    found = np.empty(starts.shape, np.int8)
+    codes: NDArray[np.int32],
+) -> NDArray[np.int32]:
+    found = np.empty(starts.shape, np.int32)
     for line in range(starts.shape[0]):
         for column in range(starts.shape[1]):
             place = _same_text(buffer, starts[line, column], ends[line, column], texts, edges)
@@ -233,10 +290,7 @@ class Numerals:
             text = buffer[starts[line, column] : ends[line, column]].tobytes().decode("ascii")
             values[line, column] = float(text.replace(self.decimal, "."))
         problems[problems == Problem.UNDECIDED] = Problem.NONE
-        for token in self._tokens:
-            values[values == token] = np.nan
-        is_beyond = np.abs(values) > LARGEST
-        values[is_beyond], problems[is_beyond] = np.nan, Problem.NOT_FINITE
+        _blank(values, problems, self._tokens)
         return values, problems
 
 
@@ -246,9 +300,9 @@ def read_marks(
     ends: NDArray[np.int32],
     codes: Mapping[str, int],
     encoding: str,
-) -> NDArray[np.int8]:
+) -> NDArray[np.int32]:
     """Return the code of each cell by its text, (line, column); -1 where there is none for it."""
-    ours = np.array(list(codes.values()), np.int8)
+    ours = np.array(list(codes.values()), np.int32)
     return _marks(buffer, starts, ends, *_joined(list(codes), encoding), ours)
 
 

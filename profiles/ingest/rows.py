@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
+from itertools import islice
 
 import numpy as np
 import pandas as pd
@@ -20,6 +21,7 @@ from profiles.ingest.stamps import compiled, gathered, read_stamps
 from profiles.ingest.wording import listed, nearest
 
 NO_MARK = -1  # stands for a quality mark that is in no table
+_FEW_LABELS = 64  # that are looked for first, all together
 
 
 @dataclass(frozen=True)
@@ -142,7 +144,8 @@ class Understanding:
                 values[:, sensor] if sensor is not None else label.astype(float) if columns.label is not None else None
             )
             time = self._times(cells, columns, reasons, apart)
-        self._name_problems(cells, columns, problems, reasons)
+        if problems.any():
+            self._name_problems(cells, columns, problems, reasons)
         flags = self._flags(cells, columns, reasons)
         is_bad = pd.notna(reasons)
         bad = lines.where(is_bad)
@@ -240,7 +243,7 @@ class Understanding:
             place = int(np.flatnonzero(flags[row] == NO_MARK)[0])
             mark = cells.buffer[starts[row, place] : ends[row, place]].tobytes().decode(self.encoding, "replace")
             reasons[row] = _no_such_mark(mark, columns.names[columns.marks[place]] if columns.tables else None)
-        return flags
+        return flags.astype(np.int8)
 
     def _check_lengths(self, lengths: NDArray[np.int32], columns: Columns, reasons: NDArray[np.object_]) -> None:
         for row in np.flatnonzero((lengths[:, 0] != columns.flags) & pd.isna(reasons)):
@@ -249,8 +252,12 @@ class Understanding:
     def _labels(self, cells: Cells, columns: Columns) -> NDArray[np.int32]:
         if columns.label is None:
             return np.zeros(cells.count.size, np.int32)
-        texts = [cells.text(line, columns.label, self.encoding) for line in range(cells.count.size)]
-        return np.array([self.labels.setdefault(text, len(self.labels)) for text in texts], np.int32)
+        known = dict(islice(self.labels.items(), _FEW_LABELS))
+        labels = read_marks(cells.buffer, *_spans(cells, [columns.label]), known, self.encoding)[:, 0]
+        for line in np.flatnonzero(labels == NO_MARK):
+            text = cells.text(int(line), columns.label, self.encoding)
+            labels[line] = self.labels.setdefault(text, len(self.labels))
+        return labels
 
 
 def _no_such_mark(mark: str, column: str | None) -> str:
@@ -269,8 +276,8 @@ def _are_whole(cells: Cells, columns: Columns) -> NDArray[np.bool_]:
 
 
 def _spans(cells: Cells, columns: Sequence[int]) -> tuple[NDArray[np.int32], NDArray[np.int32]]:
-    chosen = list(columns)
-    return np.ascontiguousarray(cells.starts[:, chosen]), np.ascontiguousarray(cells.ends[:, chosen])
+    chosen = np.array(columns, np.intp)
+    return np.take(cells.starts, chosen, axis=1), np.take(cells.ends, chosen, axis=1)
 
 
 def damage_reasons(lines: Lines, cells: Cells, columns: int, encoding: str) -> NDArray[np.object_]:

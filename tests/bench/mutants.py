@@ -38,6 +38,7 @@ BLANKS = b" \t\x0b\x0c\r\n"
 NUMBER = re.compile(r"[+-]?(\d+(\.\d*)?|\.\d+)([eE][+-]?\d+)?", re.ASCII)
 LARGEST = float(np.finfo(np.float32).max)
 LONG_LINE = 1_000_000
+MOST_CELLS = 4096  # of a line; more columns than a delivery has
 
 
 # --------------------------------------------------------------------------------------------------------------
@@ -81,6 +82,8 @@ def split(text: str, layout: dict) -> list[str] | None:
             return None
         return [text[start - 1 : stop].strip(" \t\x0b\x0c") for start, stop in layout["fixed"].values()]
     delimiter = layout.get("delimiter", ",")
+    if delimiter != "whitespace" and text.count(delimiter) > MOST_CELLS:
+        return None
     if '"' not in text:
         return re.findall(r"[^ \t\x0b\x0c]+", text) if delimiter == "whitespace" else [
             cell.strip(" \t\x0b\x0c") for cell in text.split(delimiter)
@@ -233,7 +236,7 @@ def names_of(header: list[bytes], layout: dict) -> list[str]:
         return list(layout["fixed"])
     text = header[layout.get("names_row", 1) - 1].decode(layout.get("encoding", "utf-8"), "surrogateescape")
     names = split(text, layout)
-    if names is None or "\x00" in text or len(names) > 4096:
+    if names is None or "\x00" in text or len(names) > MOST_CELLS:
         raise UnfitError("names")
     return names
 

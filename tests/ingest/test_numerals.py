@@ -3,7 +3,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from profiles.ingest.numerals import Numerals, Problem
+from profiles.ingest.numerals import _POWERS, Numerals, Problem, _plain_numbers
 
 
 def parsed(*cells, decimal=".", missing=("",)):
@@ -54,6 +54,27 @@ def test_decimal_commas_are_read_with_decimal_commas_only():
     values, problems = parsed("1,5", "1.5", "-9,9990", decimal=",", missing=("-9.999",))
     np.testing.assert_array_equal(values, [1.5, np.nan, np.nan])
     np.testing.assert_array_equal(problems, [Problem.NONE, Problem.NOT_A_NUMBER, Problem.NONE])
+
+
+def test_numbers_of_many_digits_are_rounded_as_python_rounds_them():
+    random = np.random.default_rng(1)
+    readings = random.normal(20.0, 9.0, 4_000)
+    cells = [form.format(value) for form in ("{!r}", "{:.17g}", "{:.18e}") for value in readings.tolist()]
+    # whole numbers halfway between two that a float64 can be, and their neighbours
+    halves = [(2 * int(odd) + 1) << shift for odd in random.integers(2**52, 2**53, 500) for shift in range(6)]
+    cells += [f"{half + step}{end}" for half in halves for step in (-1, 0, 1) for end in ("", ".0", "e-3")]
+    values, problems = parsed(*cells)
+    assert not problems.any()
+    np.testing.assert_array_equal(values, [float(cell) for cell in cells])
+
+
+def test_the_kernel_decides_the_digits_that_a_float64_is_written_with():
+    cells = [repr(value) for value in np.random.default_rng(2).normal(20.0, 9.0, 1_000).tolist()]
+    edges = np.cumsum([0, *map(len, cells)]).astype(np.int32)
+    buffer = np.frombuffer("".join(cells).encode(), np.uint8)
+    values, problems = _plain_numbers(buffer, edges[None, :-1], edges[None, 1:], ord("."), _POWERS)
+    assert not problems.any()
+    np.testing.assert_array_equal(values[0], [float(cell) for cell in cells])
 
 
 @settings(max_examples=500)
