@@ -101,7 +101,9 @@ class TimeSettings(Meaning):
     column: str | None = Field(None, description="name of the column")
     columns: tuple[str, ...] = Field((), description="or names of several, read as one text joined by a blank")
     parts: dict[Part, str] = Field(default_factory=dict, description="or a column of numbers for year, day_of_year ...")
-    format: Annotated[str, AfterValidator(check_gives_day)] = Field(ISO_8601, description='strptime format or "iso8601"')
+    format: Annotated[str, AfterValidator(check_gives_day)] = Field(
+        ISO_8601, description='strptime format or "iso8601"'
+    )
     units: Annotated[str | None, AfterValidator(_known_units)] = Field(
         None, description='"seconds since 1970-01-01" and the like, where the column holds such numbers'
     )
