@@ -51,6 +51,7 @@ Times = NDArray[np.datetime64]
 # What a layout may name
 
 
+@lru_cache(maxsize=64)  # the list of zones is read from disk
 def parse_zone(name: str) -> tzinfo:
     """Return the zone of ``"UTC"``, an offset like ``"+10:00"`` or an IANA name; ValueError for others."""
     if name.upper() in {"UTC", "Z"}:

@@ -24,6 +24,7 @@ from collections import Counter
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass, field
 from datetime import UTC, datetime, timedelta, timezone
+from functools import cached_property
 from pathlib import Path
 from zoneinfo import ZoneInfo
 
@@ -727,7 +728,7 @@ class Sound:
     kind: Kind
     content: bytes
 
-    @property
+    @cached_property
     def layout(self) -> object:
         return KINDS[self.kind.layout["kind"]].model_validate(self.kind.layout)
 
