@@ -100,7 +100,7 @@ def lake_chain_padded_names():
 @case
 def lake_chain_dotted_names():
     return lake(
-        ["datetime", *(f"wtr_{depth}" for depth in LAKE)], lambda time: f"{time:%Y-%m-%d %H:%M}", unsure=("time zone",)
+        ["datetime", *(f"wt_{depth}" for depth in LAKE)], lambda time: f"{time:%Y-%m-%d %H:%M}", unsure=("time zone",)
     )
 
 
@@ -239,10 +239,10 @@ def logger_with_four_header_rows():
     depths = [0.5, 3.0, 9.0, 20.0]
     values = with_gaps(ocean(times, depths, 3))
     quoted = [
-        ["ARRAY", "Raft_North", "LG-1", "1234", "prog.src", "Table1"],
-        ["TIMESTAMP", "RECORD", "Batt_V_Min", *(f"Tw_{depth:g}m_Avg" for depth in depths), "Tair_Avg"],
-        ["TS", "RN", "Volts", *("Deg C" for _ in depths), "Deg C"],
-        ["", "", "Min", *("Avg" for _ in depths), "Avg"],
+        ["STATION", "North raft", "box 7", "third season"],
+        ["WHEN", "ROW", "Supply_lowest", *(f"Water_{depth:g}m" for depth in depths), "Air"],
+        ["local", "no", "Volt", *("Deg C" for _ in depths), "Deg C"],
+        ["", "", "lowest", *("mean" for _ in depths), "mean"],
     ]
     header = [",".join(f'"{cell}"' for cell in row) for row in quoted]
     rows = [
@@ -368,7 +368,7 @@ def one_sensor_whose_depth_is_in_the_header():
         f"{place};{time:%d/%m/%y %H:%M:%S};" + cells(row)[0]
         for place, (time, row) in enumerate(zip(times, values, strict=True), 1)
     ]
-    header = ["Serial;8812", "Sensor depth: 12.5 m", "No;Date Time, GMT+10:00;Temp, °C"]
+    header = ["Serial;8812", "Sensor depth: 12.5 m", "No;Taken at GMT+10:00;Water °C"]
     utc = [time - timedelta(hours=10) for time in times]
     return Case(
         lines(header, rows).encode(), utc, [12.5], values, "wide", unsure=("depth", "century"), certain=("time zone",)
@@ -761,9 +761,9 @@ def archive_blocks_with_two_strings_of_marks():
     sets = ((1.0, 25.0, 50.0, 75.0), (1.0, 10.0, 20.0, 40.0, 60.0, 80.0), (5.0, 25.0, 50.0))
     return blocked(
         lambda number, depths: [
-            f" Time:  block {number} of 3",
-            " Depth (M):  " + " ".join(f"{depth:5.0f}" for depth in depths) + "  QUALITY SOURCE",
-            " YYYYMMDD HHMM " + " ".join("TEMP." for _ in depths),
+            f" Part {number} of 3 from the raft",
+            " Levels below surface:  " + " ".join(f"{depth:5.0f}" for depth in depths) + "  CHECK ORIGIN",
+            " day hour " + " ".join("water" for _ in depths),
         ],
         lambda time, row: (
             f" {time:%Y%m%d %H%M} "
@@ -774,7 +774,7 @@ def archive_blocks_with_two_strings_of_marks():
             + "5" * len(row)
         ),
         sets=sets,
-        before=[" Site: 0N 165E  (  60 times, 3 blocks)", " Units: Temperature (C), F6.2, Missing -9.99"],
+        before=[" Raft north of the pier, 3 parts", " Temperature in deg C; -9.99 stands for none"],
         unsure=("quality marks", "which marks"),
     )
 
@@ -909,7 +909,7 @@ def years_of_two_digits_in_columns():
 @case
 def half_days_and_an_offset_in_the_name():
     found = beside(
-        '"#","Date Time, GMT-07:00","Temp, °C (serial 99, label: 5m)","Detached"',
+        '"No.","Taken at (GMT-07:00)","Water °C (sensor 99, 5m)","Docked"',
         lambda time, row: f"1,{time - timedelta(hours=7):%m/%d/%y %I:%M:%S %p},{cells(row, missing='')[0]},",
         depths=(5.0,),
         unsure=("century",),
@@ -969,11 +969,11 @@ def an_archive_of_one_block():
     times, depths = stamps(30, 1440), [1.0, 25.0, 50.0, 75.0]
     values = with_gaps(ocean(times, depths))
     header = [
-        " Site: 0N 165E",
-        " Units: Temperature (C), F6.2, Missing -9.99",
-        " Time: 2100 to 0200 (index 1 to 30)",
-        " Depth (M):     1    25    50    75  QUALITY SOURCE",
-        " YYYYMMDD HHMM TEMP. TEMP. TEMP. TEMP.",
+        " Raft north of the pier",
+        " Temperature in deg C; -9.99 stands for none",
+        " Part: 2100 to 0200 (rows 1 to 30)",
+        " Level (M):     1    25    50    75  CHECK ORIGIN",
+        " day hour water water water water",
     ]
     rows = [
         f" {time:%Y%m%d %H%M} " + " ".join(f"{text:>6}" for text in cells(row, missing="-9.99")) + " 2222 5555"
@@ -1041,7 +1041,7 @@ def a_temperature_without_a_depth_beside():
 @case
 def year_day_and_hours_with_hundreds():
     return beside(
-        "year4\tdaynum\thour\twtemp_1\twtemp_5\twtemp_10\twtemp_20",
+        "jahr4\tday_no\thour\twater_1\twater_5\twater_10\twater_20",
         lambda time, row: (
             f"{time.year}\t{int(f'{time:%j}')}\t{time.hour * 100}\t" + "\t".join(cells(row, missing="NA"))
         ),
@@ -1052,7 +1052,7 @@ def year_day_and_hours_with_hundreds():
 @case
 def long_with_a_clock_of_four_digits_and_sparse_marks():
     return long(
-        "sampledate\tsampletime\twtemp\tdepth\tflag_wtemp",
+        "taken_on\ttaken_at\twater_temp\tdepth\tflag_water_temp",
         lambda time, depth, value: (
             f"{time:%Y-%m-%d}\t{time:%H%M}\t{cells([value], missing='')[0]}\t{depth}\t{'C' if np.isnan(value) else ''}"
         ),

@@ -417,7 +417,7 @@ def test_numbers_that_stand_for_no_reading(text, count, stands):
 
 
 def test_words_speak_for_or_against_a_temperature():
-    for_it = ["wtr_", "Temp", "WaterTemp_C", "T@m", "Temperatura (°C)", "thermistor", "degC"]
+    for_it = ["wt_", "Temp", "WaterTemp_C", "T@m", "Temperatura (°C)", "thermistor", "degC"]
     against = ["Sal_", "AirTemp_C", "Temp_QC", "DO_mg", "Batt_V", "Temp_Std", "Depth", "Record"]
     assert min(temperature_worth(text) for text in for_it) > max(temperature_worth(text) for text in against)
 

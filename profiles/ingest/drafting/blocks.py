@@ -279,10 +279,11 @@ def _begins(blocks: Sequence[Block]) -> str:
     """Return what the first line of each header begins with, and no other line."""
     prefix = common_beginning([block.header[0].text.lstrip() for block in blocks])
     match = re.match(r"[^\d]*", prefix)
-    begins = (match.group() if match is not None else "").rstrip(" \t+-.,;\"'") or prefix.strip()
+    whole = (match.group() if match is not None else "").rstrip(" \t+-.,;\"'") or prefix.strip()
     others = [line.text.lstrip() for block in blocks for line in block.header[1:]]
     others += [row[0] for block in blocks for row in block.rows if row and sort_of(row[0], ".") != "word"]
-    return "" if not begins or any(text.startswith(begins) for text in others) else begins
+    word = whole.split()[:1] if len(whole.split()) > 1 else []
+    return next((text for text in (*word, whole) if text and not any(each.startswith(text) for each in others)), "")
 
 
 def _glued_cells(rows: Sequence[tuple[Row, int]], depths: Depths) -> list[set[str]]:

@@ -24,11 +24,11 @@ _LIKELY = (np.datetime64("1975-01-01"), np.datetime64("2060-01-01"))  # thermist
 
 #: Zeros of counted time, the commoner first (common practice, no source), and the words that name them.
 _COUNTED: tuple[tuple[str, str, str], ...] = (
-    ("seconds since 1970-01-01", "epoch|unix|posix", "seconds since 1970"),
-    ("milliseconds since 1970-01-01", "epoch|unix|posix|ms", "milliseconds since 1970"),
+    ("seconds since 1970-01-01", "epoch|posix", "seconds since 1970"),
+    ("milliseconds since 1970-01-01", "epoch|posix|ms", "milliseconds since 1970"),
     ("days since 1899-12-30", "serial", "the day numbers of spreadsheets"),
-    ("days since 1950-01-01", "juld|cnes", "days since 1950"),
-    ("days since 1970-01-01", "epoch|unix|posix", "days since 1970"),
+    ("days since 1950-01-01", "", "days since 1950"),
+    ("days since 1970-01-01", "epoch|posix", "days since 1970"),
     ("days since -0001-01-02", "datenum", "days from the beginning of the year 0"),
     ("days since -4713-01-01 12:00", "julian|jd", "Julian days"),
     ("days since 1858-11-17", "mjd", "modified Julian days"),
@@ -370,7 +370,7 @@ def _from_parts(parts: Mapping[str, Column]) -> TimeGuess:
     named = [_named_so(column, name) for name, column in parts.items()]
     worth = 2.2 + 0.25 * sum(named) + 0.08 * len(parts)
     settings = {"parts": {name: column.place for name, column in parts.items()}}
-    doubts = [] if all(named) or len(parts) < 3 else _by_content(parts)
+    doubts = [] if min(named) > 0 or len(parts) < 3 else _by_content(parts)
     return TimeGuess(settings, tuple(column.place for column in parts.values()), clock, worth, tuple(doubts))
 
 

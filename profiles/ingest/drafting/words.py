@@ -10,8 +10,8 @@ Role = Literal[
 ]
 
 _TIME_WORDS = (
-    "datetime|date_?time|timestamp|time_?stamp|time|tstamp|zeit|uhrzeit|hora|heure|clock|hhmm(?:ss)?|epoch|unix(?:time)?|serial|"
-    "julian|jd|mjd|datenum|juld|stamp|dt|tmstamp|datumzeit|when"
+    "datetime|date_?time|timestamp|time_?stamp|time|tstamp|zeit|uhrzeit|hora|heure|clock|hhmm(?:ss)?|epoch|posix|serial|"
+    "julian|jd|mjd|datenum|stamp|dt|tmstamp|datumzeit|when"
 )
 _DATE_WORDS = "date|datum|fecha|day|dato|jour|yyyymmdd|ymd|data|month|year|dag"
 
@@ -136,7 +136,7 @@ def depth_units(text: str) -> str | None:
 
 
 _UNIT_CELL = re.compile(
-    r"[(\[]?(?:°\s*[cfk]|º\s*c|deg.{0,4}[cfk]|degrees?.*|celsius|c|k|m|metres?|meters?|cm|ft|feet|dbar|db|ts|rn|utc|gmt|v|volts?|"
+    r"[(\[]?(?:°\s*[cfk]|º\s*c|deg.{0,4}[cfk]|degrees?.*|celsius|c|k|m|metres?|meters?|cm|ft|feet|dbar|db|utc|gmt|v|volts?|"
     r"psu|pss|%|mg/l|s|sec|seconds|yyyy.*|dd.*|mm/.*|hh.*|-|days?.*|ms/cm|ntu|kelvin|none|unitless|dimensionless|1)?[)\]]?"
 )
 _AGGREGATION = {
@@ -152,9 +152,7 @@ _AGGREGATION = {
     "std": "spread",
     "min": "spread",
     "max": "spread",
-    "tot": "spread",
     "stdev": "spread",
-    "wvc": "spread",
 }
 
 
