@@ -175,6 +175,17 @@ def other_variables_beside():
 
 
 @case
+def serial_numbers_beside_the_depths():
+    """Names that differ in a serial number too: no one pattern fits them."""
+    times = stamps(60, 30)
+    depths = [0.5, 2.0, 12.0]
+    values = with_gaps(ocean(times, depths))
+    names = ",".join(f'"Water temp, °C (unit S/N {7301 + 4 * place}; {d:g}m)"' for place, d in enumerate(depths))
+    rows = [f"{place},{time:%Y-%m-%d %H:%M:%S}," + ",".join(cells(values[place])) for place, time in enumerate(times)]
+    return Case(lines(f'"#","When, GMT",{names}', rows).encode(), times, depths, values, "wide", unsure=("not used",))
+
+
+@case
 def european_spreadsheet():
     """Byte order mark, semicolons, decimal comma, returns, a degree sign, day first."""
     times = stamps(50, 60)

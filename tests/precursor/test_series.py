@@ -114,9 +114,7 @@ def test_kelvin_taken_for_celsius_is_refused(shift):
 
 
 def test_kelvin_without_a_name_or_units_is_refused_too():
-    with pytest.raises(
-        DataError, match=r"looks like kelvin; subtract 273.15, or state the units"
-    ):
+    with pytest.raises(DataError, match=r"looks like kelvin; subtract 273.15, or state the units"):
         monthly_series(VALUES + 273.15, MONTHS, name="x")
     assert monthly_series(VALUES + 273.15, MONTHS, name="x", units="m").size == 24
 

@@ -59,7 +59,8 @@ _ORDER = {role: place for place, (role, _) in enumerate(_ROLES)}
 
 def words_of(text: str) -> list[str]:
     """Return the words of a name, in lower case; a change from small to capital letters begins a word."""
-    spaced = re.sub(r"(?<=[a-z])(?=[A-Z])|(?<=[A-Z])(?=[A-Z][a-z])", " ", text)
+    without_serial = re.sub(r"(?i)\b(s/?n|ser(ial)?)[ .:#-]*[0-9]+", " ", text)
+    spaced = re.sub(r"(?<=[a-z])(?=[A-Z])|(?<=[A-Z])(?=[A-Z][a-z])", " ", without_serial)
     plain = [match.group() for match in re.finditer(r"[a-zà-ÿ#]+", spaced.casefold())]
     return plain
 
