@@ -228,6 +228,44 @@ class SectionSettings(Settings):
 
 
 # --------------------------------------------------------------------------------------------------------------
+# [validation]
+
+
+class ValidationSettings(Settings):
+    """[validation]: how a model is read and seen as the array saw the ocean."""
+
+    temperature_variable: str = Field(
+        "", description="the model's temperature; empty: the one variable whose standard name is of temperature (CF)"
+    )
+    temperature_kind: Literal["by standard name", "in situ", "potential", "conservative"] = Field(
+        "by standard name",
+        description="which temperature it is; declare it where the standard name is missing or wrong",
+    )
+    salinity: Literal["model, else atlas", "atlas"] = Field(
+        "model, else atlas", description="salinity of the conversion to in situ temperature (TEOS-10)"
+    )
+    depth_positive: Literal["declared", "down", "up"] = Field(
+        "declared", description="direction of the model's depths; declare it where their attribute positive is missing"
+    )
+    averaging_days: NotNegative = Field(
+        0.0, description="days that a value of the model is the mean of; 0: from its time bounds, else from the spacing"
+    )
+    top_reach: NotNegative = Field(
+        15.0, description="m; a model's shallowest level no deeper than this stands for the water above it (ours)"
+    )
+    nearest_wet: NotNegative = Field(
+        100.0, description="km; a mooring without wet points about it takes the nearest one within this (ours)"
+    )
+    deepest: Positive = Field(650.0, description="m; levels of fixed depth below this are not read (ours)")
+    block_megabytes: Positive = Field(
+        64.0, description="MB of a model's temperature that a worker holds at a time (ours)"
+    )
+    least_months: Annotated[int, Field(strict=True, ge=3)] = Field(
+        6, description="a score needs as many months at least (ours)"
+    )
+
+
+# --------------------------------------------------------------------------------------------------------------
 # The array
 
 
@@ -272,6 +310,7 @@ class Config(Settings):
     qc: QualityControlSettings = QualityControlSettings()
     column: ColumnSettings = ColumnSettings()
     section: SectionSettings = SectionSettings()
+    validation: ValidationSettings = ValidationSettings()
 
     def resolve(self, path: Path) -> Path:
         """Return ``path`` as seen from the configuration file's folder."""
@@ -287,7 +326,7 @@ _COMMENT_WIDTH = 110
 
 def defaults_text() -> str:
     """Return ``config/defaults.toml``: every setting that has a default, its description as a comment above it."""
-    tables = {name: Config.model_fields[name].default for name in ("qc", "column", "section")}
+    tables = {name: Config.model_fields[name].default for name in ("qc", "column", "section", "validation")}
     return "\n".join([_comment(_HEADER), *(_table_text(name, table) for name, table in tables.items())])
 
 

@@ -1,0 +1,103 @@
+"""A model's files as one dataset: a file, many files, a pattern, a Zarr store, or a dataset that is open already."""
+
+from __future__ import annotations
+
+import glob
+from collections.abc import Sequence
+from pathlib import Path
+
+import xarray as xr
+
+from profiles.errors import DataError, RequestError
+
+Source = str | Path | xr.Dataset | Sequence[str | Path]
+
+_ZARR_MARKS = ("zarr.json", ".zgroup", ".zmetadata", ".zattrs")
+UNREADABLE = (OSError, ValueError, RuntimeError, KeyError)  # what the libraries raise on files that are not whole
+
+
+def open_source(source: Source) -> xr.Dataset:
+    """Open a model lazily.
+
+    Parameters
+    ----------
+    source : str, Path, sequence of these, or xarray.Dataset
+        NetCDF files, Zarr stores, or patterns (``model_*.nc``); what an open dataset holds is taken as it is.
+
+    Raises
+    ------
+    RequestError
+        Where nothing is there.
+    DataError
+        Where a file cannot be read or the files do not belong together; the file is named.
+    """
+    if isinstance(source, xr.Dataset):
+        return source
+    paths = files_of(source)
+    parts = [_open(path) for path in paths]
+    return parts[0] if len(parts) == 1 else _combine(parts, paths)
+
+
+def files_of(source: str | Path | Sequence[str | Path]) -> list[Path]:
+    """Return the files and stores that ``source`` names, in order, each once."""
+    named = [source] if isinstance(source, str | Path) else list(source)
+    found: dict[Path, None] = {}
+    for name in named:
+        text = str(name)
+        matches = [text] if Path(text).exists() else sorted(glob.glob(text))
+        if not matches:
+            raise RequestError("no such model", where=text, expected="NetCDF files, a pattern of them, or a Zarr store")
+        found |= dict.fromkeys(Path(match) for match in matches)
+    if not found:
+        raise RequestError("no model is named", expected="a file, a pattern or a Zarr store")
+    return list(found)
+
+
+def _open(path: Path) -> xr.Dataset:
+    if path.is_dir() and not any((path / mark).exists() for mark in _ZARR_MARKS):
+        raise RequestError(
+            "a folder that is no Zarr store",
+            where=str(path),
+            expected="NetCDF files, or a store with zarr.json or .zgroup",
+            advice=f"name the files in it: '{path}/*.nc'",
+        )
+    try:
+        if path.is_dir():
+            return xr.open_zarr(path, chunks=None, decode_coords="all", decode_timedelta=False)
+        return xr.open_dataset(path, engine="netcdf4", decode_coords="all", decode_timedelta=False)
+    except UNREADABLE as error:
+        raise DataError(
+            "the model's file cannot be read",
+            where=str(path),
+            expected="a whole NetCDF file or Zarr store with CF times",
+            found=str(error).splitlines()[0] if str(error) else type(error).__name__,
+            advice="fetch the file again if it was cut off",
+        ) from error
+
+
+def _combine(parts: list[xr.Dataset], paths: list[Path]) -> xr.Dataset:
+    """Put files together by their coordinates; of each, one time is a task, so that a block reads only its own."""
+    lazy = [part.chunk({_time_dimension(part): 1} if _time_dimension(part) else {}) for part in parts]
+    try:
+        return xr.combine_by_coords(
+            lazy, data_vars="minimal", coords="minimal", compat="override", join="exact", combine_attrs="override"
+        )
+    except (ValueError, TypeError) as error:
+        raise DataError(
+            "the model's files do not belong together",
+            where=f"{paths[0]} and {len(paths) - 1} more",
+            expected="the same grid and levels, each time once",
+            found=" ".join(str(error).split())[:300],
+            advice="name the files of one model and one variable, or leave out the one that overlaps",
+        ) from error
+
+
+def _time_dimension(part: xr.Dataset) -> str:
+    """Return the dimension of the file's dates, "" where it has none."""
+    for name in part.variables:
+        variable = part[name]
+        if variable.ndim == 1 and (variable.dtype.kind == "M" or variable.attrs.get("axis") == "T"):
+            return str(variable.dims[0])
+        if variable.ndim == 1 and variable.dtype == object and hasattr(variable.values.flat[0], "timetuple"):
+            return str(variable.dims[0])
+    return ""
