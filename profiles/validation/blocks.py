@@ -37,10 +37,8 @@ class Part:
 class Job:
     """What every block needs. No dataclass, so that dask hands it on as it is and does not look for arrays in it."""
 
-    def __init__(
-        self, model: Model, box: Box, where: Stencil, column: ColumnSettings, settings: ValidationSettings
-    ) -> None:
-        self.reader = Reader(model, box)
+    def __init__(self, reader: Reader, where: Stencil, column: ColumnSettings, settings: ValidationSettings) -> None:
+        self.reader = reader
         self.where = where
         self.column = column
         self.settings = settings

@@ -6,6 +6,7 @@ calendars do not correspond (360 days), values are averaged over the model's own
 
 from __future__ import annotations
 
+import itertools
 from dataclasses import dataclass
 from typing import Any
 
@@ -112,7 +113,7 @@ def _limits(
     if averaging_days:
         length = averaging_days
     elif dates.size > 1:
-        length = float(np.median([_days_between(_date(a), _date(b)) for a, b in zip(dates, dates[1:], strict=False)]))
+        length = float(np.median([_days_between(_date(a), _date(b)) for a, b in itertools.pairwise(dates)]))
     else:
         raise DataError(
             "one time alone does not say what it is the mean of",
@@ -149,7 +150,7 @@ def _days_between(first: Any, last: Any) -> float:
 
 
 def _check_order(middle: list[Any], where: str) -> None:
-    for number, (before, after) in enumerate(zip(middle, middle[1:], strict=False), start=2):
+    for number, (before, after) in enumerate(itertools.pairwise(middle), start=2):
         if not before < after:
             raise DataError(
                 "the model's times do not increase",

@@ -131,7 +131,7 @@ class ToCells:
         return cls(csr_array(entries, shape=(rows.size * columns.size, wet.size)), down * right)
 
     def __call__(self, values: Floats) -> Floats:
-        """Return the means over the cells, (10, 160), of ``values`` (row, column); NaN where too few points have one."""
+        """Return the means over the cells, (10, 160), of ``values`` (row, column); NaN where too few have one."""
         flat = values.ravel()
         present = np.isfinite(flat)
         share = self.weights @ present.astype(np.float64)

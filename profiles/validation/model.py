@@ -231,10 +231,9 @@ def _coordinate(dataset: xr.Dataset, temperature: xr.DataArray, key: str, where:
     """Return the temperature's coordinate of time, latitude or longitude, by standard name, units or axis."""
     located = dataset[[temperature.name]].assign_coords(_auxiliary(dataset, temperature))
     names = [*located.cf.coordinates.get(key, [])]
-    names += [name for name in located.cf.axes.get("T", []) if key == "time" and name not in names]
+    if key == "time":  # units such as "days since ..." are CF's mark of time, and were decoded to dates
+        names = [name for name in [*names, *located.coords] if _holds_dates(located[name])] or names
     fitting = [name for name in names if set(located[name].dims) <= set(temperature.dims)]
-    if key == "time":
-        fitting = [name for name in fitting if _holds_dates(located[name])] or fitting
     if not fitting:
         raise DataError(
             f"the model's {key} was not found",

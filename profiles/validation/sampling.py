@@ -60,7 +60,7 @@ def sample_kernel(
     times, moorings, sensors = sensor_depth.shape
     result = np.full((times, moorings, sensors), np.nan)
     for time in prange(times):
-        at_time = time if depth.shape[0] > 1 else 0
+        at_time = np.int64(time) if depth.shape[0] > 1 else np.int64(0)
         for mooring in range(moorings):
             for sensor in range(sensors):
                 place = sensor_depth[time, mooring, sensor]

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import glob
 from collections.abc import Sequence
 from pathlib import Path
 
@@ -44,13 +43,21 @@ def files_of(source: str | Path | Sequence[str | Path]) -> list[Path]:
     found: dict[Path, None] = {}
     for name in named:
         text = str(name)
-        matches = [text] if Path(text).exists() else sorted(glob.glob(text))
+        matches = [text] if Path(text).exists() else _matching(text)
         if not matches:
             raise RequestError("no such model", where=text, expected="NetCDF files, a pattern of them, or a Zarr store")
         found |= dict.fromkeys(Path(match) for match in matches)
     if not found:
         raise RequestError("no model is named", expected="a file, a pattern or a Zarr store")
     return list(found)
+
+
+def _matching(pattern: str) -> list[str]:
+    """Return the paths that fit a pattern, in order; its wildcards may stand in folders too."""
+    path = Path(pattern)
+    plain = [part for part in path.parts if not set(part) & set("*?[")]
+    start = Path(*path.parts[: path.parts.index(next((p for p in path.parts if p not in plain), path.name))])
+    return sorted(str(match) for match in start.glob(str(path.relative_to(start))))
 
 
 def _open(path: Path) -> xr.Dataset:
