@@ -260,6 +260,11 @@ class ValidationSettings(Settings):
     block_megabytes: Positive = Field(
         64.0, description="MB of a model's temperature that a worker holds at a time (ours)"
     )
+    shared_lean: Share = Field(
+        0.3,
+        description="part of the error from the leaning of lines (column.motion_accuracy) that all moorings have in "
+        "common, for a line only leans one way; it does not average out over the array (ours, from simulated arrays)",
+    )
     least_months: Annotated[int, Field(strict=True, ge=3)] = Field(
         6, description="a score needs as many months at least (ours)"
     )

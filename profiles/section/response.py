@@ -10,6 +10,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 import xarray as xr
@@ -62,28 +63,21 @@ class Response:
             kernel[:, time] += gain.T
             yield time, kernel
 
+    @cached_property
     def mean_kernel(self) -> Array:
-        """Return the K of the mean over all months, (functional, month, site)."""
+        """The K of the mean over all months, (functional, month, site)."""
         total = np.zeros((len(self.weights), *self.records.values.shape))
         for _, kernel in self.kernels():
             total += kernel
         return total / self.records.time.size
 
-    def measurement_error(self, independent: Array, persistent: Array) -> Array:
-        """Return the standard error that errors of the values bring, (month, functional).
-
-        Parameters
-        ----------
-        independent, persistent : ndarray, shape (month, site)
-            Standard deviation of what changes from month to month, and of what stays through a deployment; NaN is 0.
-        """
-        errors = ErrorsOfValues(independent, persistent, self.records.deployment)
+    def measurement_error(self, errors: ErrorsOfValues) -> Array:
+        """Return the standard error that errors of the values bring, (month, functional)."""
         return np.sqrt(np.stack([errors.variance(kernel) for _, kernel in self.kernels()]))
 
-    def mean_measurement_error(self, independent: Array, persistent: Array) -> Array:
+    def mean_measurement_error(self, errors: ErrorsOfValues) -> Array:
         """Return the same of the mean over all months, (functional,)."""
-        errors = ErrorsOfValues(independent, persistent, self.records.deployment)
-        return np.sqrt(errors.variance(self.mean_kernel()))
+        return np.sqrt(errors.variance(self.mean_kernel))
 
     def mean_error(self) -> Array:
         """Return the standard error of the functionals' means over all months, (functional,).
@@ -91,7 +85,7 @@ class Response:
         With K of the mean: errors of the values; the anomalies, which K sees at the sites and which have a memory of
         the settings' months; the climatology's departure from the atlas, which does not average out.
         """
-        kernel = self.mean_kernel()
+        kernel = self.mean_kernel
         records = self.records
         errors = ErrorsOfValues(records.independent, records.persistent, records.deployment)
         return np.sqrt(errors.variance(kernel) + self._unseen_anomalies(kernel) + self._unseen_climatology(kernel))
@@ -157,20 +151,37 @@ class Response:
 
 
 class ErrorsOfValues:
-    """The covariance of the errors of monthly values: some independent, some alike through a site's deployment."""
+    """The covariance of the errors of monthly values.
 
-    def __init__(self, independent: Array, persistent: Array, deployment: NDArray[np.integer]) -> None:
+    Parameters
+    ----------
+    independent, persistent, common : ndarray, shape (month, site)
+        Standard deviation of what is independent from month to month and from site to site; of what stays through a
+        site's deployment; and of what all sites and months have in common. NaN is 0.
+    deployment : ndarray of int, shape (month, site)
+    """
+
+    def __init__(
+        self, independent: Array, persistent: Array, deployment: NDArray[np.integer], common: Array | None = None
+    ) -> None:
         self.independent = np.nan_to_num(independent)
         self.persistent = np.nan_to_num(persistent)
+        self.common = np.zeros_like(self.persistent) if common is None else np.nan_to_num(common)
         months, sites = deployment.shape
         of_site = deployment.astype(np.int64) + np.arange(sites) * (int(deployment.max()) + 1)
         _, group = np.unique(of_site.ravel(), return_inverse=True)
         ones = (np.ones(months * sites), (np.arange(months * sites), group.ravel()))
         self.groups = csr_array(ones, shape=(months * sites, int(group.max()) + 1))
 
+    @property
+    def of_values(self) -> Array:
+        """The standard deviation of each value, (month, site)."""
+        return np.sqrt(self.independent**2 + self.persistent**2 + self.common**2)
+
     def variance(self, kernel: Array) -> Array:
         """Return the variance of sums of the values with ``kernel`` (functional, month, site), (functional,)."""
         own = ((kernel * self.independent) ** 2).sum(axis=(1, 2))
         lasting = (kernel * self.persistent).reshape(len(kernel), -1)
         together = (self.groups.T @ lasting.T).T
-        return np.asarray(own + (together**2).sum(axis=1))
+        alike = (kernel * self.common).sum(axis=(1, 2))
+        return np.asarray(own + (together**2).sum(axis=1) + alike**2)

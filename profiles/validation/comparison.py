@@ -9,20 +9,21 @@ from typing import Any
 import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
+from threadpoolctl import threadpool_limits
 
 from profiles import store
 from profiles.config import ValidationSettings
 from profiles.errors import DataError
 from profiles.section import build_section, thermocline_slope, warm_water_volume
 from profiles.section.grid import REGIONS, array_grid, band_weights, sea_area
-from profiles.section.response import Response
+from profiles.section.response import ErrorsOfValues, Response
 from profiles.section.tilt import section_weights, tilt_weights
 from profiles.validation.blocks import Job, blocks_of, run_blocks, wet_points
 from profiles.validation.box import Reader, box_of
 from profiles.validation.calendars import DAILY, ModelTime
 from profiles.validation.full_model import QUANTITIES, MonthlySums, ToCells, least_steps
 from profiles.validation.model import Model, open_model
-from profiles.validation.observed import Array, Sensors, open_array, read_sensors
+from profiles.validation.observed import LEAN, MEASURED, Array, Sensors, open_array, read_sensors
 from profiles.validation.score_table import score_table
 from profiles.validation.seen_months import COMPARED, BothSides, both_sides
 from profiles.validation.sources import Source
@@ -83,7 +84,11 @@ def compare_model(model: Source | Model, array: str | Path, settings: Validation
     DataError
         Where the model cannot be understood or read, or does not overlap with the array in time or space.
     """
-    finished = open_array(array)
+    with threadpool_limits(1):  # so that sums come out the same on every machine; small matrices are quicker so, too
+        return _compare(model, open_array(array), settings)
+
+
+def _compare(model: Source | Model, finished: Array, settings: ValidationSettings | None) -> xr.Dataset:
     settings = settings or finished.validation
     opened = model if isinstance(model, Model) else open_model(model, settings)
     wanted = _overlap(opened, finished)
@@ -242,9 +247,9 @@ def _assemble(
     unsampled = _of_full(full["isotherm_depth"], array)
     weights, places = _weights(full, array)
     response = Response.of(sides.array, weights, array.section, isotherm=array.column.isotherm)
-    measured = measured_errors(sides.array, response, daily=model.time.averaging == DAILY)
+    measured = measured_errors(sides.array, response, settings, daily=model.time.averaging == DAILY)
     result |= _at_moorings(sides, where, measured)
-    month_errors = response.measurement_error(*measured)
+    month_errors = response.measurement_error(measured)
     for name, dims in FUNCTIONALS.items():
         part = month_errors[:, places[name]]
         error = xr.DataArray(part if dims else part[:, 0], dims=("time", *dims))
@@ -253,34 +258,46 @@ def _assemble(
         result[f"full_{name}"] = full[name].astype(np.float32)
     result["full_equatorial_steepest_gradient_depth"] = equatorial_mean(full["steepest_gradient_depth"])
     dataset = xr.Dataset(result)
-    dataset = dataset.merge(score_table(dataset, sides.array, response, places, measured, settings.least_months))
+    dataset = dataset.merge(score_table(dataset, response, places, measured, settings.least_months))
     dataset = dataset.assign_coords(model=model.name)
     dataset.attrs = _attributes(model, array, sensors, settings)
     return described(dataset)
 
 
-def measured_errors(monthly: xr.Dataset, response: Response, *, daily: bool) -> tuple[Floats, Floats]:
-    """Return the standard deviations of the array's monthly values from measurement alone, m, (month, mooring): what
-    changes from month to month, and what stays through a deployment.
+def measured_errors(
+    monthly: xr.Dataset, response: Response, settings: ValidationSettings, *, daily: bool
+) -> ErrorsOfValues:
+    """Return the errors of the array's monthly depths from measurement alone.
 
-    Where both sides are compared day by day the first is that of the sensors; else what missing days cost the array's
-    mean comes to it. The small scales of the map's noise do not: a model seen at the same place should have them too.
+    Where both sides are compared day by day what changes from month to month is the noise of the sensors; else what
+    missing days cost the array's mean comes to it. The small scales of the map's noise do not: a model seen at the same
+    place should have them too. A part of the leaning is common to the array, the other persistent errors are a
+    mooring's own.
     """
     small = response.settings.small_scale_sd
-    sensors = monthly["isotherm_depth_error_independent"].transpose("time", "mooring").values.astype(np.float64)
+    sensors, persistent, lean = (
+        monthly[name].transpose("time", "mooring").values.astype(np.float64)
+        for name in ("isotherm_depth_error_independent", MEASURED, LEAN)
+    )
     with_days = np.sqrt(np.maximum(response.records.independent**2 - small**2, 0.0))
-    persistent = monthly["isotherm_depth_error_measured"].transpose("time", "mooring").values
     present = np.isfinite(response.records.values)
-    return np.where(present, sensors if daily else with_days, np.nan), np.where(present, persistent, np.nan)
+    common = settings.shared_lean * lean
+    own = np.sqrt(np.maximum(persistent**2 - common**2, 0.0))
+    parts = (np.where(present, part, np.nan) for part in (sensors if daily else with_days, own, common))
+    independent, own, common = parts
+    return ErrorsOfValues(independent, own, response.records.deployment, common)
 
 
-def _at_moorings(sides: BothSides, where: Stencil, measured: tuple[Floats, Floats]) -> dict[str, Any]:
+def _at_moorings(sides: BothSides, where: Stencil, measured: ErrorsOfValues) -> dict[str, Any]:
     """Return both sides at the moorings; a mooring's position is no coordinate here, the map's latitudes are."""
     found: dict[str, Any] = {}
     for name in COMPARED:
         for side, months in (("array", sides.array), ("model", sides.model)):
             found[f"{side}_{name}"] = months[name].astype(np.float32).drop_vars(["latitude", "longitude"])
-    found["isotherm_depth_difference_error"] = (("time", "mooring"), np.hypot(*measured))
+    found["isotherm_depth_difference_error"] = (
+        ("time", "mooring"),
+        np.where(np.isfinite(sides.array["isotherm_depth"].values.T), measured.of_values, np.nan),
+    )
     found["averaging_effect"] = sides.averaging_effect.drop_vars(["latitude", "longitude"])
     found["nearest_wet_distance"] = ("mooring", where.distance)
     for name in ("latitude", "longitude"):

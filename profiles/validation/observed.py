@@ -22,7 +22,9 @@ from profiles.vocabulary import Flag
 
 Floats = NDArray[np.float64]
 
-_MEASURED = "isotherm_depth_error_measured"
+#: Parts of the isotherm's persistent error: without that of the straight line between sensors, which a model seen by the
+#: same sensors shares; and that of the leaning of the line alone.
+MEASURED, LEAN = "isotherm_depth_error_measured", "isotherm_depth_error_lean"
 
 
 @dataclass(frozen=True)
@@ -202,15 +204,6 @@ def _least(time: ModelTime, hours: float, settings: MeansSettings) -> float:
 # Columns and months
 
 
-@dataclass(frozen=True)
-class Monthly:
-    """Columns of all moorings by month: ``means`` as :func:`profiles.section.join_moorings` returns them, with
-    ``steepest_gradient_depth`` and ``isotherm_depth_error_measured``, the persistent part of the isotherm's error less
-    that of the straight line between sensors, which a model seen by the same sensors shares."""
-
-    means: xr.Dataset
-
-
 def columns_at_steps(sensors: Sensors, temperature: Floats, settings: ColumnSettings) -> dict[str, xr.Dataset]:
     """Return the columns of every mooring at the steps from ``temperature`` (step, mooring, sensor), which is the
     array's or a model's at the same sensors."""
@@ -235,35 +228,47 @@ def _columns(sensors: Sensors, place: int, temperature: Floats, settings: Column
     if sensors.moved[place]:
         chain["sensor_depth"] = (both, sensors.sensor_depth[:, place, there])
     columns = columns_of(chain, settings.model_copy(update={"use_flags": (int(Flag.GOOD),)}))
-    where = chain.get("sensor_depth")
-    steepest = steepest_gradient_depth(chain["temperature"], sensor_depth=where)["steepest_gradient_depth"]
-    straight = isotherm_depth_error(
+    steepest = steepest_gradient_depth(chain["temperature"], sensor_depth=chain.get("sensor_depth"))[
+        "steepest_gradient_depth"
+    ]
+    persistent = columns["isotherm_depth_error_persistent"]
+    straight = _persistent(chain, settings, motion=0.0)
+    leaning = 0.0 if sensors.moved[place] else settings.motion_accuracy
+    lean = np.sqrt(np.maximum(_persistent(chain, settings, motion=leaning) ** 2 - straight**2, 0.0))
+    measured = np.sqrt(np.maximum(persistent**2 - straight**2, 0.0))
+    position = {"mooring": sensors.moorings[place]} | {
+        name: float(getattr(sensors, name)[place]) for name in ("latitude", "longitude")
+    }
+    found = {"steepest_gradient_depth": steepest, MEASURED: measured, LEAN: lean}
+    return columns.assign(found).assign_coords(position)
+
+
+def _persistent(chain: xr.Dataset, settings: ColumnSettings, *, motion: float) -> xr.DataArray:
+    """Return the persistent error of a chain of perfect sensors: that of the straight line between them, and of its
+    leaning by ``motion``, °C."""
+    return isotherm_depth_error(
         chain["temperature"],
         0.0 * chain["temperature_uncertainty"],
         isotherm=settings.isotherm,
-        sensor_depth=where,
+        sensor_depth=chain.get("sensor_depth"),
         max_bracket=settings.max_bracket,
         crossing=settings.crossing,
         surface_reach=settings.surface_reach,
         noise=0.0,
         depth_accuracy=0.0,
+        motion=motion,
     )["isotherm_depth_error_persistent"]
-    persistent = columns["isotherm_depth_error_persistent"]
-    measured = np.sqrt(np.maximum(persistent**2 - straight**2, 0.0))
-    position = {"mooring": sensors.moorings[place]} | {
-        name: float(getattr(sensors, name)[place]) for name in ("latitude", "longitude")
-    }
-    return columns.assign({"steepest_gradient_depth": steepest, _MEASURED: measured}).assign_coords(position)
 
 
 def by_month(columns: Mapping[str, xr.Dataset], time: ModelTime, settings: MeansSettings) -> xr.Dataset:
-    """Return monthly means of all moorings on (mooring, time)."""
+    """Return monthly means of all moorings on (mooring, time), as :func:`profiles.section.join_moorings` does, with those
+    of the steepest gradient and of the parts of the error."""
     least = least_steps(time.days, settings)
     adapted = settings.model_copy(update={"monthly_days": int(least)})
     joined = join_moorings({name: monthly_means(part, adapted) for name, part in columns.items()})
     months = joined["time"].values.astype("datetime64[M]")
     sums = MonthlySums()
-    for name in ("steepest_gradient_depth", _MEASURED):
+    for name in ("steepest_gradient_depth", MEASURED, LEAN):
         values = np.stack([part[name].values for part in columns.values()], axis=-1)
         sums.add(name, time.month, values)
         means = [sums.mean(name, month, least) for month in months]

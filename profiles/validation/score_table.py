@@ -42,10 +42,9 @@ class Series:
 
 def score_table(
     dataset: xr.Dataset,
-    monthly: xr.Dataset,
     response: Response,
     places: dict[str, slice],
-    measured: tuple[Floats, Floats],
+    measured: ErrorsOfValues,
     least_months: int,
 ) -> xr.Dataset:
     """Return the scores on ``series``.
@@ -54,17 +53,14 @@ def score_table(
     ----------
     dataset : xarray.Dataset
         Both sides by month, as :func:`profiles.validation.comparison.compare_model` puts them together.
-    monthly : xarray.Dataset
-        The array's months, with deployments.
     response, places : Response, dict
         The answer of the functionals to the array's values, and where each functional stands in it.
-    measured : tuple of ndarray, shape (month, mooring)
-        Independent and persistent standard deviations of the array's monthly depths from measurement.
+    measured : ErrorsOfValues
+        Of the array's monthly depths, from measurement alone.
     least_months : int
         Fewer months are not scored.
     """
-    errors = ErrorsOfValues(*measured, monthly["deployment"].transpose("time", "mooring").values)
-    series = [*_at_moorings(dataset, errors, measured), *_of_map(dataset, response, places, measured)]
+    series = [*_at_moorings(dataset, measured), *_of_map(dataset, response, places, measured)]
     time = dataset["time"].values
     scores = [
         asdict(score(time, one.model, one.array, bias_error=one.error, least_months=least_months)) for one in series
@@ -96,7 +92,7 @@ def _verdict(row: dict[str, float]) -> str:
     return "model differs" if told else "within the array's error"
 
 
-def _at_moorings(dataset: xr.Dataset, errors: ErrorsOfValues, measured: tuple[Floats, Floats]) -> Iterator[Series]:
+def _at_moorings(dataset: xr.Dataset, measured: ErrorsOfValues) -> Iterator[Series]:
     longitude = dataset["longitude_of_mooring"].values
     names = dataset["mooring"].values
     groups = [(str(name), "mooring", np.array([place])) for place, name in enumerate(names)]
@@ -108,7 +104,7 @@ def _at_moorings(dataset: xr.Dataset, errors: ErrorsOfValues, measured: tuple[Fl
             model, array = (_mean_of(values[:, members].astype(np.float64)) for values in sides)
             error, noise = np.nan, np.nan
             if quantity == "isotherm_depth":
-                error, noise = _measurement(sides[1], members, errors, measured)
+                error, noise = _measurement(sides[1], members, measured)
             yield Series(quantity, place, kind, model, array, error, noise)
 
 
@@ -120,9 +116,7 @@ def _mean_of(values: Floats) -> Floats:
     return np.where(enough, total / np.maximum(present.sum(axis=1), 1), np.nan)
 
 
-def _measurement(
-    array: Floats, members: NDArray[np.intp], errors: ErrorsOfValues, measured: tuple[Floats, Floats]
-) -> tuple[float, float]:
+def _measurement(array: Floats, members: NDArray[np.intp], measured: ErrorsOfValues) -> tuple[float, float]:
     """Return the standard error of the mean over months and members from measurement, and the rms of a month's."""
     present = np.zeros(array.shape, dtype=bool)
     present[:, members] = np.isfinite(array[:, members])
@@ -130,16 +124,16 @@ def _measurement(
     if not given.any():
         return np.nan, np.nan
     weight = np.where(given[:, None], present, 0.0) / np.maximum(present.sum(axis=1), 1)[:, None]
-    of_mean = float(np.sqrt(errors.variance((weight / given.sum())[None])[0]))
-    squares = sum(np.nan_to_num(part) ** 2 for part in measured)
-    of_month = (weight**2 * squares).sum(axis=1)[given]
-    return of_mean, float(np.sqrt(of_month.mean()))
+    of_mean = float(np.sqrt(measured.variance((weight / given.sum())[None])[0]))
+    own = (weight * np.hypot(measured.independent, measured.persistent)) ** 2
+    of_month = own.sum(axis=1) + (weight * measured.common).sum(axis=1) ** 2
+    return of_mean, float(np.sqrt(of_month[given].mean()))
 
 
 def _of_map(
-    dataset: xr.Dataset, response: Response, places: dict[str, slice], measured: tuple[Floats, Floats]
+    dataset: xr.Dataset, response: Response, places: dict[str, slice], measured: ErrorsOfValues
 ) -> Iterator[Series]:
-    of_mean = response.mean_measurement_error(*measured)
+    of_mean = response.mean_measurement_error(measured)
     whole = response.mean_error()
     for name, region, at in _scalars(dataset, places):
         pick = {"region": region} if region else {}
