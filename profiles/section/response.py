@@ -9,6 +9,7 @@ count besides what the sites cannot see; here that is left out, or, for a mean o
 from __future__ import annotations
 
 from collections.abc import Iterator
+from copy import copy
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -172,6 +173,12 @@ class ErrorsOfValues:
         _, group = np.unique(of_site.ravel(), return_inverse=True)
         ones = (np.ones(months * sites), (np.arange(months * sites), group.ravel()))
         self.groups = csr_array(ones, shape=(months * sites, int(group.max()) + 1))
+
+    def with_persistent(self, sd: float) -> ErrorsOfValues:
+        """Return the same errors with another of ``sd`` that stays through a deployment, at every site."""
+        added = copy(self)
+        added.persistent = np.hypot(self.persistent, sd)
+        return added
 
     @property
     def of_values(self) -> Array:

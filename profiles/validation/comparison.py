@@ -249,7 +249,8 @@ def _assemble(
     response = Response.of(sides.array, weights, array.section, isotherm=array.column.isotherm)
     measured = measured_errors(sides.array, response, settings, daily=model.time.averaging == DAILY)
     result |= _at_moorings(sides, where, measured)
-    month_errors = response.measurement_error(measured)
+    of_sums = measured.with_persistent(settings.undetected_faults)
+    month_errors = response.measurement_error(of_sums)
     for name, dims in FUNCTIONALS.items():
         part = month_errors[:, places[name]]
         error = xr.DataArray(part if dims else part[:, 0], dims=("time", *dims))
@@ -258,7 +259,7 @@ def _assemble(
         result[f"full_{name}"] = full[name].astype(np.float32)
     result["full_equatorial_steepest_gradient_depth"] = equatorial_mean(full["steepest_gradient_depth"])
     dataset = xr.Dataset(result)
-    dataset = dataset.merge(score_table(dataset, response, places, measured, settings.least_months))
+    dataset = dataset.merge(score_table(dataset, response, places, measured, of_sums, settings.least_months))
     dataset = dataset.assign_coords(model=model.name)
     dataset.attrs = _attributes(model, array, sensors, settings)
     return described(dataset)

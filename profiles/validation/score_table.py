@@ -45,6 +45,7 @@ def score_table(
     response: Response,
     places: dict[str, slice],
     measured: ErrorsOfValues,
+    of_sums: ErrorsOfValues,
     least_months: int,
 ) -> xr.Dataset:
     """Return the scores on ``series``.
@@ -55,12 +56,12 @@ def score_table(
         Both sides by month, as :func:`profiles.validation.comparison.compare_model` puts them together.
     response, places : Response, dict
         The answer of the functionals to the array's values, and where each functional stands in it.
-    measured : ErrorsOfValues
-        Of the array's monthly depths, from measurement alone.
+    measured, of_sums : ErrorsOfValues
+        Of the array's monthly depths, from measurement alone: for one mooring, and for sums over several.
     least_months : int
         Fewer months are not scored.
     """
-    series = [*_at_moorings(dataset, measured), *_of_map(dataset, response, places, measured)]
+    series = [*_at_moorings(dataset, measured, of_sums), *_of_map(dataset, response, places, of_sums)]
     time = dataset["time"].values
     scores = [
         asdict(score(time, one.model, one.array, bias_error=one.error, least_months=least_months)) for one in series
@@ -92,7 +93,7 @@ def _verdict(row: dict[str, float]) -> str:
     return "model differs" if told else "within the array's error"
 
 
-def _at_moorings(dataset: xr.Dataset, measured: ErrorsOfValues) -> Iterator[Series]:
+def _at_moorings(dataset: xr.Dataset, measured: ErrorsOfValues, of_sums: ErrorsOfValues) -> Iterator[Series]:
     longitude = dataset["longitude_of_mooring"].values
     names = dataset["mooring"].values
     groups = [(str(name), "mooring", np.array([place])) for place, name in enumerate(names)]
@@ -104,7 +105,7 @@ def _at_moorings(dataset: xr.Dataset, measured: ErrorsOfValues) -> Iterator[Seri
             model, array = (_mean_of(values[:, members].astype(np.float64)) for values in sides)
             error, noise = np.nan, np.nan
             if quantity == "isotherm_depth":
-                error, noise = _measurement(sides[1], members, measured)
+                error, noise = _measurement(sides[1], members, measured if kind == "mooring" else of_sums)
             yield Series(quantity, place, kind, model, array, error, noise)
 
 
