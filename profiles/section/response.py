@@ -1,9 +1,9 @@
 """How tilt, volume and section answer to what the sites read: the part of their errors that is measurement alone.
 
 The estimate of a functional of the map is linear in the monthly values d: the climatology's correction is gain times
-X'(d - atlas) / n, the map takes the rest to the cells. So F(t) = sum over months t' and sites s of K(t; t', s) d(t', s),
-plus a constant, and an error of the values comes out as K times it. The stated errors of :mod:`profiles.section.functional`
-count besides what the sites cannot see; here that is left out, or, for a mean over the whole record, added up.
+X'(d - atlas) / n, the map takes the rest to the cells. So F(t) = sum over months t' and sites s of K(t; t', s) d(t', s)
+plus a constant, and an error of the values comes out as K times it. What :mod:`profiles.section.functional` states
+counts besides what the sites cannot see; here that is left out, or, for a mean over the whole record, added up.
 """
 
 from __future__ import annotations

@@ -6,10 +6,10 @@ import threading
 from dataclasses import dataclass
 from typing import Any
 
-import dask
-import dask.base
 import numba
 import numpy as np
+from dask.base import compute, get_scheduler
+from dask.delayed import delayed
 from numpy.typing import NDArray
 
 from profiles.config import ColumnSettings, ValidationSettings
@@ -94,13 +94,13 @@ def run_blocks(job: Job, blocks: list[slice], sensor_depth: Floats, first: int) 
 
     ``sensor_depth`` (step, mooring, sensor) starts at step ``first``.
     """
-    scheduler = dask.base.get_scheduler()
+    scheduler = get_scheduler()
     if scheduler is None:
         return [job.do(block, _depths(sensor_depth, block, first), own_threads=True) for block in blocks]
-    do = dask.delayed(_do, pure=False)
-    carried = dask.delayed(job, pure=False, traverse=False)
+    do = delayed(_do, pure=False)
+    carried = delayed(job, pure=False, traverse=False)
     tasks = [do(carried, block, _Opaque(_depths(sensor_depth, block, first))) for block in blocks]
-    return list(dask.compute(*tasks, scheduler=scheduler))
+    return list(compute(*tasks, scheduler=scheduler))
 
 
 def _depths(sensor_depth: Floats, block: slice, first: int) -> Floats:

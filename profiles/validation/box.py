@@ -115,8 +115,8 @@ def _curvilinear_part(
     with np.errstate(invalid="ignore"):
         inside = (latitude >= south_north[0] - margin) & (latitude <= south_north[1] + margin)
         inside &= (longitude >= west_east[0] - margin) & (longitude <= west_east[1] + margin)
-    columns = _run(inside.any(axis=0))
-    return _run(inside.any(axis=1)), (columns,) if columns.stop - columns.start > 1 else ()
+    columns = _run(np.atleast_1d(inside.any(axis=0)))
+    return _run(np.atleast_1d(inside.any(axis=1))), (columns,) if columns.stop - columns.start > 1 else ()
 
 
 def _levels(model: Model, settings: ValidationSettings) -> tuple[slice, bool]:

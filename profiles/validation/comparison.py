@@ -28,7 +28,8 @@ from profiles.validation.score_table import score_table
 from profiles.validation.seen_months import COMPARED, BothSides, both_sides
 from profiles.validation.sources import Source
 from profiles.validation.stencils import Stencil, stencil
-from profiles.vocabulary import CAUTION, describe
+from profiles.validation.wording import worded
+from profiles.vocabulary import CAUTION
 
 Floats = NDArray[np.float64]
 
@@ -184,7 +185,7 @@ def _full_fields(
 def _mapped(monthly: xr.Dataset, array: Array) -> dict[str, xr.DataArray]:
     """Return tilt, volume and section of one side with the array's own errors."""
     built = build_section(monthly, array.section, isotherm=array.column.isotherm)
-    found = {}
+    found: dict[str, xr.DataArray] = {}
     for name in FUNCTIONALS:
         source = built.volume if name in built.volume else built.section
         found |= {name: source[name], f"{name}_error": source[f"{name}_error"]}
@@ -262,7 +263,7 @@ def _assemble(
     dataset = dataset.merge(score_table(dataset, response, places, measured, of_sums, settings.least_months))
     dataset = dataset.assign_coords(model=model.name)
     dataset.attrs = _attributes(model, array, sensors, settings)
-    return described(dataset)
+    return worded(dataset)
 
 
 def measured_errors(
@@ -336,8 +337,3 @@ def _attributes(model: Model, array: Array, sensors: Sensors, settings: Validati
         "moorings_with_sensor_depth": int(sensors.moved.sum()),
         "settings": settings.model_dump_json(),
     }
-
-
-def described(dataset: xr.Dataset) -> xr.Dataset:
-    """Return the dataset with what each variable is, in words and units, from the vocabulary of its quantity."""
-    return describe(dataset)

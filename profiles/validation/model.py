@@ -248,7 +248,7 @@ def _coordinate(dataset: xr.Dataset, temperature: xr.DataArray, key: str, where:
 def _auxiliary(dataset: xr.Dataset, temperature: xr.DataArray) -> dict[Hashable, xr.DataArray]:
     """Return the file's variables that can place the temperature, whether or not it names them."""
     return {
-        name: data
+        name: dataset[name]
         for name, data in dataset.variables.items()
         if name != temperature.name
         and _standard_name(dataset[name]) in ("latitude", "longitude", "time", "depth")

@@ -76,16 +76,11 @@ def open_array(folder: str | Path) -> Array:
     return Array(
         folder=path,
         name=configuration["array"]["name"],
-        column=ColumnSettings.model_validate(_tupled(configuration["column"])),
-        section=SectionSettings.model_validate(_tupled(configuration["section"])),
+        column=ColumnSettings.model_validate(configuration["column"]),
+        section=SectionSettings.model_validate(configuration["section"]),
         validation=ValidationSettings.model_validate(configuration.get("validation", {})),
         moorings=present,
     )
-
-
-def _tupled(table: Mapping[str, Any]) -> dict[str, Any]:
-    """Return a table as JSON gave it with tuples for its lists."""
-    return {key: tuple(value) if isinstance(value, list) else value for key, value in table.items()}
 
 
 @dataclass(frozen=True)
@@ -261,8 +256,8 @@ def _persistent(chain: xr.Dataset, settings: ColumnSettings, *, motion: float) -
 
 
 def by_month(columns: Mapping[str, xr.Dataset], time: ModelTime, settings: MeansSettings) -> xr.Dataset:
-    """Return monthly means of all moorings on (mooring, time), as :func:`profiles.section.join_moorings` does, with those
-    of the steepest gradient and of the parts of the error."""
+    """Return monthly means of all moorings on (mooring, time), as :func:`profiles.section.join_moorings` does,
+    with those of the steepest gradient and of the parts of the error."""
     least = least_steps(time.days, settings)
     adapted = settings.model_copy(update={"monthly_days": int(least)})
     joined = join_moorings({name: monthly_means(part, adapted) for name, part in columns.items()})

@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from profiles.section.response import ErrorsOfValues, Response
 from profiles.validation.scores import NAMES, score
 from profiles.validation.seen_months import COMPARED
+from profiles.validation.wording import UNITS
 
 Floats = NDArray[np.float64]
 
@@ -74,6 +75,7 @@ def score_table(
         name: ("series", np.array([getattr(one, name) for one in series], dtype=object))
         for name in ("quantity", "place", "kind")
     }
+    labels["units"] = ("series", np.array([UNITS[one.quantity] for one in series], dtype=object))
     return xr.Dataset(table, coords=labels)
 
 

@@ -86,9 +86,10 @@ def _combine(parts: list[xr.Dataset], paths: list[Path]) -> xr.Dataset:
     """Put files together by their coordinates; of each, one time is a task, so that a block reads only its own."""
     lazy = [part.chunk({_time_dimension(part): 1} if _time_dimension(part) else {}) for part in parts]
     try:
-        return xr.combine_by_coords(
+        combined = xr.combine_by_coords(
             lazy, data_vars="minimal", coords="minimal", compat="override", join="exact", combine_attrs="override"
         )
+        return combined if isinstance(combined, xr.Dataset) else combined.to_dataset()
     except (ValueError, TypeError) as error:
         raise DataError(
             "the model's files do not belong together",

@@ -49,8 +49,8 @@ PLACES = {
 
 
 def model_of(ocean: Ocean, shift: np.ndarray) -> xr.Dataset:
-    """Return daily temperature of the ocean on a grid that holds the moorings and their sensors, moved down by ``shift``
-    (longitude, time), m."""
+    """Return daily temperature of the ocean, moved down by ``shift`` (longitude, time), m, on a grid that holds the
+    moorings and their sensors."""
     latitude, longitude = cells(LATITUDE, LONGITUDE)
     columns = ocean.columns(latitude, longitude, small_scales=True)
     temperature = np.empty((ocean.time.size, DEPTH.size, latitude.size), np.float32)
