@@ -268,8 +268,8 @@ class ValidationSettings(Settings):
     undetected_faults: NotNegative = Field(
         2.0,
         description="m; standard deviation of a mooring's depths from faults that the quality control does not find: "
-        "rare and large, so that it counts in the error of sums over moorings, not in that of one (ours, from simulated "
-        "arrays)",
+        "rare and large, so that it counts in the error of sums over moorings, not in that of one (ours, from "
+        "simulated arrays)",
     )
     least_months: Annotated[int, Field(strict=True, ge=3)] = Field(
         6, description="a score needs as many months at least (ours)"

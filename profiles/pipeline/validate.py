@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Mapping
 from contextlib import AbstractContextManager, nullcontext
 from dataclasses import dataclass
 from pathlib import Path
@@ -21,8 +21,8 @@ FILE = "validation.nc"
 SCORES, MONTHS = "model_scores", "model_months"
 _MONTHLY = ("thermocline_slope", "warm_water_volume")
 _SUMMARY = (
-    "A model's temperature seen as the array saw the ocean, and on its own grid: isotherm depth, tilt and volume of both, "
-    "the difference split into what the model is wrong by where the array looked and what the sampling hides."
+    "A model's temperature seen as the array saw the ocean, and on its own grid: isotherm depth, tilt and volume of "
+    "both, the difference split into what the model is wrong by where the array looked and what the sampling hides."
 )
 
 
@@ -153,7 +153,7 @@ def _files(models: Mapping[str, Any]) -> list[Path]:
 
     found: list[Path] = []
     for source in models.values():
-        if isinstance(source, str | Path) or (isinstance(source, list | tuple)):
+        if isinstance(source, str | Path | list | tuple):
             try:
                 paths = files_of(source)
             except RequestError:

@@ -94,13 +94,13 @@ def run_blocks(job: Job, blocks: list[slice], sensor_depth: Floats, first: int) 
 
     ``sensor_depth`` (step, mooring, sensor) starts at step ``first``.
     """
-    scheduler = get_scheduler()
+    scheduler = get_scheduler()  # type: ignore[no-untyped-call]
     if scheduler is None:
         return [job.do(block, _depths(sensor_depth, block, first), own_threads=True) for block in blocks]
     do = delayed(_do, pure=False)
     carried = delayed(job, pure=False, traverse=False)
     tasks = [do(carried, block, _Opaque(_depths(sensor_depth, block, first))) for block in blocks]
-    return list(compute(*tasks, scheduler=scheduler))
+    return list(compute(*tasks, scheduler=scheduler))  # type: ignore[no-untyped-call]
 
 
 def _depths(sensor_depth: Floats, block: slice, first: int) -> Floats:

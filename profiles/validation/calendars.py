@@ -1,7 +1,7 @@
 """The times of a model in any calendar, as the days and months that an array knows.
 
-A date is what its calendar calls it: the 14th of March of a 365-day calendar is the 14th of March. Where the days of two
-calendars do not correspond (360 days), values are averaged over the model's own months, and months are compared.
+A date is what its calendar calls it: the 14th of March of a 365-day calendar is the 14th of March. Where the days of
+two calendars do not correspond (360 days), values are averaged over the model's own months, and months are compared.
 """
 
 from __future__ import annotations

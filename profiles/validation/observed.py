@@ -22,8 +22,8 @@ from profiles.vocabulary import Flag
 
 Floats = NDArray[np.float64]
 
-#: Parts of the isotherm's persistent error: without that of the straight line between sensors, which a model seen by the
-#: same sensors shares; and that of the leaning of the line alone.
+#: Parts of the isotherm's persistent error: without that of the straight line between sensors, which a model seen by
+#: the same sensors shares; and that of the leaning of the line alone.
 MEASURED, LEAN = "isotherm_depth_error_measured", "isotherm_depth_error_lean"
 
 

@@ -20,7 +20,7 @@ class BothSides:
     """Monthly columns of the array and of the model as seen, on the same (mooring, time), missing where either is.
 
     The errors and counts on both are those of the array, so that both are mapped alike. ``averaging_effect`` (mooring,
-    time), m, is what averaging temperature over the model's steps does to the array's isotherm: its mean less the run's.
+    time), m, is what averaging temperature over the model's steps does to the array's isotherm: less the run's mean.
     """
 
     array: xr.Dataset
