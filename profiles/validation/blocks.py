@@ -8,7 +8,7 @@ from typing import Any
 
 import numba
 import numpy as np
-from dask.base import compute, get_scheduler
+from dask.base import compute
 from dask.delayed import delayed
 from numpy.typing import NDArray
 
@@ -89,12 +89,11 @@ def blocks_of(model: Model, box: Box, wanted: slice, megabytes: float) -> list[s
     return [slice(start, min(start + length, wanted.stop)) for start in range(wanted.start, wanted.stop, length)]
 
 
-def run_blocks(job: Job, blocks: list[slice], sensor_depth: Floats, first: int) -> list[Part]:
-    """Do all blocks: on the dask client or scheduler that is set, else one after the other in this process.
+def run_blocks(job: Job, blocks: list[slice], sensor_depth: Floats, first: int, scheduler: Any) -> list[Part]:
+    """Do all blocks: on a dask scheduler, or one after the other in this process where that is None.
 
     ``sensor_depth`` (step, mooring, sensor) starts at step ``first``.
     """
-    scheduler = get_scheduler()  # type: ignore[no-untyped-call]
     if scheduler is None:
         return [job.do(block, _depths(sensor_depth, block, first), own_threads=True) for block in blocks]
     do = delayed(_do, pure=False)

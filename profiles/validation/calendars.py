@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import itertools
 from dataclasses import dataclass
+from datetime import timedelta
 from typing import Any
 
 import numpy as np
@@ -122,10 +123,11 @@ def _limits(
             found=str(dates[0]),
             advice="declare averaging_days in [validation]: 1, or 30 for a month",
         )
-    half = _timedelta(0.5 * length if length < _SHORTEST_MONTH else 0.0)
-    whole = _timedelta(length if length >= _SHORTEST_MONTH else 0.0)
-    # A month without bounds is the one that its stamp lies in, wherever in it that is.
-    return [(_date(date) - half, _date(date) + half) if not whole else _whole_month(_date(date)) for date in dates]
+    if _SHORTEST_MONTH <= length <= _LONGEST_MONTH:
+        # A month without bounds is the one that its stamp lies in, wherever in it that is.
+        return [_whole_month(_date(date)) for date in dates]
+    half = timedelta(days=0.5 * length)
+    return [(_date(date) - half, _date(date) + half) for date in dates]
 
 
 def _whole_month(date: Any) -> tuple[Any, Any]:
@@ -137,12 +139,6 @@ def _whole_month(date: Any) -> tuple[Any, Any]:
 def _date(value: Any) -> Any:
     """Return a date with year, month and day, of the value's own calendar."""
     return value.astype("datetime64[us]").astype(object) if isinstance(value, np.datetime64) else value
-
-
-def _timedelta(days: float) -> Any:
-    from datetime import timedelta
-
-    return timedelta(days=days)
 
 
 def _days_between(first: Any, last: Any) -> float:

@@ -6,8 +6,10 @@ from collections.abc import Mapping
 from pathlib import Path
 from typing import Any
 
+import dask
 import numpy as np
 import xarray as xr
+from dask.base import get_scheduler
 from numpy.typing import NDArray
 from threadpoolctl import threadpool_limits
 
@@ -86,10 +88,13 @@ def compare_model(model: Source | Model, array: str | Path, settings: Validation
         Where the model cannot be understood or read, or does not overlap with the array in time or space.
     """
     with threadpool_limits(1):  # so that sums come out the same on every machine; small matrices are quicker so, too
-        return _compare(model, open_array(array), settings)
+        scheduler = get_scheduler()  # type: ignore[no-untyped-call]
+        # Only blocks of the model are worth a worker; all else is small and stays here.
+        with dask.config.set(scheduler="synchronous"):
+            return _compare(model, open_array(array), settings, scheduler)
 
 
-def _compare(model: Source | Model, finished: Array, settings: ValidationSettings | None) -> xr.Dataset:
+def _compare(model: Source | Model, finished: Array, settings: ValidationSettings | None, scheduler: Any) -> xr.Dataset:
     settings = settings or finished.validation
     opened = model if isinstance(model, Model) else open_model(model, settings)
     wanted = _overlap(opened, finished)
@@ -103,7 +108,7 @@ def _compare(model: Source | Model, finished: Array, settings: ValidationSetting
     _check_reached(opened, where, settings)
     job = Job(reader, where, finished.column, settings)
     blocks = blocks_of(opened, box, wanted, settings.block_megabytes)
-    seen, sums = _joined(run_blocks(job, blocks, sensors.sensor_depth, wanted.start))
+    seen, sums = _joined(run_blocks(job, blocks, sensors.sensor_depth, wanted.start, scheduler))
     sides = both_sides(finished, sensors, seen, sensors.time)
     full = _full_fields(sums, ToCells.of(box, wet), sides.array["time"].values, opened.time, finished)
     return _assemble(opened, finished, sensors, where, sides, full, settings)
