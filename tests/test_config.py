@@ -16,6 +16,7 @@ from profiles.config import (
     QualityControlSettings,
     SectionSettings,
     Settings,
+    ValidationSettings,
     defaults_text,
     load_config,
 )
@@ -261,8 +262,9 @@ def test_the_file_of_the_defaults_is_the_models_written_out() -> None:
 
 def test_the_file_of_the_defaults_read_back_is_the_defaults() -> None:
     content = tomllib.loads(DEFAULTS.read_text(encoding="utf-8"))
-    assert set(content) == {"qc", "column", "section"}
-    for name, model in [("qc", QualityControlSettings), ("column", ColumnSettings), ("section", SectionSettings)]:
+    assert set(content) == {"qc", "column", "section", "validation"}
+    tables = (QualityControlSettings, ColumnSettings, SectionSettings, ValidationSettings)
+    for name, model in zip(("qc", "column", "section", "validation"), tables, strict=True):
         assert model.model_validate(content[name]) == model()
         assert keys_of(content[name]) == keys_of(model().model_dump())
 
@@ -279,7 +281,8 @@ def test_the_file_of_the_defaults_is_a_valid_end_of_a_configuration(load: Any) -
 def test_every_default_has_a_comment_above_it() -> None:
     lines = DEFAULTS.read_text(encoding="utf-8").splitlines()
     keys = [place for place, line in enumerate(lines) if " = " in line and not line.startswith("#")]
-    assert len(keys) == sum(1 for key in all_fields(QualityControlSettings, ColumnSettings, SectionSettings) if key)
+    tables = (QualityControlSettings, ColumnSettings, SectionSettings, ValidationSettings)
+    assert len(keys) == sum(1 for key in all_fields(*tables) if key)
     assert [lines[place] for place in keys if len(lines[place - 1]) < 4 or not lines[place - 1].startswith("# ")] == []
 
 

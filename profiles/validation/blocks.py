@@ -8,8 +8,6 @@ from typing import Any
 
 import numba
 import numpy as np
-from dask.base import compute
-from dask.delayed import delayed
 from numpy.typing import NDArray
 
 from profiles.config import ColumnSettings, ValidationSettings
@@ -96,6 +94,9 @@ def run_blocks(job: Job, blocks: list[slice], sensor_depth: Floats, first: int, 
     """
     if scheduler is None:
         return [job.do(block, _depths(sensor_depth, block, first), own_threads=True) for block in blocks]
+    from dask.base import compute
+    from dask.delayed import delayed
+
     do = delayed(_do, pure=False)
     carried = delayed(job, pure=False, traverse=False)
     tasks = [do(carried, block, _Opaque(_depths(sensor_depth, block, first))) for block in blocks]

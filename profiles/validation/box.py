@@ -6,7 +6,6 @@ from dataclasses import dataclass
 from typing import Any
 
 import cf_units
-import dask
 import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
@@ -167,6 +166,8 @@ class Reader:
         return Water(warm, depth)
 
     def _values(self, data: xr.DataArray, times: slice) -> NDArray[Any]:
+        import dask
+
         chosen = {"time": times, "row": self.box.rows, "level": self.box.levels}
         parts = []
         for run in self.box.columns:

@@ -6,10 +6,8 @@ from collections.abc import Mapping
 from pathlib import Path
 from typing import Any
 
-import dask
 import numpy as np
 import xarray as xr
-from dask.base import get_scheduler
 from numpy.typing import NDArray
 from threadpoolctl import threadpool_limits
 
@@ -87,6 +85,9 @@ def compare_model(model: Source | Model, array: str | Path, settings: Validation
     DataError
         Where the model cannot be understood or read, or does not overlap with the array in time or space.
     """
+    import dask  # here, for it brings a library of templates
+    from dask.base import get_scheduler
+
     with threadpool_limits(1):  # so that sums come out the same on every machine; small matrices are quicker so, too
         scheduler = get_scheduler()  # type: ignore[no-untyped-call]
         # Only blocks of the model are worth a worker; all else is small and stays here.

@@ -8,7 +8,6 @@ from pathlib import Path
 from typing import Any
 
 import cf_units
-import cf_xarray  # noqa: F401  (the accessor)
 import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
@@ -93,6 +92,8 @@ def open_model(source: Source, settings: ValidationSettings | None = None, *, na
     DataError
         Where a file cannot be read, or its metadata does not say what is needed; the message says which.
     """
+    import cf_xarray  # noqa: F401  (the accessor; imported here, for it brings a library of the terminal)
+
     settings = settings or ValidationSettings()
     dataset = open_source(source)
     called = name or _called(source, dataset)
