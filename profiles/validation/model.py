@@ -278,7 +278,8 @@ def _depth(dataset: xr.Dataset, temperature: xr.DataArray, settings: ValidationS
     """Return the depths of the levels: the coordinate in units of length or pressure, one of moving levels first."""
     names: dict[Hashable, None] = {}
     located = dataset[[temperature.name]].assign_coords(_auxiliary(dataset, temperature))
-    for name in [*located.cf.coordinates.get("vertical", []), *located.cf.axes.get("Z", [])]:
+    pressures = [name for name, data in located.coords.items() if is_pressure(str(data.attrs.get("units", "")))]
+    for name in [*located.cf.coordinates.get("vertical", []), *located.cf.axes.get("Z", []), *pressures]:
         names[name] = None
     measured = [located[name] for name in names if _measures_depth(located[name])]
     fitting = [data for data in measured if set(data.dims) <= set(temperature.dims)]
@@ -307,16 +308,17 @@ def _measures_depth(data: xr.DataArray) -> bool:
 def _parametric(dataset: xr.Dataset, name: Hashable, where: str) -> xr.DataArray:
     """Return the heights of levels that follow the sea floor, from their formula (CF appendix D), positive up."""
     outname = "height_of_levels"
+    lazy = dataset.chunk()
     try:
-        decoded = dataset.chunk().cf.decode_vertical_coords(outnames={name: outname})
+        lazy.cf.decode_vertical_coords(outnames={name: outname})  # adds the coordinate in place
+        heights = lazy[outname]
     except (KeyError, ValueError, NotImplementedError) as error:
         raise DataError(
             "the formula of the model's levels cannot be used",
             where=f"{where}, {name}",
-            expected="formula_terms of CF appendix D, every term in the file",
+            expected="formula_terms of CF appendix D, every term in the file with its standard_name",
             found=str(error),
         ) from error
-    heights = decoded[outname]
     heights.attrs = {"units": METRE, "positive": "up"}
     return heights
 
@@ -364,11 +366,7 @@ def _with_roles(
 
 def _horizontal_roles(horizontal: list[Hashable], latitude: xr.DataArray) -> list[str]:
     """Return which of the horizontal dimensions are rows and columns."""
-    if len(horizontal) != 2:
-        return ["row", "column"][: len(horizontal)]
-    if latitude.ndim == 1:
-        return ["row" if dim == latitude.dims[0] else "column" for dim in horizontal]
-    return ["row" if dim == latitude.dims[0] else "column" for dim in horizontal]
+    return ["row" if dim in latitude.dims[:1] else "column" for dim in horizontal]
 
 
 def _horizontal(axis: xr.DataArray, roles: dict[Hashable, str], where: str) -> NDArray[np.float64]:

@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+import json
 from collections.abc import Sequence
 from pathlib import Path
 
 import xarray as xr
 
 from profiles.errors import DataError, RequestError
+from profiles.validation.classic import least_length
 
 Source = str | Path | xr.Dataset | Sequence[str | Path]
 
@@ -70,7 +72,9 @@ def _open(path: Path) -> xr.Dataset:
         )
     try:
         if path.is_dir():
-            return xr.open_zarr(path, chunks=None, decode_coords="all", decode_timedelta=False)
+            listed = _is_consolidated(path)
+            return xr.open_zarr(path, chunks=None, decode_coords="all", decode_timedelta=False, consolidated=listed)
+        _check_whole(path)
         return xr.open_dataset(path, engine="netcdf4", decode_coords="all", decode_timedelta=False)
     except UNREADABLE as error:
         raise DataError(
@@ -80,6 +84,21 @@ def _open(path: Path) -> xr.Dataset:
             found=str(error).splitlines()[0] if str(error) else type(error).__name__,
             advice="fetch the file again if it was cut off",
         ) from error
+
+
+def _is_consolidated(store: Path) -> bool:
+    """Tell whether the head of a Zarr store lists all that is in it; asking for the list in vain would warn."""
+    head = store / "zarr.json"
+    if not head.exists():
+        return (store / ".zmetadata").exists()
+    return bool(json.loads(head.read_text(encoding="utf-8")).get("consolidated_metadata"))
+
+
+def _check_whole(path: Path) -> None:
+    """Raise ValueError where a file of NetCDF's older formats was cut off."""
+    least, found = least_length(path), path.stat().st_size
+    if found < least:
+        raise ValueError(f"a file of {found} bytes that says it has {least}")
 
 
 def _combine(parts: list[xr.Dataset], paths: list[Path]) -> xr.Dataset:
