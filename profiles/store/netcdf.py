@@ -119,7 +119,8 @@ def _define_variable(file: netCDF4.Dataset, data: xr.DataArray, auxiliary: list[
     if name not in data.coords and belonging:
         attributes["coordinates"] = " ".join(belonging)
     variable.setncatts(attributes)
-    variable.set_auto_scale(False)  # values that are packed come packed, with the attributes that say how
+    if "scale_factor" in attributes:
+        variable.set_auto_maskandscale(False)  # what is packed comes packed, missing values included
 
 
 def _is_text(data: xr.DataArray) -> bool:
