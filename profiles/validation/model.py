@@ -175,6 +175,7 @@ def _is_located(data: xr.DataArray, dim: Hashable) -> bool:
     keys = ("time", "latitude", "longitude", "vertical")
     named = {name for key in keys for name in data.cf.coordinates.get(key, [])}
     named |= {name for axis in "TZYX" for name in data.cf.axes.get(axis, [])}
+    named |= {name for name in data.coords if _holds_dates(data[name])}
     return any(dim in data[name].dims for name in named) or dim in named
 
 
