@@ -41,6 +41,7 @@ _OWN: Mapping[str, tuple[str, str | None]] = {
     "nearest_wet_distance": ("distance of the model's point that stands for the mooring; 0 where interpolated", "km"),
     "latitude_of_mooring": ("latitude of the mooring", "degrees_north"),
     "longitude_of_mooring": ("longitude of the mooring", "degrees_east"),
+    "understood": ("how the model was understood, by subject (JSON)", None),
     "quantity": ("what the series is of", None),
     "place": ("where the series is of: mooring, line, array, region", None),
     "kind": ("mooring, line (mean of its moorings), array (mean of all), or map", None),

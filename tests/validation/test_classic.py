@@ -16,7 +16,12 @@ CONTENTS = {
     "nothing": {},
     "fixed": {"a": (("x",), "f8"), "b": (("y", "x"), "i2")},
     "one with records": {"a": (("t", "y"), "i2")},
-    "several with records": {"a": (("t",), "f8"), "b": (("t", "y"), "i1"), "c": (("x",), "f4"), "d": (("t", "x"), "f4")},
+    "several with records": {
+        "a": (("t",), "f8"),
+        "b": (("t", "y"), "i1"),
+        "c": (("x",), "f4"),
+        "d": (("t", "x"), "f4"),
+    },
     "scalars and letters": {"a": ((), "f8"), "b": (("y",), "S1")},
 }
 

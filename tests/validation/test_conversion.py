@@ -63,9 +63,7 @@ def test_missing_stays_missing() -> None:
         assert np.isnan(in_situ(np.array([np.nan]), kind, 35.0 * ONE, 100.0 * ONE)).all()
 
 
-@given(
-    warm=st.floats(2.0, 31.0), salt=st.floats(33.0, 37.0), deep=st.floats(0.0, 650.0), north=st.floats(-8.0, 8.0)
-)
+@given(warm=st.floats(2.0, 31.0), salt=st.floats(33.0, 37.0), deep=st.floats(0.0, 650.0), north=st.floats(-8.0, 8.0))
 def test_conversion_can_be_undone(warm: float, salt: float, deep: float, north: float) -> None:
     pressure = float(pressure_at(np.array(deep), np.array(north)))
     potential = in_situ(warm * ONE, POTENTIAL, salt * ONE, pressure * ONE)
@@ -143,9 +141,7 @@ def test_without_salinity_the_atlas_stands_in() -> None:
     """Its salinity, linear between its levels, computed here from its own profiles; at 450 m it makes up to 0.07 K."""
     warm, _, (z, y, x) = waters()
     pressure = gsw.p_from_z(-z, y)
-    profiles = annual_salinity(
-        np.clip(y[0].ravel(), -9.5, 9.5), np.clip(x[0].ravel(), 115.5, 291.5)
-    )  # (point, depth)
+    profiles = annual_salinity(np.clip(y[0].ravel(), -9.5, 9.5), np.clip(x[0].ravel(), 115.5, 291.5))  # (point, depth)
     practical = np.stack([np.interp(LEVELS, profiles["depth"].values, row) for row in profiles.values], axis=-1)
     absolute = gsw.SA_from_SP(practical.reshape(z.shape), pressure, x, y)
     dataset = model(of_kind(POTENTIAL, absolute, warm, pressure), "sea_water_potential_temperature")

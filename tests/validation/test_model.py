@@ -56,7 +56,9 @@ def refused(dataset: xr.Dataset, match: str, **settings: Any) -> None:
 
 
 def test_a_model_without_a_temperature_lists_what_it_has() -> None:
-    refused(model(standard_name="sea_water_salinity"), r"no temperature was found.*one variable with.*found temp; name it")
+    refused(
+        model(standard_name="sea_water_salinity"), r"no temperature was found.*one variable with.*found temp; name it"
+    )
     refused(model().drop_vars("temp"), r"no temperature was found in the model.*found nothing")
 
 

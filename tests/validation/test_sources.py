@@ -24,7 +24,9 @@ def part(first: int, count: int = 4, rows: int = 8) -> xr.Dataset:
     days = first + np.arange(count)
     shape = (count, 3, rows, 36)
     warm = np.broadcast_to(days[:, None, None, None], shape).astype(np.float32)
-    random = np.random.default_rng(first).uniform(0.0, 1e-3, shape).astype(np.float32)  # so that packing does not shrink
+    random = (
+        np.random.default_rng(first).uniform(0.0, 1e-3, shape).astype(np.float32)
+    )  # so that packing does not shrink
     return xr.Dataset(
         {
             "temp": (
@@ -82,7 +84,9 @@ def test_a_file_whose_name_holds_a_wildcard_is_that_file(tmp_path: Path) -> None
 
 @pytest.mark.parametrize("name", ["none.nc", "none_*.nc", "none/ocean_*.nc"])
 def test_a_model_that_is_not_there_is_a_wrong_request(tmp_path: Path, name: str) -> None:
-    with pytest.raises(RequestError, match=rf"{name.replace('*', '.')}: no such model; expected NetCDF files") as caught:
+    with pytest.raises(
+        RequestError, match=rf"{name.replace('*', '.')}: no such model; expected NetCDF files"
+    ) as caught:
         open_source(tmp_path / name)
     assert caught.value.exit_code == EXIT_REQUEST
 
@@ -150,7 +154,9 @@ def test_one_file_that_was_cut_off_among_many_is_named(tmp_path: Path, form: str
     paths = write(tmp_path, form)
     assert open_source(paths).sizes["time"] == 16  # whole, they are read
     cut(paths[2], share)
-    with pytest.raises(DataError, match=r"ocean_2\.nc: the model's file cannot be read.*fetch the file again") as caught:
+    with pytest.raises(
+        DataError, match=r"ocean_2\.nc: the model's file cannot be read.*fetch the file again"
+    ) as caught:
         open_source(tmp_path / "ocean_*.nc")
     assert caught.value.exit_code == EXIT_DATA
 
@@ -193,5 +199,7 @@ def test_a_store_whose_piece_was_cut_off_breaks_off_where_it_is_read(tmp_path: P
     cut(pieces[1] if version == 2 else next(p for p in pieces if p.parts[-4:] == ("1", "0", "0", "0")))
     dataset = open_source(store)
     assert days_read(dataset, slice(0, 2)) == [0.0, 1.0]
-    with pytest.raises(DataError, match=r"model, temp: the model's file breaks off; expected a whole file.*decompression"):
+    with pytest.raises(
+        DataError, match=r"model, temp: the model's file breaks off; expected a whole file.*decompression"
+    ):
         days_read(dataset, slice(2, 4))
