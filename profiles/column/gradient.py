@@ -13,6 +13,10 @@ from profiles.column.labelled import check_profiles, over_profiles
 from profiles.column.sensors import DISORDER, check_order, count_good
 from profiles.vocabulary import describe
 
+#: Falls that differ by less than this share of the steepest are one layer: float32 temperatures that were interpolated
+#: along a straight line differ by 1e-6 or so (ours).
+ALIKE = 1e-4
+
 
 @njit(cache=True)
 def _steepest(temperature: Any, depth: Any) -> tuple[float, int]:
@@ -20,31 +24,39 @@ def _steepest(temperature: Any, depth: Any) -> tuple[float, int]:
     good = count_good(temperature, depth)
     if good < 3:
         return np.nan, DISORDER if good < 0 else 1
-    places, falls = np.empty(good - 1), np.empty(good - 1)
-    pair, last = 0, -1
+    edges, falls = np.empty(good), np.empty(good - 1)
+    found, last = 0, -1
     for sensor in range(temperature.size):
         if not (np.isfinite(temperature[sensor]) and np.isfinite(depth[sensor])):
             continue
+        edges[found] = depth[sensor]
         if last >= 0:
-            distance = np.float64(depth[sensor]) - depth[last]
-            places[pair] = depth[last] + 0.5 * distance
-            falls[pair] = (np.float64(temperature[last]) - temperature[sensor]) / distance
-            pair += 1
+            fall = np.float64(temperature[last]) - temperature[sensor]
+            falls[found - 1] = fall / (edges[found] - edges[found - 1])
+        found += 1
         last = sensor
-    steepest = int(np.argmax(falls))
-    if falls[steepest] <= 0.0:
+    first = int(np.argmax(falls))
+    steepest = falls[first]
+    if steepest <= 0.0:
         return np.nan, 1
-    if steepest == 0 or steepest == falls.size - 1:
-        return places[steepest], 1
-    before, after = places[steepest] - places[steepest - 1], places[steepest + 1] - places[steepest]
-    rise = (falls[steepest] - falls[steepest - 1]) / before
-    decline = (falls[steepest + 1] - falls[steepest]) / after
-    bend = decline - rise
-    if bend >= 0.0:
-        return places[steepest], 1
+    stop = first + 1
+    while stop < falls.size and falls[stop] >= (1.0 - ALIKE) * steepest:
+        stop += 1
+    while first > 0 and falls[first - 1] >= (1.0 - ALIKE) * steepest:
+        first -= 1
+    middle = 0.5 * (edges[first] + edges[stop])
+    if stop - first > 1 or first == 0 or stop == falls.size:
+        return middle, 1
+    return middle + _top(edges[first - 1 : stop + 2], falls[first - 1 : stop + 1]), 1
+
+
+@njit(cache=True)
+def _top(edges: Any, falls: Any) -> float:
+    """Return how far the top of the parabola through three falls lies below the middle one, which is the largest."""
+    before, after = 0.5 * (edges[2] - edges[0]), 0.5 * (edges[3] - edges[1])
+    rise, decline = (falls[1] - falls[0]) / before, (falls[2] - falls[1]) / after
     slope = (rise * after + decline * before) / (before + after)
-    moved = -slope * 0.5 * (before + after) / bend
-    return places[steepest] + min(max(moved, -0.5 * before), 0.5 * after), 1
+    return np.float64(-0.5 * slope * (before + after) / (decline - rise))
 
 
 @njit(cache=True, parallel=True)
@@ -75,7 +87,8 @@ def steepest_gradient_depth(temperature: xr.DataArray, *, sensor_depth: xr.DataA
     -------
     xarray.Dataset
         ``steepest_gradient_depth`` (m) on the temperature's dims less ``depth``: the top of the parabola through the
-        steepest gradient between neighbouring sensors and the gradients beside it, no farther than half-way to them.
+        steepest gradient between neighbouring sensors and the gradients beside it, never farther than half-way to them;
+        the middle of the layer where neighbouring gradients are alike, as between a model's levels.
         NaN with fewer than three good sensors, and where temperature never falls.
 
     Raises

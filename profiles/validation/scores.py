@@ -135,9 +135,9 @@ def _correlation_interval(correlation: float, effective: float) -> Interval:
 
 def _rms_interval(rms: float, effective: float) -> Interval:
     """Chi-square of the variance of the difference with the effective number of values."""
-    freedom = effective - 1.0
-    if freedom <= 0.0:
+    if effective <= 2.0:  # fewer tell nothing, and the upper end runs to infinity
         return np.nan, np.nan
+    freedom = effective - 1.0
     low, high = (float(rms * np.sqrt(freedom / stats.chi2.ppf(tail, freedom))) for tail in (1.0 - _TAIL, _TAIL))
     return low, high
 

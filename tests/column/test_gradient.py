@@ -55,6 +55,14 @@ def test_a_warmer_ocean_has_its_steepest_fall_where_it_was(make_profile):
     assert one(deeper) == pytest.approx(one(profile) + 20.0, abs=1e-3)
 
 
+@pytest.mark.parametrize("dtype", [np.float32, np.float64])
+def test_a_straight_line_between_two_levels_is_one_layer(make_profile, dtype):
+    """A model's levels at 100 and 150 m, read at sensors every 10 m: rounding must not choose among them."""
+    depth = np.arange(50.0, 201.0, 10.0)
+    read = np.interp(depth, [50.0, 100.0, 150.0, 200.0], [28.0, 26.3, 17.7, 14.1])
+    assert one(make_profile(read, depth, dtype=dtype)) == 125.0
+
+
 @pytest.mark.parametrize("temperatures", [[20, 21, 22, 23, 24], [20, 20, 20, 20, 20]])
 def test_water_that_never_cools_has_none(make_profile, temperatures):
     assert np.isnan(one(make_profile(temperatures, DEPTHS)))
@@ -74,8 +82,8 @@ def test_fewer_than_three_sensors_tell_nothing(make_profile, temperatures):
     [
         # Falls 5, 3, 1 at 30, 50, 70 m: the first is the steepest.
         (0, 30.0),
-        # Falls 6/40, 3/20, 1/20 at 20, 50, 70 m: two alike, the upper is taken.
-        (1, 20.0),
+        # Falls 6/40, 3/20, 1/20 from 0, 40, 60 m: two alike, one layer from 0 to 60 m.
+        (1, 30.0),
         # Falls 1/20, 8/40, 1/20 at 10, 40, 70 m: even about 40 m.
         (2, 40.0),
         # As by hand above: the deepest fall has no part in it.
@@ -118,6 +126,10 @@ def parabola_of(temperature: np.ndarray, depth: np.ndarray) -> float:
     top = int(np.argmax(falls))
     if falls[top] <= 0.0:
         return np.nan
+    alike = np.abs(falls - falls[top]) <= 1e-4 * falls[top]
+    end = top + int(np.argmin(np.append(alike[top:], False)))
+    if end > top + 1:
+        return float(0.5 * (depth[top] + depth[end]))
     if top in (0, falls.size - 1):
         return float(places[top])
     around = slice(top - 1, top + 2)

@@ -10,14 +10,10 @@ import numpy as np
 import pytest
 import xarray as xr
 
-from profiles import store
-from profiles.column import columns_of
-from profiles.config import ColumnSettings, SectionSettings, ValidationSettings
 from profiles.drill.array import SITES, Site
 from profiles.drill.demo import days
 from profiles.drill.ocean import Ocean
 from profiles.drill.truth import cells
-from profiles.section import daily_means, join_moorings, monthly_means
 
 PERFECT = tuple(site for site in SITES if site.longitude in (175.0, 201.0, 227.0) and abs(site.latitude) < 3.0)
 MODEL_LATITUDE = np.array([-5.0, -2.5, 0.0, 2.5, 5.0])
@@ -54,36 +50,10 @@ def chain_of(ocean: Ocean, site: Site) -> xr.Dataset:
     )
 
 
-def write_run(folder: Path, chains: dict[str, xr.Dataset]) -> Path:
-    """Write what the comparison reads of a finished run."""
-    store.make_folder(folder / "chains")
-    for name, chain in chains.items():
-        store.write_dataset(folder / "chains" / f"{name}.nc", chain, {})
-    monthly = join_moorings({name: monthly_means(daily_means(columns_of(chain))) for name, chain in chains.items()})
-    store.write_dataset(folder / "columns_monthly.nc", monthly, {"date_created": "2033-01-01T00:00:00Z"})
-    moorings = [
-        {
-            "id": name,
-            "latitude": float(chain["latitude"]),
-            "longitude": float(chain["longitude"]),
-            "deliveries": [{"path": "none.csv", "layout": "none.toml"}],
-        }
-        for name, chain in chains.items()
-    ]
-    configuration: dict[str, Any] = {"array": {"name": "Perfect Array"}, "moorings": moorings} | {
-        name: settings.model_dump(mode="json")
-        for name, settings in (
-            ("column", ColumnSettings()),
-            ("section", SectionSettings()),
-            ("validation", ValidationSettings()),
-        )
-    }
-    store.write_record(folder / "run.json", {"configuration": configuration})
-    return folder
-
-
 @pytest.fixture(scope="session")
-def perfect(ocean: Ocean, tmp_path_factory: pytest.TempPathFactory) -> Path:
+def perfect(
+    ocean: Ocean, write_run: Callable[[Path, dict[str, xr.Dataset]], Path], tmp_path_factory: pytest.TempPathFactory
+) -> Path:
     """The folder of a run over perfect moorings; not to be changed."""
     chains = {site.id: chain_of(ocean, site) for site in PERFECT}
     return write_run(tmp_path_factory.mktemp("perfect") / "out", chains)

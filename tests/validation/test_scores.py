@@ -69,6 +69,14 @@ def test_constant_series_have_no_correlation_and_no_ratio():
     assert np.isnan([found.correlation, found.sd_ratio, found.correlation_low]).all()
 
 
+def test_a_difference_that_drifts_all_along_has_no_interval_of_sampling():
+    """A line through twelve months has a lag-one autocorrelation of 0.95, the most there is: 0.3 values, or 0.6."""
+    found = scored(np.arange(12.0) * 2.0, np.arange(12.0))
+    assert found.centred_rms == pytest.approx(np.sqrt(143.0 / 12.0))
+    for name in ("bias", "centred_rms", "correlation", "sd_ratio"):
+        assert np.isnan([getattr(found, f"{name}_low"), getattr(found, f"{name}_high")]).all(), name
+
+
 def test_the_annual_cycle_of_either_side():
     """cos of the year with amplitude 3 against amplitude 5 that comes 30 days later."""
     year = (TIME - TIME[0]) / np.timedelta64(1, "D") / 365.25
