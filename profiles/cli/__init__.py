@@ -9,6 +9,7 @@ import typer
 
 from profiles.cli.check import check
 from profiles.cli.run import run
+from profiles.cli.validate import validate
 from profiles.cli.version import print_version
 
 # Plain help: the marked-up one imports a terminal library that takes longer than all else together.
@@ -22,6 +23,7 @@ app = typer.Typer(
 )
 app.command()(run)
 app.command()(check)
+app.command()(validate)
 app.callback()(print_version)
 
 
