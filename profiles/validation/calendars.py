@@ -22,6 +22,7 @@ Times = NDArray[np.datetime64]
 DAILY, SEVERAL_DAYS, MONTHLY = "daily", "several days", "monthly"
 _SAME_DATES = ("standard", "gregorian", "proleptic_gregorian")
 _DATES_BY_NAME = ("noleap", "365_day", "all_leap", "366_day", "julian")
+_YEARS = 1700, 2250
 _LONGEST_DAY, _SHORTEST_MONTH, _LONGEST_MONTH = 1.5, 27.0, 32.0  # days
 
 
@@ -70,7 +71,8 @@ def read_time(time: xr.DataArray, bounds: xr.DataArray | None, averaging_days: f
     Raises
     ------
     DataError
-        Where there is no date, the times do not increase, or a value is the mean of more than a month.
+        Where there is no date, the times do not increase, the years are out of range, or a value is the mean of more
+        than a month.
     """
     dates = time.values
     if dates.size == 0 or not (_is_date(dates.flat[0])):
@@ -93,6 +95,7 @@ def read_time(time: xr.DataArray, bounds: xr.DataArray | None, averaging_days: f
             found=f"{length:g} days",
             advice="give monthly or daily output, or declare averaging_days in [validation]",
         )
+    _check_years(limits, where)
     named = np.array([_named(date) for date in middle], dtype="datetime64[us]")
     if length >= _SHORTEST_MONTH or calendar not in (*_SAME_DATES, *_DATES_BY_NAME):
         return _by_month(calendar, middle, length)
@@ -155,6 +158,19 @@ def _check_order(middle: list[Any], where: str) -> None:
                 found=f"{after} as number {number}, after {before}",
                 advice="leave out the file that repeats a time",
             )
+
+
+def _check_years(limits: list[tuple[Any, Any]], where: str) -> None:
+    """Dates are held in nanoseconds, which wrap about outside these years."""
+    first, last = limits[0][0].year, limits[-1][1].year
+    if not (_YEARS[0] <= first and last <= _YEARS[1]):
+        raise DataError(
+            "the model's years are out of range",
+            where=where,
+            expected=f"years {_YEARS[0]} to {_YEARS[1]}, those of the array's record",
+            found=f"{first} to {last}" if first != last else f"{first}",
+            advice="give the times the array's years, if that is what they stand for",
+        )
 
 
 def _named(date: Any) -> np.datetime64:

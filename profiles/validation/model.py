@@ -143,7 +143,7 @@ def _temperature(dataset: xr.Dataset, settings: ValidationSettings, where: str) 
                 expected=f"{settings.temperature_variable!r}, as [validation] temperature_variable says",
                 found=_listed(dataset.data_vars),
             )
-        return _squeezed(dataset[settings.temperature_variable])
+        return _squeezed(dataset, settings.temperature_variable)
     found = [name for name, data in dataset.data_vars.items() if _standard_name(data) in TEMPERATURES]
     if len(found) != 1:
         raise DataError(
@@ -153,7 +153,7 @@ def _temperature(dataset: xr.Dataset, settings: ValidationSettings, where: str) 
             found=_listed(found or dataset.data_vars),
             advice="name it: temperature_variable in [validation]",
         )
-    return _squeezed(dataset[found[0]])
+    return _squeezed(dataset, found[0])
 
 
 def _listed(names: Any) -> str:
@@ -164,19 +164,16 @@ def _standard_name(data: xr.DataArray) -> str:
     return str(data.attrs.get("standard_name", "")).split(" ")[0]
 
 
-def _squeezed(data: xr.DataArray) -> xr.DataArray:
-    """Drop dimensions of length 1 that no coordinate explains, such as that of a single member."""
-    plain = [dim for dim, size in data.sizes.items() if size == 1 and not _is_located(data, dim)]
-    return data.squeeze(plain)
-
-
-def _is_located(data: xr.DataArray, dim: Hashable) -> bool:
-    """Tell whether a coordinate places the dimension in time or space."""
+def _squeezed(dataset: xr.Dataset, name: Hashable) -> xr.DataArray:
+    """Return a variable without dimensions of length 1 that no coordinate explains, such as that of a single member."""
+    located = dataset[[name]].assign_coords(_auxiliary(dataset, dataset[name]))
     keys = ("time", "latitude", "longitude", "vertical")
-    named = {name for key in keys for name in data.cf.coordinates.get(key, [])}
-    named |= {name for axis in "TZYX" for name in data.cf.axes.get(axis, [])}
-    named |= {name for name in data.coords if _holds_dates(data[name])}
-    return any(dim in data[name].dims for name in named) or dim in named
+    placed = {coordinate for key in keys for coordinate in located.cf.coordinates.get(key, [])}
+    placed |= {coordinate for axis in "TZYX" for coordinate in located.cf.axes.get(axis, [])}
+    placed |= {coordinate for coordinate in located.coords if _holds_dates(located[coordinate])}
+    explained = placed.union(*(located[coordinate].dims for coordinate in placed))
+    data = dataset[name]
+    return data.squeeze([dim for dim, size in data.sizes.items() if size == 1 and dim not in explained])
 
 
 def _kind(temperature: xr.DataArray, settings: ValidationSettings, where: str) -> str:
@@ -217,9 +214,9 @@ def _salinity(dataset: xr.Dataset, temperature: xr.DataArray, settings: Validati
     """Return the model's salinity where it lies on the temperature's points."""
     if settings.salinity == "atlas":
         return None
-    for _, data in dataset.data_vars.items():
+    for name, data in dataset.data_vars.items():
         if _standard_name(data) in SALINITIES:
-            salinity = _squeezed(data)
+            salinity = _squeezed(dataset, name)
             if set(salinity.dims) == {*temperature.dims} and salinity.sizes == temperature.sizes:
                 return salinity
     return None

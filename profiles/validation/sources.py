@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import warnings
 from collections.abc import Sequence
 from pathlib import Path
 
@@ -71,11 +72,10 @@ def _open(path: Path) -> xr.Dataset:
             advice=f"name the files in it: '{path}/*.nc'",
         )
     try:
-        if path.is_dir():
-            listed = _is_consolidated(path)
-            return xr.open_zarr(path, chunks=None, decode_coords="all", decode_timedelta=False, consolidated=listed)
-        _check_whole(path)
-        return xr.open_dataset(path, engine="netcdf4", decode_coords="all", decode_timedelta=False)
+        with warnings.catch_warnings():
+            # Cell areas in a file of their own are not needed.
+            warnings.filterwarnings("ignore", message=r"Variable\(s\) referenced in .* not in variables")
+            return _lazy(path)
     except UNREADABLE as error:
         raise DataError(
             "the model's file cannot be read",
@@ -84,6 +84,14 @@ def _open(path: Path) -> xr.Dataset:
             found=str(error).splitlines()[0] if str(error) else type(error).__name__,
             advice="fetch the file again if it was cut off",
         ) from error
+
+
+def _lazy(path: Path) -> xr.Dataset:
+    if path.is_dir():
+        listed = _is_consolidated(path)
+        return xr.open_zarr(path, chunks=None, decode_coords="all", decode_timedelta=False, consolidated=listed)
+    _check_whole(path)
+    return xr.open_dataset(path, engine="netcdf4", decode_coords="all", decode_timedelta=False)
 
 
 def _is_consolidated(store: Path) -> bool:
@@ -103,7 +111,7 @@ def _check_whole(path: Path) -> None:
 
 def _combine(parts: list[xr.Dataset], paths: list[Path]) -> xr.Dataset:
     """Put files together by their coordinates; of each, one time is a task, so that a block reads only its own."""
-    lazy = [part.chunk({_time_dimension(part): 1} if _time_dimension(part) else {}) for part in parts]
+    lazy = [_dated(part) for part in parts]
     try:
         combined = xr.combine_by_coords(
             lazy, data_vars="minimal", coords="minimal", compat="override", join="exact", combine_attrs="override"
@@ -119,12 +127,20 @@ def _combine(parts: list[xr.Dataset], paths: list[Path]) -> xr.Dataset:
         ) from error
 
 
-def _time_dimension(part: xr.Dataset) -> str:
-    """Return the dimension of the file's dates, "" where it has none."""
-    for name in part.variables:
-        variable = part[name]
-        if variable.ndim == 1 and (variable.dtype.kind == "M" or variable.attrs.get("axis") == "T"):
-            return str(variable.dims[0])
-        if variable.ndim == 1 and variable.dtype == object and hasattr(variable.values.flat[0], "timetuple"):
-            return str(variable.dims[0])
-    return ""
+def _dated(part: xr.Dataset) -> xr.Dataset:
+    """Return a file in chunks of one time, its dates on their own dimension: some models only number that."""
+    dated = [name for name in part.variables if _holds_dates(part[name])]
+    if not dated:
+        return part.chunk()
+    own = [name for name in dated if name in part.dims]
+    name = (own or [name for name in dated if part[name].attrs.get("standard_name") == "time"] or dated)[0]
+    dim = part[name].dims[0]
+    if not own:
+        part = part.assign_coords({dim: (dim, part[name].values, part[name].attrs)})
+    return part.chunk({dim: 1})
+
+
+def _holds_dates(variable: xr.DataArray) -> bool:
+    if variable.ndim != 1 or not variable.size:
+        return False
+    return variable.dtype.kind == "M" or (variable.dtype == object and hasattr(variable.values[0], "timetuple"))
