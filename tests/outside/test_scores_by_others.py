@@ -7,7 +7,6 @@ Student's of a mean as SciPy has them; the interval of a ratio of standard devia
 from __future__ import annotations
 
 import numpy as np
-import pandas as pd
 import pytest
 from scipy import stats
 from sklearn.linear_model import LinearRegression
@@ -112,8 +111,9 @@ def test_the_triangle_closes_for_any_series(seed: int) -> None:
 def test_the_seasonal_cycle_is_that_of_a_linear_regression(seed: int) -> None:
     """On the cosine and sine of the year and of half of it; scikit-learn's least squares."""
     model, array = pair(seed)
-    dates = pd.DatetimeIndex(TIME)
-    angle = 2.0 * np.pi * (dates.dayofyear.values - 1) / (365 + dates.is_leap_year)
+    years = TIME.astype("datetime64[Y]")
+    first, next_first = years.astype("datetime64[D]"), (years + 1).astype("datetime64[D]")
+    angle = 2.0 * np.pi * ((TIME - first) / (next_first - first))
     waves = np.stack([np.cos(angle), np.sin(angle), np.cos(2.0 * angle), np.sin(2.0 * angle)], axis=-1)
     fits = [LinearRegression().fit(waves, series).coef_ for series in (array, model)]
     amplitudes = [np.hypot(*fit[:2]) for fit in fits]
