@@ -6,8 +6,10 @@ from .qc import quality_control as quality_control
 from .section import objective_map as objective_map
 from .section import thermocline_slope as thermocline_slope
 from .section import warm_water_volume as warm_water_volume
+from .validation import compare_model as compare_model
 
 __all__ = [
+    "compare_model",
     "isotherm_depth",
     "lead_lag",
     "mixed_layer_depth",

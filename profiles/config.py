@@ -239,6 +239,56 @@ class SectionSettings(Settings):
 
 
 # --------------------------------------------------------------------------------------------------------------
+# [validation]
+
+
+class ValidationSettings(Settings):
+    """[validation]: how a model is read and seen as the array saw the ocean."""
+
+    temperature_variable: str = Field(
+        "", description="the model's temperature; empty: the one variable whose standard name is of temperature (CF)"
+    )
+    temperature_kind: Literal["by standard name", "in situ", "potential", "conservative"] = Field(
+        "by standard name",
+        description="which temperature it is; declare it where the standard name is missing or wrong",
+    )
+    salinity: Literal["model, else atlas", "atlas"] = Field(
+        "model, else atlas", description="salinity of the conversion to in situ temperature (TEOS-10)"
+    )
+    depth_positive: Literal["declared", "down", "up"] = Field(
+        "declared", description="direction of the model's depths; declare it where their attribute positive is missing"
+    )
+    averaging_days: NotNegative = Field(
+        0.0,
+        description="days that a value of the model is the mean of; 0: from its time bounds, else from the spacing (ours)",
+    )
+    top_reach: NotNegative = Field(
+        15.0, description="m; a model's shallowest level no deeper than this stands for the water above it (ours)"
+    )
+    nearest_wet: NotNegative = Field(
+        100.0, description="km; a mooring without wet points about it takes the nearest one within this (ours)"
+    )
+    deepest: Positive = Field(650.0, description="m; levels of fixed depth below this are not read (ours)")
+    block_megabytes: Positive = Field(
+        24.0, description="MB of a model's temperature that a worker holds at a time (ours)"
+    )
+    shared_lean: Share = Field(
+        0.3,
+        description="part of the error from the leaning of lines (column.motion_accuracy) that all moorings have in "
+        "common, for a line only leans one way; it does not average out over the array (ours, from simulated arrays)",
+    )
+    undetected_faults: NotNegative = Field(
+        2.0,
+        description="m; standard deviation of a mooring's depths from faults that the quality control does not find: "
+        "rare and large, so that it counts in the error of sums over moorings, not in that of one (ours, from "
+        "simulated arrays)",
+    )
+    least_months: Annotated[int, Field(strict=True, ge=3)] = Field(
+        6, description="a score needs as many months at least (ours)"
+    )
+
+
+# --------------------------------------------------------------------------------------------------------------
 # [precursor]
 
 
@@ -462,6 +512,7 @@ class Config(Settings):
     qc: QualityControlSettings = QualityControlSettings()
     column: ColumnSettings = ColumnSettings()
     section: SectionSettings = SectionSettings()
+    validation: ValidationSettings = ValidationSettings()
     precursor: PrecursorSettings = PrecursorSettings()
 
     def resolve(self, path: Path) -> Path:
@@ -478,7 +529,9 @@ _COMMENT_WIDTH = 110
 
 def defaults_text() -> str:
     """Return ``config/defaults.toml``: every setting that has a default, its description as a comment above it."""
-    tables = {name: Config.model_fields[name].default for name in ("qc", "column", "section", "precursor")}
+    tables = {
+        name: Config.model_fields[name].default for name in ("qc", "column", "section", "validation", "precursor")
+    }
     return "\n".join([_comment(_HEADER), *(_table_text(name, table) for name, table in tables.items())])
 
 

@@ -230,6 +230,8 @@ _COLUMN_VARIABLES = [
              "part of isotherm_depth_error that persists through a deployment", "m", None, "float32", _QUALITY),
     Variable("isotherm_status", ("time",), "why isotherm_depth is or is not given", None, "status_flag", "int8", _QUALITY,
              _flag_attributes(IsothermStatus)),
+    Variable("steepest_gradient_depth", ("time",), "depth of the steepest fall of temperature", "m",
+             extra={"positive": "down"}),
     Variable("bracket", ("time",), "distance between the sensors that bracket the isotherm", "m", None, "float32",
              _QUALITY),
     Variable("mixed_layer_depth", ("time",), "mixed layer depth", "m",

@@ -5,10 +5,14 @@ from __future__ import annotations
 import shutil
 from collections.abc import Callable
 from pathlib import Path
+from typing import Any
 
 import pytest
+import xarray as xr
 
-from profiles.config import load_config
+from profiles import store
+from profiles.column import columns_of
+from profiles.config import ColumnSettings, SectionSettings, ValidationSettings, load_config
 from profiles.drill.array import SITES
 from profiles.drill.configuration import configuration_text
 from profiles.drill.demo import days, simulated_chains, write_configuration, write_deliveries
@@ -16,6 +20,7 @@ from profiles.drill.ocean import Ocean
 from profiles.drill.planting import plant_over_array
 from profiles.drill.truth import site_columns
 from profiles.pipeline import run
+from profiles.section import daily_means, join_moorings, monthly_means
 
 SEED = 5
 SMALL = tuple(site for site in SITES if site.id in ("TB-07", "TB-18", "TB-28"))
@@ -52,6 +57,40 @@ def finished(small_array: Path, tmp_path_factory: pytest.TempPathFactory) -> Pat
 def out(finished: Path, tmp_path: Path) -> Path:
     """A copy of the finished folder that a test may change."""
     return shutil.copytree(finished, tmp_path / "out")
+
+
+@pytest.fixture(scope="session")
+def write_run() -> Callable[[Path, dict[str, xr.Dataset]], Path]:
+    """Return what writes the part of a finished run that a model is compared with, from flagged chains by mooring."""
+    return _write_run
+
+
+def _write_run(folder: Path, chains: dict[str, xr.Dataset]) -> Path:
+    """Write what the comparison reads of a finished run."""
+    store.make_folder(folder / "chains")
+    for name, chain in chains.items():
+        store.write_dataset(folder / "chains" / f"{name}.nc", chain, {})
+    monthly = join_moorings({name: monthly_means(daily_means(columns_of(chain))) for name, chain in chains.items()})
+    store.write_dataset(folder / "columns_monthly.nc", monthly, {"date_created": "2033-01-01T00:00:00Z"})
+    moorings = [
+        {
+            "id": name,
+            "latitude": float(chain["latitude"]),
+            "longitude": float(chain["longitude"]),
+            "deliveries": [{"path": "none.csv", "layout": "none.toml"}],
+        }
+        for name, chain in chains.items()
+    ]
+    configuration: dict[str, Any] = {"array": {"name": "Perfect Array"}, "moorings": moorings} | {
+        name: settings.model_dump(mode="json")
+        for name, settings in (
+            ("column", ColumnSettings()),
+            ("section", SectionSettings()),
+            ("validation", ValidationSettings()),
+        )
+    }
+    store.write_record(folder / "run.json", {"configuration": configuration})
+    return folder
 
 
 @pytest.fixture(scope="session")

@@ -17,6 +17,7 @@ from profiles.config import (
     QualityControlSettings,
     SectionSettings,
     Settings,
+    ValidationSettings,
     defaults_text,
     load_config,
 )
@@ -29,6 +30,7 @@ MODELS: dict[str, type[Settings]] = {
     "qc": QualityControlSettings,
     "column": ColumnSettings,
     "section": SectionSettings,
+    "validation": ValidationSettings,
     "precursor": PrecursorSettings,
 }
 DELIVERY = '{ path = "a.csv", layout = "a.toml" }'
@@ -268,7 +270,7 @@ def test_the_file_of_the_defaults_is_the_models_written_out() -> None:
 
 def test_the_file_of_the_defaults_read_back_is_the_defaults() -> None:
     content = tomllib.loads(DEFAULTS.read_text(encoding="utf-8"))
-    assert set(content) == {"qc", "column", "section", "precursor"}
+    assert set(content) == {"qc", "column", "section", "validation", "precursor"}
     for name, model in MODELS.items():
         assert model.model_validate(content[name]) == model()
         assert keys_of(content[name]) == keys_of(model().model_dump())

@@ -42,12 +42,13 @@ PROMISED = {
     "lead_lag": {"predictor": EMPTY, "target": EMPTY, "leads": tuple(range(-24, 25)), "*": EMPTY, "settings": None},
     "thermocline_slope": {"field": EMPTY, "*": EMPTY, "window": (165.0, 265.0)},
     "warm_water_volume": {"field": EMPTY, "*": EMPTY, "region": "total"},
+    "compare_model": {"model": EMPTY, "array": EMPTY, "settings": None},
 }
 
 #: Imports that take long, or that only one room may make.
 HEAVY = {
-    "cf_units", "cmocean", "dask", "gsw", "jinja2", "matplotlib", "netCDF4", "numba", "numpy", "pandas", "pydantic",
-    "rich", "scipy", "xarray",
+    "cf_units", "cf_xarray", "cmocean", "dask", "gsw", "jinja2", "matplotlib", "netCDF4", "numba", "numpy", "pandas",
+    "pydantic", "rich", "scipy", "xarray",
 }  # fmt: skip
 
 

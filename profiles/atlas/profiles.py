@@ -56,7 +56,16 @@ def annual_profile(latitude: ArrayLike, longitude: ArrayLike) -> xr.DataArray:
     DataError
         Where a position lies outside the atlas.
     """
-    field = annual_mean()["temperature"].astype(np.float64).expand_dims("harmonic")
+    return _annual("temperature", latitude, longitude)
+
+
+def annual_salinity(latitude: ArrayLike, longitude: ArrayLike) -> xr.DataArray:
+    """Return the annual-mean practical salinity of the 1-degree atlas at positions, as :func:`annual_profile` does."""
+    return _annual("salinity", latitude, longitude)
+
+
+def _annual(name: str, latitude: ArrayLike, longitude: ArrayLike) -> xr.DataArray:
+    field = annual_mean()[name].astype(np.float64).expand_dims("harmonic")
     return _at_positions(field, latitude, longitude).squeeze("harmonic")
 
 

@@ -11,6 +11,7 @@ from profiles.cli.check import check
 from profiles.cli.draft import draft
 from profiles.cli.precursor import precursor
 from profiles.cli.run import run
+from profiles.cli.validate import validate
 from profiles.cli.version import print_version
 
 # Plain help: the marked-up one imports a terminal library that takes longer than all else together.
@@ -26,6 +27,7 @@ app.command()(run)
 app.command()(check)
 app.command()(draft)
 app.command()(precursor)
+app.command()(validate)
 app.callback()(print_version)
 
 

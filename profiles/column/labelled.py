@@ -73,13 +73,14 @@ def over_profiles(
     one array of shape (profile,) per output. Dask arrays stay lazy.
     """
 
-    def flat(temperature: np.ndarray, *others: np.ndarray) -> tuple[np.ndarray, ...]:
+    def flat(temperature: np.ndarray, *others: np.ndarray) -> tuple[np.ndarray, ...] | np.ndarray:
         sensors = temperature.shape[-1]
         shared = [
             other.reshape(1, sensors) if other.size == sensors else _spread(other, temperature) for other in others
         ]
         results = kernel(temperature.reshape(-1, sensors), *shared)
-        return tuple(result.reshape(temperature.shape[:-1]) for result in results)
+        shaped = tuple(result.reshape(temperature.shape[:-1]) for result in results)
+        return shaped if len(shaped) > 1 else shaped[0]
 
     if temperature.chunks is not None:
         temperature = temperature.chunk({"depth": -1})

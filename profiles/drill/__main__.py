@@ -7,6 +7,7 @@ import sys
 from pathlib import Path
 
 from profiles.drill.demo import SEED, make_demo
+from profiles.drill.model import make_model
 from profiles.drill.supplements import make_supplements
 from profiles.errors import EXIT_DONE, ThermotiltError
 
@@ -15,7 +16,7 @@ def main(arguments: list[str] | None = None) -> int:
     """Parse, make, report; return the exit code."""
     parser = argparse.ArgumentParser(
         prog="python -m profiles.drill",
-        description="Make the demo data of the invented Tropicbird Array: deliveries, what lies beside them, truth.",
+        description="Make the demo data of the invented Tropicbird Array: deliveries, companions, a model, truth.",
     )
     parser.add_argument("folder", type=Path, help="gets the demo data; files of the same names are replaced")
     parser.add_argument(
@@ -25,6 +26,7 @@ def main(arguments: list[str] | None = None) -> int:
     try:
         make_demo(options.folder, seed=options.seed, progress=print)
         make_supplements(options.folder, seed=options.seed, progress=print)
+        make_model(options.folder, seed=options.seed, progress=print)
     except ThermotiltError as error:
         print(error, file=sys.stderr)
         return error.exit_code

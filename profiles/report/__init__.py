@@ -10,6 +10,8 @@ from profiles.report.precursor_section import (
     precursor_section,
     write_precursor_page,
 )
+from profiles.report.validation import write_model_figures
+from profiles.report.validation_page import write_model_page
 
 __all__ = [
     "Facts",
@@ -20,6 +22,8 @@ __all__ = [
     "precursor_section",
     "write_array_figures",
     "write_column_figure",
+    "write_model_figures",
+    "write_model_page",
     "write_mooring_figure",
     "write_page",
     "write_precursor_figures",

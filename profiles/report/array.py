@@ -122,7 +122,7 @@ def equatorial_section(section: xr.Dataset, monthly: xr.Dataset, *, isotherm: fl
         part = section.isel(time=span)
         depth = part["equatorial_isotherm_depth"].mean("time").values
         half = style.HALF_WIDTH_95 * part["equatorial_isotherm_depth_error"].mean("time").values
-        _line_with_band(axis, longitude, depth, half, color=colour, label=name)
+        line_with_band(axis, longitude, depth, half, color=colour, label=name)
         own = monthly["isotherm_depth"].isel(time=span, mooring=equator).mean("time").values
         axis.plot(
             monthly["longitude"].values[equator],
@@ -177,7 +177,7 @@ def time_longitude_anomaly(section: xr.Dataset, *, isotherm: float = 20.0) -> Fi
         section, anomaly, style.ANOMALY, (-reach, reach), "anomaly (m), positive: deeper than usual"
     )
     weak = section["equatorial_isotherm_depth_anomaly_error"].values > WEAK_SHARE * section.attrs["signal_sd"]
-    _hatch(axis, weak, _time_edges(section), cell_edges(section["longitude"].values, "longitude"))
+    hatch(axis, weak, time_edges(section), cell_edges(section["longitude"].values, "longitude"))
     axis.set_title(f"Anomaly of the {isotherm:g} °C isotherm's depth, 2.5°S-2.5°N", pad=14)
     return figure
 
@@ -189,7 +189,7 @@ def _over_time(
     axis = figure.add_axes((0.15, 0.09, 0.655, 0.82))
     mesh = axis.pcolormesh(
         cell_edges(section["longitude"].values, "longitude"),
-        _time_edges(section),
+        time_edges(section),
         np.ma.masked_invalid(values),
         cmap=colours,
         vmin=limits[0],
@@ -203,13 +203,13 @@ def _over_time(
     return figure, axis
 
 
-def _time_edges(dataset: xr.Dataset) -> NDArray[np.datetime64]:
+def time_edges(dataset: xr.Dataset) -> NDArray[np.datetime64]:
     """Return the first of each month, and of the one after the last."""
     months = dataset["time"].values.astype("datetime64[M]")
     return np.append(months, months[-1] + 1).astype("datetime64[ns]")
 
 
-def _hatch(axis: Axes, where: NDArray[np.bool_], rows: NDArray[np.datetime64], columns: Floats) -> None:
+def hatch(axis: Axes, where: NDArray[np.bool_], rows: NDArray[np.datetime64], columns: Floats) -> None:
     """Hatch the cells of ``where``, one rectangle for each run of cells in a row."""
     places = axis.convert_yunits(rows)  # type: ignore[no-untyped-call]
     rectangles = []
@@ -230,7 +230,7 @@ def tilt_and_anomaly(section: xr.Dataset) -> Figure:
     figure, (above, below) = _two_panels(section, right=0.98)
     for axis, name in ((above, "thermocline_slope"), (below, "thermocline_slope_anomaly")):
         half = style.HALF_WIDTH_95 * section[f"{name}_error"].values
-        _line_with_band(axis, section["time"].values, section[name].values, half, color=style.BLACK)
+        line_with_band(axis, section["time"].values, section[name].values, half, color=style.BLACK)
     below.axhline(0.0, color=style.LACKING, linewidth=0.8)
     above.set_ylabel("tilt\n(m per 1000 km)")
     below.set_ylabel("anomaly\n(m per 1000 km)")
@@ -248,7 +248,7 @@ def volume_and_anomaly(volume: xr.Dataset) -> Figure:
         part = volume.sel(region=region)
         for axis, quantity in ((above, "warm_water_volume"), (below, "warm_water_volume_anomaly")):
             values, half = (part[quantity + suffix].values / VOLUME_UNIT for suffix in ("", "_error"))
-            _line_with_band(
+            line_with_band(
                 axis,
                 part["time"].values,
                 values,
@@ -309,11 +309,11 @@ def _two_panels(dataset: xr.Dataset, *, right: float) -> tuple[Figure, tuple[Axe
     below = figure.add_axes((0.085, 0.11, right - 0.085, 0.36), sharex=above)
     above.tick_params(labelbottom=False)
     style.time_axis(below)
-    below.set_xlim(*_time_edges(dataset)[[0, -1]])
+    below.set_xlim(*time_edges(dataset)[[0, -1]])
     return figure, (above, below)
 
 
-def _line_with_band(axis: Axes, across: NDArray[Any], values: Floats, half_width: Floats, **look: Any) -> None:
+def line_with_band(axis: Axes, across: NDArray[Any], values: Floats, half_width: Floats, **look: Any) -> None:
     """Draw a line in its 95 % band; a single value as a point with its error bar."""
     if values.size == 1:
         axis.errorbar(across, values, yerr=half_width, fmt="o", capsize=4, color=look["color"], label=look.get("label"))

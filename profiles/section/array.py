@@ -59,6 +59,21 @@ def build_section(monthly: xr.Dataset, settings: SectionSettings | None = None, 
         Where no mooring has a monthly mean.
     """
     settings = settings or SectionSettings()
+    records, climatology, field = map_records(monthly, settings, isotherm)
+    anomaly = _with_climatology(field, climatology, records, settings, "anomaly")
+    whole = _with_climatology(field, climatology, records, settings, "whole")
+    whole["mean"] = whole["mean"] + climatology.cells_at(records.time)
+    return Section(
+        section=_assemble_section(anomaly, whole, climatology, monthly, settings),
+        volume=_assemble_volume(anomaly, whole),
+        leave_one_out=_leave_one_out(field, records, climatology),
+    )
+
+
+def map_records(
+    monthly: xr.Dataset, settings: SectionSettings, isotherm: float
+) -> tuple[Records, Climatology, xr.Dataset]:
+    """Return the records of an array, their climatology, and the map of the anomalies from it."""
     records = _records(monthly, settings)
     rows, columns = array_grid()
     climatology = estimate_climatology(records, rows, columns, isotherm, settings)
@@ -75,14 +90,7 @@ def build_section(monthly: xr.Dataset, settings: SectionSettings | None = None, 
         length_longitude=settings.length_longitude,
         length_latitude=settings.length_latitude,
     )
-    anomaly = _with_climatology(field, climatology, records, settings, "anomaly")
-    whole = _with_climatology(field, climatology, records, settings, "whole")
-    whole["mean"] = whole["mean"] + climatology.cells_at(records.time)
-    return Section(
-        section=_assemble_section(anomaly, whole, climatology, monthly, settings),
-        volume=_assemble_volume(anomaly, whole),
-        leave_one_out=_leave_one_out(field, records, climatology),
-    )
+    return records, climatology, field
 
 
 def _records(monthly: xr.Dataset, settings: SectionSettings) -> Records:

@@ -46,7 +46,11 @@ class Records:
 
 @dataclass(frozen=True)
 class Climatology:
-    """A climatology at the sites (site, harmonic) and at the cells (harmonic, latitude, longitude), and its error."""
+    """A climatology at the sites (site, harmonic) and at the cells (harmonic, latitude, longitude), and its error.
+
+    ``gain`` (parameter, parameter) times what the records say of their departures from the atlas, ``projected`` (known
+    site, time, harmonic) times the departures, are the weights of the correction.
+    """
 
     at_sites: Array
     at_cells: Array
@@ -54,6 +58,8 @@ class Climatology:
     known: NDArray[np.intp]
     information: Array
     prior_sd: Array
+    gain: Array
+    projected: Array
 
     def sites_at(self, time: NDArray[np.datetime64]) -> Array:
         """Return the isotherm depth at the sites, m, (time, site)."""
@@ -115,6 +121,8 @@ def estimate_climatology(
         known=known,
         information=information,
         prior_sd=prior_sd,
+        gain=solved[:, 1:].T,
+        projected=_projected(records, known),
     )
 
 
@@ -133,9 +141,7 @@ def _summaries(
     """
     design = harmonic_design(year_fraction(records.time))
     present = np.isfinite(records.values[:, known])
-    count = present.sum(axis=0)
-    # (site, time, harmonic)
-    projected = np.where(present.T[..., None], design, 0.0) / np.maximum(count, 1)[:, None, None]
+    projected = _projected(records, known)
     residual = np.where(present, records.values[:, known] - design @ atlas_sites[known].T, 0.0)
     departures = np.einsum("sth,ts->sh", projected, residual).ravel()
     blocks = np.einsum("sth,tk->shk", projected, design)
@@ -143,11 +149,18 @@ def _summaries(
     return np.asarray(departures, dtype=np.float64), _block_diagonal(blocks), errors
 
 
+def _projected(records: Records, known: NDArray[np.intp]) -> Array:
+    """Return X / n of each site, 0 where a month is missing, (known site, time, harmonic)."""
+    present = np.isfinite(records.values[:, known])
+    design = harmonic_design(year_fraction(records.time))
+    return np.where(present.T[..., None], design, 0.0) / np.maximum(present.sum(axis=0), 1)[:, None, None]
+
+
 def _record_error(records: Records, known: NDArray[np.intp], projected: Array, settings: SectionSettings) -> Array:
     places = records.latitude[known], records.longitude[known]
     signal = Gaussian(settings.length_longitude, settings.length_latitude).between(*places, *places)
-    memory = _memory(records.time, settings.climatology)
-    smoothed = np.einsum("tu,suk->stk", memory, projected, optimize=True)
+    together = memory(records.time, settings.climatology)
+    smoothed = np.einsum("tu,suk->stk", together, projected, optimize=True)
     shared = np.einsum("sth,ptk->shpk", projected, smoothed, optimize=True)
     shared *= settings.signal_sd**2 * signal[:, None, :, None]
     own = np.zeros((known.size, len(HARMONICS), len(HARMONICS)))
@@ -168,7 +181,7 @@ def _own_error(records: Records, site: int, projected: Array) -> Array:
     return np.asarray(total)
 
 
-def _memory(time: NDArray[np.datetime64], prior: ClimatologyPriorSettings) -> Array:
+def memory(time: NDArray[np.datetime64], prior: ClimatologyPriorSettings) -> Array:
     """Return the correlation of interannual anomalies in time."""
     months = (time - time[0]) / np.timedelta64(1, "D") / 30.4375
     return np.exp(-np.abs(months[:, None] - months) / prior.decorrelation_months)

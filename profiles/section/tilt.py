@@ -49,6 +49,12 @@ def section_weights(field: xr.Dataset | xr.DataArray) -> Array:
     return weights
 
 
+def tilt_weights(latitude: Array, longitude: Array, window: tuple[float, float] = TILT_WINDOW) -> Array:
+    """Return the weights whose sum with a map of depths is its slope along the equator, (latitude, longitude)."""
+    band = band_weights(latitude, longitude)
+    return np.nan_to_num(band) * _on_sea(longitude, np.isfinite(band[0]), window)
+
+
 def thermocline_slope(field: xr.Dataset | xr.DataArray, *, window: tuple[float, float] = TILT_WINDOW) -> xr.Dataset:
     """Return the slope of the thermocline along the equator.
 
@@ -81,10 +87,7 @@ def thermocline_slope(field: xr.Dataset | xr.DataArray, *, window: tuple[float, 
         )
     check_longitude(_longitude(field))
     if isinstance(field, xr.Dataset):
-        band = band_weights(field["latitude"].values, field["longitude"].values)
-        sea = np.isfinite(band[0])
-        weights = _on_sea(field["longitude"].values, sea, window)
-        cells = np.nan_to_num(band) * weights
+        cells = tilt_weights(field["latitude"].values, field["longitude"].values, window)
         slope = xr.dot(field["mean"], _like(cells, field), dim=("latitude", "longitude"))
         error = slope.copy(data=functional_error(field, cells[None])[:, 0])
         reason = None

@@ -11,6 +11,7 @@ from profiles.statistics.autoregression import (
 from profiles.statistics.bootstrap import block_length, block_weights, weighted_correlation
 from profiles.statistics.harmonics import HARMONICS, harmonic_design, year_fraction
 from profiles.statistics.pairs import PairedStatistics, paired_statistics
+from profiles.statistics.persistence import effective_count, lag_one
 from profiles.statistics.spread import SpreadSurvey, robust_sd
 
 __all__ = [
@@ -22,8 +23,10 @@ __all__ = [
     "block_weights",
     "burg_reflection",
     "coefficients_of",
+    "effective_count",
     "fit_reflection",
     "harmonic_design",
+    "lag_one",
     "paired_statistics",
     "robust_sd",
     "simulate",

@@ -124,6 +124,8 @@ def _define_variable(file: netCDF4.Dataset, data: xr.DataArray, auxiliary: list[
     if compress:
         # By default each variable keeps the 16 MB that were written last, which a record in order never comes back to.
         variable.set_var_chunk_cache(size=_CHUNKS_KEPT * math.prod(variable.chunking()) * np.dtype(dtype).itemsize)
+    if "scale_factor" in attributes:
+        variable.set_auto_maskandscale(False)  # what is packed comes packed, missing values included
 
 
 def _is_text(data: xr.DataArray) -> bool:

@@ -224,3 +224,12 @@ def test_a_missing_file_names_the_stage_to_run(tmp_path: Path) -> None:
 def test_attributes_with_non_ascii_text_come_back(tmp_path: Path) -> None:
     write_dataset(tmp_path / "chain.nc", chain(), ATTRIBUTES | {"summary": "Gemäß 20 °C, 黒潮"})
     assert read(tmp_path / "chain.nc").attrs["summary"] == "Gemäß 20 °C, 黒潮"
+
+
+def test_what_is_packed_is_written_as_it_comes(tmp_path: Path) -> None:
+    # 2 steps of 0.5 above 10, and a missing value.
+    packed = {"scale_factor": 0.5, "add_offset": 10.0, "missing_value": np.int16(-1)}
+    write_dataset(tmp_path / "packed.nc", xr.Dataset({"packed": ("n", np.array([2, -1], np.int16), packed)}), {})
+    with netCDF4.Dataset(tmp_path / "packed.nc") as file:
+        assert file["packed"][0] == 11.0
+        assert np.ma.getmaskarray(file["packed"][...]).tolist() == [False, True]
