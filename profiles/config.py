@@ -260,7 +260,7 @@ class ValidationSettings(Settings):
     )
     averaging_days: NotNegative = Field(
         0.0,
-        description="days that a value of the model is the mean of; 0: from its time bounds, else from its steps (ours)",
+        description="days that a value of the model is the mean of; 0: from its time bounds, else from steps (ours)",
     )
     top_reach: NotNegative = Field(
         15.0, description="m; a model's shallowest level no deeper than this stands for the water above it (ours)"
