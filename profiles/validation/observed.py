@@ -10,6 +10,7 @@ from typing import Any
 import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
+from pydantic import ValidationError
 
 from profiles import store
 from profiles.column import columns_of, isotherm_depth_error, steepest_gradient_depth
@@ -73,14 +74,35 @@ def open_array(folder: str | Path) -> Array:
             expected="a file per mooring",
             advice="run it at least until the stage column",
         )
+    column, section, validation = _settings_of(configuration, path)
     return Array(
         folder=path,
         name=configuration["array"]["name"],
-        column=ColumnSettings.model_validate(configuration["column"]),
-        section=SectionSettings.model_validate(configuration["section"]),
-        validation=ValidationSettings.model_validate(configuration.get("validation", {})),
+        column=column,
+        section=section,
+        validation=validation,
         moorings=present,
     )
+
+
+def _settings_of(
+    configuration: dict[str, Any], path: Path
+) -> tuple[ColumnSettings, SectionSettings, ValidationSettings]:
+    """Return the settings that a run was made with; raise DataError where this version does not know them."""
+    try:
+        return (
+            ColumnSettings.model_validate(configuration["column"]),
+            SectionSettings.model_validate(configuration["section"]),
+            ValidationSettings.model_validate(configuration.get("validation", {})),
+        )
+    except ValidationError as error:
+        keys = ", ".join(".".join(str(part) for part in detail["loc"]) for detail in error.errors())
+        raise DataError(
+            "the run was made with settings that this version does not know",
+            where=str(path / "run.json"),
+            found=keys,
+            advice="run the array again with this version: thermotilt run CONFIG --out FOLDER",
+        ) from None
 
 
 @dataclass(frozen=True)
