@@ -383,7 +383,7 @@ def _blocks(count: int, heights: tuple[float, float]) -> tuple[Figure, list[tupl
     """Return a figure with two panels, one above the other, for each of ``count`` models, two models abreast."""
     abreast = min(count, 2)
     rows = -(-count // abreast)
-    left, right, between, top, foot, head, gap, key = 0.95, 0.2, 0.55, 0.3, 0.55, 0.4, 0.12, 0.75
+    left, right, between, top, foot, head, gap, key = 0.95, 0.3, 0.55, 0.3, 0.55, 0.4, 0.12, 0.75
     row_height = sum(heights) + gap + head + foot
     size = style.WIDTH, top + rows * row_height + key
     width = (size[0] - left - right - between * (abreast - 1)) / abreast

@@ -160,7 +160,7 @@ def test_the_difference_is_split_into_what_is_the_models_and_what_is_hidden(one:
     assert in_words(tilt) == [
         "tilt: +1.00 m per 1000 km (+0.51 to +1.49): flatter than the array",
         "full model less map +1.50 ± 0.78: +1.00 where the array looked, +0.50 hidden by the sampling; "
-        "67 % is the model's as seen",
+        "67 % of it seen by the array",
     ]
     # In 1e14 m3: as seen 0.1 with 1.96 x 0.1, whole 0.2 with 1.96 x 0.3: neither can be told, and no share is given.
     assert np.isnan(volume.share)
