@@ -47,8 +47,9 @@ class ModelFinding:
 
     ``bias`` is the model as seen less the array, ``low`` to ``high`` its 95 % interval. ``difference`` is the full
     model less the array's map, with the half-width of its 95 % interval, ``hidden`` the model as seen less the full
-    model: ``difference = bias - hidden``. ``share`` is the part of the difference that is the model's where the array
-    looked, bias over difference, where the difference itself is told from none. ``observed`` says that the interval is
+    model: ``difference = bias - hidden``. ``share`` is the part of the difference that the array
+    saw, bias over difference, where the difference itself is told from none; the rest is the model's or the map's error
+    away from the moorings, which cannot be told apart. ``observed`` says that the interval is
     of the array's measurement; else it is of the months that happened to be sampled.
     """
 
@@ -165,7 +166,7 @@ def _split(finding: ModelFinding, number: Callable[[float], str]) -> str:
     parts = f"{number(finding.bias)} where the array looked, {number(-finding.hidden)} hidden by the sampling"
     if np.isnan(finding.share):
         return f"{parts}; smaller than the map can tell"
-    return f"{parts}; {100.0 * finding.share:.0f} % is the model's as seen"
+    return f"{parts}; {100.0 * finding.share:.0f} % of it seen by the array"
 
 
 def readings(one: xr.Dataset) -> str:

@@ -37,6 +37,7 @@ PATTERNS = (
     ("warm_water_volume", "total", "s", "warm water volume"),
 )
 _CORRELATIONS = (0.0, 0.2, 0.4, 0.6, 0.7, 0.8, 0.9, 0.95, 0.99)
+_LARGEST = 5.0  # radius that is drawn of an error; a larger one covers all that is of use
 _NEAR = 0.3  # of the array's standard deviation about the array, in the closer view
 
 
@@ -285,8 +286,9 @@ def place_of(sd_ratio: float, correlation: float) -> tuple[float, float]:
 
 def _pattern_net(axis: Axes, reach: float) -> None:
     turn = np.linspace(0.0, np.pi, 181)
-    for radius in np.arange(0.25, reach, 0.25):
-        strong = np.isclose(radius, 1.0)
+    step = 0.25 * np.ceil(reach / 2.5)  # no more than ten rings
+    for radius in (1.0, *np.arange(step, reach, step)):
+        strong = radius == 1.0
         axis.plot(
             radius * np.cos(turn),
             radius * np.sin(turn),
@@ -312,6 +314,7 @@ def _observation(axis: Axes, comparison: xr.Dataset) -> None:
         scores = scores_of(one, quantity, place)
         radius = scores["observation_noise"] / scores["array_sd"] if scores["array_sd"] > 0.0 else np.nan
         if np.isfinite(radius):
+            radius = min(radius, _LARGEST)
             axis.add_patch(Circle((1.0, 0.0), radius, facecolor=style.LACKING, alpha=0.16, linewidth=0, zorder=2))
             turn = np.linspace(np.pi, 0.0, 60)
             axis.plot(1.0 + radius * np.cos(turn), radius * np.sin(turn), ":", color=style.LACKING, linewidth=1.2)
@@ -380,7 +383,7 @@ def _blocks(count: int, heights: tuple[float, float]) -> tuple[Figure, list[tupl
     """Return a figure with two panels, one above the other, for each of ``count`` models, two models abreast."""
     abreast = min(count, 2)
     rows = -(-count // abreast)
-    left, right, between, top, foot, head, gap, key = 0.95, 0.2, 0.55, 0.3, 0.55, 0.4, 0.12, 0.75
+    left, right, between, top, foot, head, gap, key = 0.95, 0.3, 0.55, 0.3, 0.55, 0.4, 0.12, 0.75
     row_height = sum(heights) + gap + head + foot
     size = style.WIDTH, top + rows * row_height + key
     width = (size[0] - left - right - between * (abreast - 1)) / abreast

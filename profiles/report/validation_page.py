@@ -128,7 +128,7 @@ def _view(one: xr.Dataset) -> ModelView:
 
 def _row(finding: ModelFinding) -> Row:
     def shown(value: float) -> str:
-        return number(value, finding.decimals)
+        return number(round(value, finding.decimals) + 0.0, finding.decimals)  # no minus before a zero
 
     unit = finding.unit.replace("10^14 m3", "10¹⁴ m³")
     bias = f"{shown(finding.bias)} ({shown(finding.low)} to {shown(finding.high)})"

@@ -6,7 +6,7 @@ from dataclasses import dataclass, fields
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy import stats
+from scipy import special  # scipy.stats would take 40 MB in every worker
 
 from profiles.statistics import effective_count, harmonic_design, lag_one, year_fraction
 
@@ -114,7 +114,7 @@ def _sampling_error(difference: Floats) -> Interval:
     if effective <= 2.0:
         return np.nan, np.nan
     error = float(np.nanstd(difference, ddof=1) / np.sqrt(effective))
-    return error, float(stats.t.ppf(1.0 - _TAIL, effective - 1.0) * error)
+    return error, float(special.stdtrit(effective - 1.0, 1.0 - _TAIL) * error)
 
 
 def _correlation(model: Floats, array: Floats) -> float:
@@ -138,7 +138,7 @@ def _rms_interval(rms: float, effective: float) -> Interval:
     if effective <= 2.0:  # fewer tell nothing, and the upper end runs to infinity
         return np.nan, np.nan
     freedom = effective - 1.0
-    low, high = (float(rms * np.sqrt(freedom / stats.chi2.ppf(tail, freedom))) for tail in (1.0 - _TAIL, _TAIL))
+    low, high = (float(rms * np.sqrt(freedom / special.chdtri(freedom, 1.0 - tail))) for tail in (1.0 - _TAIL, _TAIL))
     return low, high
 
 
