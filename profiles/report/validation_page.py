@@ -30,8 +30,8 @@ CAPTIONS: Mapping[str, Caption] = {
         "Section along the equator",
         "Mean depth of the isotherm, 2.5°S-2.5°N, over the months that array and model both have; dotted: where the "
         "temperature of the full model falls most steeply, which stays where it is in a model that is only too "
-        f"warm. Diamonds: bias at the lines of moorings with 95 % intervals. {_SPLIT} Bands: the mean half-width of the "
-        "monthly intervals, which the interval of an average does not exceed.",
+        f"warm. Diamonds: bias at the lines of moorings with 95 % intervals. {_SPLIT} Bands: the mean half-width of "
+        "the monthly intervals, which the interval of an average does not exceed.",
         "Mean depth of the isotherm along the equator of array and model, and their difference with what the array "
         "cannot tell.",
     ),
