@@ -270,7 +270,7 @@ class ValidationSettings(Settings):
     )
     deepest: Positive = Field(650.0, description="m; levels of fixed depth below this are not read (ours)")
     block_megabytes: Positive = Field(
-        24.0, description="MB of a model's temperature that a worker holds at a time (ours)"
+        12.0, description="MB of a model's temperature that a worker holds at a time (ours)"
     )
     shared_lean: Share = Field(
         0.3,

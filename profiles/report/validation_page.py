@@ -29,9 +29,9 @@ CAPTIONS: Mapping[str, Caption] = {
     "validation_section": Caption(
         "Section along the equator",
         "Mean depth of the isotherm, 2.5°S-2.5°N, over the months that array and model both have; dotted: where the "
-        "temperature of the full model falls most steeply, which a warm or cold model leaves in place. Diamonds: bias "
-        f"at the lines of moorings with 95 % intervals. {_SPLIT} Bands: the mean half-width of the monthly intervals, "
-        "which the interval of an average does not exceed.",
+        "temperature of the full model falls most steeply, which stays where it is in a model that is only too "
+        f"warm. Diamonds: bias at the lines of moorings with 95 % intervals. {_SPLIT} Bands: the mean half-width of "
+        "the monthly intervals, which the interval of an average does not exceed.",
         "Mean depth of the isotherm along the equator of array and model, and their difference with what the array "
         "cannot tell.",
     ),
@@ -131,7 +131,8 @@ def _row(finding: ModelFinding) -> Row:
         return number(round(value, finding.decimals) + 0.0, finding.decimals)  # no minus before a zero
 
     unit = finding.unit.replace("10^14 m3", "10¹⁴ m³")
-    bias = f"{shown(finding.bias)} ({shown(finding.low)} to {shown(finding.high)})"
+    basis = "" if finding.observed else ", of sampling"
+    bias = f"{shown(finding.bias)} ({shown(finding.low)} to {shown(finding.high)}{basis})"
     known = np.isfinite(finding.difference)
     return Row(
         label=f"{finding.label[0].upper()}{finding.label[1:]} ({unit})",

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
 
@@ -14,7 +15,7 @@ from profiles.atlas import annual_salinity
 from profiles.config import ValidationSettings
 from profiles.errors import DataError
 from profiles.ingest.units import CELSIUS, METRE, depth_of_pressure, is_pressure
-from profiles.validation.conversion import ABSOLUTE, IN_SITU, PRACTICAL, absolute_salinity, in_situ, pressure_at
+from profiles.validation.conversion import IN_SITU, PRACTICAL, absolute_salinity, in_situ, pressure_at
 from profiles.validation.model import DIMS, Model
 from profiles.validation.sources import UNREADABLE
 
@@ -142,13 +143,13 @@ def metres(values: Floats, model: Model, latitude: float) -> Floats:
 
 
 class Reader:
-    """Reads blocks of a model's waters. What never changes is read once."""
+    """Reads blocks of a model's waters. What is the same at all times is read and computed once."""
 
     def __init__(self, model: Model, box: Box) -> None:
         self.model = model
         self.box = box
-        self._still_depth: Floats | None = None
-        self._still_salinity: Floats | None = None
+        self._still: dict[str, Floats] = {}
+        self._held: dict[str, NDArray[Any]] = {}
 
     def read(self, times: slice) -> Water:
         """Read the values of some times.
@@ -158,65 +159,94 @@ class Reader:
         DataError
             Where the file breaks off.
         """
-        temperature = self._values(self.model.temperature, times)
+        temperature = self._values("temperature", times)
         depth = self._depth(times)
         warm = _celsius(temperature, self.model.units)
         if self.model.kind != IN_SITU:
             self._convert(warm, depth, times)
         return Water(warm, depth)
 
-    def _values(self, data: xr.DataArray, times: slice) -> NDArray[Any]:
-        import dask
+    def loaded(self, times: slice) -> Reader:
+        """Return a reader of some times alone, which are held in memory as the file has them and count from 0."""
+        part = Reader(self.model, self.box)
+        part._still = self._still
+        part._held = {role: self._values(role, times) for role in self._changing()}
+        return part
 
+    def _changing(self) -> list[str]:
+        """Return what has to be read at every time."""
+        model = self.model
+        salinity = ["salinity"] if model.salinity is not None and model.kind != IN_SITU else []
+        return ["temperature", *salinity, *(["depth"] if "time" in model.depth.values.dims else [])]
+
+    def _values(self, role: str, times: slice) -> NDArray[Any]:
+        """Return a variable of the box, (time, row, column, level), of length 1 along what it does not depend on."""
+        if role in self._held:
+            return self._held[role][times]
+        model = self.model
+        data = model.depth.values if role == "depth" else model.salinity if role == "salinity" else model.temperature
+        if data is None:
+            raise ValueError(f"the model has no {role}")
         chosen = {"time": times, "row": self.box.rows, "level": self.box.levels}
         parts = []
         for run in self.box.columns:
             index = {dim: part for dim, part in (chosen | {"column": run}).items() if dim in data.dims}
-            try:
-                with dask.config.set(scheduler="synchronous"):
-                    loaded = data.isel(index).load()
-            except UNREADABLE as error:
-                raise DataError(
-                    "the model's file breaks off",
-                    where=f"{self.model.name}, {data.name}",
-                    expected="a whole file",
-                    found=str(error).splitlines()[0] if str(error) else type(error).__name__,
-                    advice="fetch the file again",
-                ) from error
-            whole = loaded.expand_dims([dim for dim in DIMS if dim not in loaded.dims])
+            whole = self._load(data.isel(index))
+            whole = whole.expand_dims([dim for dim in DIMS if dim not in whole.dims])
             parts.append(whole.transpose("time", "row", "column", "level").values)
         values = parts[0] if len(parts) == 1 or "column" not in data.dims else np.concatenate(parts, axis=2)
         return values[..., ::-1] if self.box.flipped else values
 
+    def _load(self, data: xr.DataArray) -> xr.DataArray:
+        import dask
+
+        try:
+            with dask.config.set(scheduler="synchronous"):
+                return data.load()
+        except UNREADABLE as error:
+            raise DataError(
+                "the model's file breaks off",
+                where=f"{self.model.name}, {data.name}",
+                expected="a whole file",
+                found=str(error).splitlines()[0] if str(error) else type(error).__name__,
+                advice="fetch the file again",
+            ) from error
+
     def _depth(self, times: slice) -> Floats:
-        data = self.model.depth.values
-        if "time" not in data.dims and self._still_depth is not None:
-            return self._still_depth
-        values = np.asarray(self._values(data, times), dtype=np.float64)
-        depth = metres(values, self.model, 0.0)
-        self._still_depth = depth
-        return depth
+        if "time" in self.model.depth.values.dims:
+            return metres(np.asarray(self._values("depth", times), dtype=np.float64), self.model, 0.0)
+        return self._once(
+            "depth", lambda: metres(np.asarray(self._values("depth", times), np.float64), self.model, 0.0)
+        )
+
+    def _once(self, name: str, make: Callable[[], Floats]) -> Floats:
+        if name not in self._still:
+            self._still[name] = make()
+        return self._still[name]
 
     def _convert(self, warm: NDArray[Any], depth: Floats, times: slice) -> None:
         """Turn ``warm`` into in situ temperature, time by time."""
-        model = self.model
-        own = None if model.salinity is None else self._values(model.salinity, times)
-        latitude, longitude = self._positions()
+        own = None if self.model.salinity is None else self._values("salinity", times)
         for number in range(warm.shape[0]):
             here = depth[number if depth.shape[0] > 1 else 0]
-            pressure = pressure_at(here, latitude)
-            if own is None:
-                if self._still_salinity is None:
-                    salinity = atlas_salinity(here, latitude[..., 0], longitude[..., 0])
-                    self._still_salinity = absolute_salinity(salinity, PRACTICAL, pressure, longitude, latitude)
-                salinity = self._still_salinity
-            else:
-                practical = np.asarray(own[number], dtype=np.float64)
-                kind = model.salinity_kind
-                salinity = (
-                    practical if kind == ABSOLUTE else absolute_salinity(practical, kind, pressure, longitude, latitude)
-                )
-            warm[number] = in_situ(np.asarray(warm[number], dtype=np.float64), model.kind, salinity, pressure)
+            salinity, pressure = self._surroundings(here, None if own is None else own[number])
+            warm[number] = in_situ(np.asarray(warm[number], dtype=np.float64), self.model.kind, salinity, pressure)
+
+    def _surroundings(self, depth: Floats, salinity: NDArray[Any] | None) -> tuple[Floats, Floats]:
+        """Return absolute salinity and pressure, (row, column, level), at one time."""
+        latitude, longitude = self._positions()
+        still = "time" not in self.model.depth.values.dims
+        kept = self._once if still else _anew
+        pressure = kept("pressure", lambda: pressure_at(depth, latitude))
+        if salinity is not None:
+            given = np.asarray(salinity, dtype=np.float64)
+            return absolute_salinity(given, self.model.salinity_kind, pressure, longitude, latitude), pressure
+
+        def from_atlas() -> Floats:
+            practical = atlas_salinity(depth, latitude[..., 0], longitude[..., 0])
+            return absolute_salinity(practical, PRACTICAL, pressure, longitude, latitude)
+
+        return kept("salinity", from_atlas), pressure
 
     def _positions(self) -> tuple[Floats, Floats]:
         """Return latitude and longitude, (row, column, 1)."""
@@ -224,6 +254,10 @@ class Reader:
             return self.box.latitude[..., None], self.box.longitude[..., None] % 360.0
         latitude, longitude = np.meshgrid(self.box.latitude, self.box.longitude, indexing="ij")
         return latitude[..., None], longitude[..., None]
+
+
+def _anew(name: str, make: Callable[[], Floats]) -> Floats:
+    return make()
 
 
 def _celsius(values: NDArray[Any], units: str) -> NDArray[Any]:

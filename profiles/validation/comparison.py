@@ -21,7 +21,7 @@ from profiles.section.tilt import section_weights, tilt_weights
 from profiles.validation.blocks import Job, blocks_of, run_blocks, wet_points
 from profiles.validation.box import Reader, box_of
 from profiles.validation.calendars import DAILY, ModelTime
-from profiles.validation.full_model import QUANTITIES, MonthlySums, ToCells, least_steps
+from profiles.validation.full_model import QUANTITIES, ToCells, least_steps
 from profiles.validation.model import Model, open_model
 from profiles.validation.observed import LEAN, MEASURED, Array, Sensors, open_array, read_sensors
 from profiles.validation.score_table import score_table
@@ -107,11 +107,12 @@ def _compare(model: Source | Model, finished: Array, settings: ValidationSetting
         box.latitude, box.longitude, wet, sensors.latitude, sensors.longitude, nearest_wet=settings.nearest_wet
     )
     _check_reached(opened, where, settings)
-    job = Job(reader, where, finished.column, settings)
+    least = least_steps(opened.time.days, finished.section.means)
+    job = Job(reader, where, ToCells.of(box, wet), least, finished.column, settings)
     blocks = blocks_of(opened, box, wanted, settings.block_megabytes)
-    seen, sums = _joined(run_blocks(job, blocks, sensors.sensor_depth, wanted.start, scheduler))
+    seen, cells = run_blocks(job, blocks, sensors.sensor_depth, wanted.start, scheduler)
     sides = both_sides(finished, sensors, seen, sensors.time)
-    full = _full_fields(sums, ToCells.of(box, wet), sides.array["time"].values, opened.time, finished)
+    full = _full_fields(cells, sides.array["time"].values)
     return _assemble(opened, finished, sensors, where, sides, full, settings)
 
 
@@ -159,24 +160,12 @@ def _check_reached(model: Model, where: Stencil, settings: ValidationSettings) -
         )
 
 
-def _joined(parts: list[Any]) -> tuple[Floats, MonthlySums]:
-    sums = MonthlySums()
-    for part in parts:
-        sums.merge(part.sums)
-    return np.concatenate([part.seen for part in parts]), sums
-
-
-def _full_fields(
-    sums: MonthlySums, to_cells: ToCells, times: NDArray[np.datetime64], time: ModelTime, array: Array
-) -> xr.Dataset:
+def _full_fields(cells: Mapping[np.datetime64, Mapping[str, Floats]], times: NDArray[np.datetime64]) -> xr.Dataset:
     """Return the monthly means of what was read off the model's own columns, on the cells of the array's map."""
     rows, columns = array_grid()
-    least = least_steps(time.days, array.section.means)
-    fields = {}
-    for name in QUANTITIES:
-        means = [sums.mean(name, month, least) for month in times.astype("datetime64[M]")]
-        missing = np.full((rows.size, columns.size), np.nan)
-        fields[name] = np.stack([missing if mean is None else to_cells(mean) for mean in means])
+    missing = np.full((rows.size, columns.size), np.nan)
+    months = times.astype("datetime64[M]")
+    fields = {name: np.stack([cells.get(month, {}).get(name, missing) for month in months]) for name in QUANTITIES}
     dims = ("time", "latitude", "longitude")
     return xr.Dataset(
         {name: (dims, values) for name, values in fields.items()},

@@ -80,11 +80,6 @@ class MonthlySums:
             present = np.isfinite(part)
             self._put((name, one), np.where(present, part, 0.0).sum(axis=0, dtype=np.float64), present.sum(axis=0))
 
-    def merge(self, other: MonthlySums) -> None:
-        """Add what another block counted."""
-        for key, (total, count) in other.totals.items():
-            self._put(key, total, count)
-
     def _put(self, key: tuple[str, np.datetime64], total: Floats, count: NDArray[Any]) -> None:
         before = self.totals.get(key)
         whole = (total, count.astype(np.int32)) if before is None else (before[0] + total, before[1] + count)
