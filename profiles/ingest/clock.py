@@ -19,6 +19,7 @@ from profiles.ingest.stamps import NOT_DECIDED, as_matrix, compiled, read_stamps
 from profiles.ingest.wording import nearest
 
 ISO_8601 = "iso8601"
+MOST_LETTERS = 100  # of a stamp (ours)
 
 # A stamp that itself says how far it is from UTC: Z, or an offset after the time of day.
 _WITH_OFFSET = re.compile(r"[Zz]$|[Tt ].*[+-][0-9]{2}(?::?[0-9]{2})?$")
@@ -130,7 +131,7 @@ def finished(
 def _read_slowly(texts: NDArray[np.object_], time_format: str) -> Times:
     is_iso = time_format == ISO_8601
     plausible = _ISO_STAMP.fullmatch if is_iso else _plausible(time_format)
-    guarded = [text if plausible(text) else None for text in texts]
+    guarded = [text if len(text) <= MOST_LETTERS and plausible(text) else None for text in texts]
     read = pd.to_datetime(
         pd.Series(guarded, dtype=object),
         format="ISO8601" if is_iso else time_format,
@@ -178,7 +179,9 @@ def _in_range(clock: Times) -> Times:
 def _with_offset(texts: NDArray[np.object_], time_format: str) -> NDArray[np.bool_]:
     if time_format != ISO_8601:
         return np.full(texts.size, "%z" in time_format or "%Z" in time_format)
-    return np.fromiter((_WITH_OFFSET.search(text) is not None for text in texts), bool, texts.size)
+    # The search takes the square of the length.
+    found = (len(text) <= MOST_LETTERS and _WITH_OFFSET.search(text) is not None for text in texts)
+    return np.fromiter(found, bool, texts.size)
 
 
 def clock_of_numbers(numbers: NDArray[np.float64], units: str) -> Times:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import difflib
 from collections.abc import Iterable
 
+NAME_LENGTH = 80  # letters of a name that a message shows
 TEXT_LENGTH = 200  # characters of a row that a quarantine entry shows
 
 
@@ -17,7 +18,7 @@ def nearest(name: str, known: Iterable[str]) -> str:
 
 def listed(names: Iterable[str], most: int = 12) -> str:
     """Return names joined by commas, the rest counted."""
-    shown = [repr(name) for name in names]
+    shown = [repr(name if len(name) <= NAME_LENGTH else f"{name[:NAME_LENGTH]}...") for name in names]
     rest = f" and {len(shown) - most} more" if len(shown) > most else ""
     return ", ".join(shown[:most]) + rest
 

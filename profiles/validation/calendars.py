@@ -22,7 +22,7 @@ Times = NDArray[np.datetime64]
 DAILY, SEVERAL_DAYS, MONTHLY = "daily", "several days", "monthly"
 _SAME_DATES = ("standard", "gregorian", "proleptic_gregorian")
 _DATES_BY_NAME = ("noleap", "365_day", "all_leap", "366_day", "julian")
-_YEARS = 1700, 2250
+_YEARS = 1678, 2261
 _LONGEST_DAY, _SHORTEST_MONTH, _LONGEST_MONTH = 1.5, 27.0, 32.0  # days
 
 
@@ -169,7 +169,7 @@ def _check_years(limits: list[tuple[Any, Any]], where: str) -> None:
             where=where,
             expected=f"years {_YEARS[0]} to {_YEARS[1]}, those of the array's record",
             found=f"{first} to {last}" if first != last else f"{first}",
-            advice="give the times the array's years, if that is what they stand for",
+            advice="leave out the others, or give the times the years that they stand for",
         )
 
 

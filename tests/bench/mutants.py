@@ -13,6 +13,7 @@ says, to tell so. Any other exception is a fault.
 from __future__ import annotations
 
 import argparse
+import faulthandler
 import gzip
 import io
 import re
@@ -39,6 +40,7 @@ BLANKS = b" \t\x0b\x0c\r\n"
 NUMBER = re.compile(r"[+-]?(\d+(\.\d*)?|\.\d+)([eE][+-]?\d+)?", re.ASCII)
 LARGEST = float(np.finfo(np.float32).max)
 LONG_LINE = 1_000_000
+LONGEST_WAIT = 120  # s for one mutant; then the program stops and says where it was
 MOST_CELLS = 4096  # of a line; more columns than a delivery has
 
 
@@ -898,7 +900,9 @@ def main() -> int:
     by_damage: dict[str, Counter[str]] = {name: Counter() for name in MUTATIONS}
     start = time.perf_counter()
     try:
+        faulthandler.dump_traceback_later(LONGEST_WAIT, exit=True)
         for name, ways, outcome in trials(arguments.mutants, arguments.seed, arguments.records):
+            faulthandler.dump_traceback_later(LONGEST_WAIT, exit=True)
             by_kind[name][outcome] += 1
             for way in set(ways):
                 by_damage[way][outcome] += 1

@@ -148,6 +148,12 @@ def test_cells_are_joined_by_a_blank_and_long_ones_are_left():
     assert lengths[1] == 0
 
 
+def test_a_stamp_of_a_million_letters_is_told_at_once():
+    for text in ("2031 " + " " * 1_000_000, "2031-01-01T" + "+1" * 500_000, "9" * 1_000_000):
+        for time_format in ("iso8601", "%Y-%m-%d", "%d %b %Y %H:%M", "%Y%m%d %Z"):
+            assert np.isnat(time_of(text, time_format))
+
+
 # ------------------------------------------------------------------------------------------------------------
 # The hour that the end of summer time repeats, by order: America/New_York, 2 November 2031, 01:00 to 02:00
 

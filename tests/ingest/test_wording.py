@@ -15,3 +15,7 @@ def test_rows_are_made_fit_to_print():
     assert printable(raw) == "a\\x00b\\xffc\td"
     assert len(printable("\x00" * 500)) == 200
     assert printable("20 °C") == "20 °C"
+
+
+def test_long_names_are_cut():
+    assert len(listed(["x" * 1_000_000])) < 100

@@ -22,7 +22,7 @@ from profiles.drill.array import SITES, Site
 REFERENCE = Path(__file__).parents[1] / "reference"
 DAYS = np.datetime64("2031-01-01") + np.arange(365)
 MIDDLES = np.arange("2031-01", "2032-01", dtype="datetime64[M]").astype("datetime64[ns]") + np.timedelta64(14, "D")
-CHOSEN = tuple(site for site in SITES if 170.0 < site.longitude < 255.0 and abs(site.latitude) < 3.0)
+CHOSEN = tuple(site for site in SITES if site.longitude in (201.0, 227.0, 253.0) and abs(site.latitude) < 3.0)
 METRES = {"units": "m", "positive": "down", "standard_name": "depth"}
 
 Fields = dict[str, xr.DataArray]
@@ -146,7 +146,7 @@ def test_changing_sides_changes_the_sign(compared: dict[str, xr.Dataset]) -> Non
         size = float(np.sqrt((first**2).mean()))
         # Not to rounding: each month is mapped with the errors of whichever atlas the array stands in, and in October
         # those of 1994 are several times as large at 227E, where its profile bends at 20 °C.
-        assert 0.0 < float(np.sqrt(((first + second) ** 2).mean())) < 0.05 * size, name
+        assert 0.0 < float(np.sqrt(((first + second) ** 2).mean())) < 0.1 * size, name
 
 
 def test_the_full_atlas_is_what_its_own_columns_give(compared: dict[str, xr.Dataset], atlases: Fields) -> None:

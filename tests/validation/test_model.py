@@ -188,6 +188,11 @@ def test_a_level_that_is_missing_or_out_of_order_is_refused(levels: list[float])
     )
 
 
+def test_one_level_of_unknown_depth_is_refused() -> None:
+    unknown = model().isel(lev=[1]).assign_coords(lev=("lev", [np.nan], model()["lev"].attrs))
+    refused(unknown, r"levels are not in order, or one is missing")
+
+
 def test_levels_that_move_are_found_before_those_that_are_nominal() -> None:
     moving = model()
     depth = moving["temp"].copy(data=moving["temp"] * 0.0 + LEVELS[:, None, None] + np.arange(3.0)[:, None, None, None])
