@@ -85,8 +85,6 @@ def split(text: str, layout: dict) -> list[str] | None:
             return None
         return [text[start - 1 : stop].strip(" \t\x0b\x0c") for start, stop in layout["fixed"].values()]
     delimiter = layout.get("delimiter", ",")
-    if delimiter != "whitespace" and text.count(delimiter) > MOST_CELLS:
-        return None
     if '"' not in text:
         return re.findall(r"[^ \t\x0b\x0c]+", text) if delimiter == "whitespace" else [
             cell.strip(" \t\x0b\x0c") for cell in text.split(delimiter)
@@ -104,7 +102,7 @@ def split(text: str, layout: dict) -> list[str] | None:
         if match is None:
             return None
         cells.append(match.group().strip(" \t\x0b\x0c"))
-        if match.end() == len(text):
+        if match.end() == len(text) or len(cells) > MOST_CELLS:
             break
         gap = re.compile(between).match(text, match.end())
         if gap is None:
