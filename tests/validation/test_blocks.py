@@ -109,9 +109,13 @@ def test_what_is_loaded_is_not_converted_twice(monthly_truth: xr.Dataset) -> Non
     potential["temp"].attrs = monthly_truth["temp"].attrs | {"standard_name": "sea_water_potential_temperature"}
     model = open_model(potential)
     reader = Reader(model, box_of(model, *PLACE, SETTINGS))
+    before = potential["temp"].values.copy()
+    expected = reader.read(slice(2, 4)).temperature
     held = reader.loaded(slice(1, 4))
     for _ in range(2):
-        np.testing.assert_array_equal(held.read(slice(1, 3)).temperature, reader.read(slice(2, 4)).temperature)
+        np.testing.assert_array_equal(held.read(slice(1, 3)).temperature, expected)
+    assert np.abs(expected - before[2:4].transpose(0, 2, 3, 1)[..., : expected.shape[-1]]).max() > 0.01
+    np.testing.assert_array_equal(potential["temp"].values, before)  # the caller's own dataset
 
 
 def test_pieces_of_the_file_make_no_difference(truth: xr.Dataset, perfect: Path) -> None:
