@@ -247,7 +247,7 @@ def test_help_lists_the_commands_and_imports_nothing_heavy() -> None:
     )
     done = subprocess.run([sys.executable, "-c", script], capture_output=True, text=True, check=True)
     assert "heavy: []" in done.stdout
-    for command in ("run", "check", "precursor"):
+    for command in ("draft", "check", "run", "precursor", "validate"):
         assert f"\n  {command} " in done.stdout
 
 

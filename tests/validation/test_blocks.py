@@ -11,11 +11,13 @@ import pytest
 import xarray as xr
 
 from profiles import compare_model
-from profiles.config import ValidationSettings
+from profiles.config import ColumnSettings, ValidationSettings
 from profiles.errors import DataError
 from profiles.validation import Model, open_model
-from profiles.validation.blocks import blocks_of, reads_of, values_of
+from profiles.validation.blocks import Job, blocks_of, reads_of, values_of, wet_points
 from profiles.validation.box import Box, Reader, box_of
+from profiles.validation.full_model import ToCells
+from profiles.validation.stencils import stencil
 
 SETTINGS = ValidationSettings()
 PLACE = np.array([0.0]), np.array([200.0])
@@ -118,6 +120,18 @@ def test_what_is_loaded_is_not_converted_twice(monthly_truth: xr.Dataset) -> Non
     np.testing.assert_array_equal(potential["temp"].values, before)  # the caller's own dataset
 
 
+def test_a_dataset_that_needs_no_copy_to_be_read_is_left_as_it_was() -> None:
+    """Kelvin, in memory in the order in which blocks are held: what is read could be the caller's own numbers."""
+    dataset = daily(5)
+    order = ("time", "lat", "lon", "lev")
+    kelvin = np.ascontiguousarray(dataset["temp"].transpose(*order).values + np.float32(273.15))
+    dataset["temp"] = (order, kelvin.copy(), {"standard_name": "sea_water_temperature", "units": "K"})
+    model, box = opened(dataset)
+    water = Reader(model, box).read(slice(0, 5))
+    np.testing.assert_allclose(water.temperature, kelvin - 273.15, atol=1e-4)
+    np.testing.assert_array_equal(dataset["temp"].values, kelvin)
+
+
 def test_pieces_of_the_file_make_no_difference(truth: xr.Dataset, perfect: Path) -> None:
     """61 days in pieces of 10, read as one block and as blocks of whole months, read piece by piece."""
     part = truth.isel(time=slice(20, 81)).copy()
@@ -127,6 +141,21 @@ def test_pieces_of_the_file_make_no_difference(truth: xr.Dataset, perfect: Path)
     for name in ("model_isotherm_depth", "seen_thermocline_slope", "full_isotherm_depth"):
         assert whole[name].notnull().any(), name
         np.testing.assert_allclose(small[name], whole[name], rtol=1e-6, err_msg=name)
+
+
+def test_every_piece_is_read_where_the_sensors_were_then() -> None:
+    """Water that cools by 0.05 °C a metre, and sensors that are elsewhere every day: 25 - 0.05 z at each."""
+    dataset = daily(40)
+    dataset["temp"].values[:] = (25.0 - 0.05 * dataset["lev"].values)[None, :, None, None]
+    model, box = opened(dataset)
+    reader = Reader(model, box)
+    wet = wet_points(reader, 0)
+    where = stencil(box.latitude, box.longitude, wet, *PLACE, nearest_wet=100.0)
+    small = ValidationSettings(block_megabytes=7.5 * A_STEP)  # pieces of seven days
+    job = Job(reader, where, ToCells.of(box, wet), 1.0, ColumnSettings(), small)
+    depth = np.random.default_rng(4).uniform(5.0, 300.0, (22, 1, 6))
+    part = job.do(slice(3, 25), depth, own_threads=True)
+    np.testing.assert_allclose(part.seen, 25.0 - 0.05 * depth, atol=1e-4)
 
 
 def test_a_scheduler_makes_no_difference(truth: xr.Dataset, perfect: Path) -> None:
