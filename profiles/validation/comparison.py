@@ -68,7 +68,7 @@ def compare_model(model: Source | Model, array: str | Path, settings: Validation
     xarray.Dataset
         By month, on (mooring, time): ``array_`` and ``model_isotherm_depth`` (m), and the same of
         ``steepest_gradient_depth``, ``mixed_layer_depth`` (m) and ``mean_temperature`` (°C), NaN unless both sides have
-        a mean; ``isotherm_depth_difference_error``; ``averaging_effect``.
+        a mean; ``isotherm_depth_difference_error``, NaN where the isotherm outcrops; ``averaging_effect``.
         For each F of ``thermocline_slope`` (m per 1000 km, negative where the thermocline shoals eastward),
         ``warm_water_volume`` (m3, region) and ``equatorial_isotherm_depth`` (m, longitude): ``array_F`` with
         ``array_F_error``, ``seen_F``, ``full_F``, and the split ``F_difference``, ``F_seen_difference``, ``F_hidden``.
@@ -291,9 +291,11 @@ def _at_moorings(sides: BothSides, where: Stencil, measured: ErrorsOfValues) -> 
     for name in COMPARED:
         for side, months in (("array", sides.array), ("model", sides.model)):
             found[f"{side}_{name}"] = months[name].astype(np.float32).drop_vars(["latitude", "longitude"])
+    # Nothing says how well the depth of an isotherm that has outcropped is known.
+    stated = (sides.array["isotherm_depth"].notnull() & sides.array[MEASURED].notnull()).transpose("time", "mooring")
     found["isotherm_depth_difference_error"] = (
         ("time", "mooring"),
-        np.where(np.isfinite(sides.array["isotherm_depth"].values.T), measured.of_values, np.nan),
+        np.where(stated.values, measured.of_values, np.nan),
     )
     found["averaging_effect"] = sides.averaging_effect.drop_vars(["latitude", "longitude"])
     found["nearest_wet_distance"] = ("mooring", where.distance)

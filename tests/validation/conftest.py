@@ -51,12 +51,19 @@ def chain_of(ocean: Ocean, site: Site) -> xr.Dataset:
 
 
 @pytest.fixture(scope="session")
+def perfect_chains(ocean: Ocean) -> dict[str, xr.Dataset]:
+    """The flagged chains of perfect moorings; not to be changed."""
+    return {site.id: chain_of(ocean, site) for site in PERFECT}
+
+
+@pytest.fixture(scope="session")
 def perfect(
-    ocean: Ocean, write_run: Callable[[Path, dict[str, xr.Dataset]], Path], tmp_path_factory: pytest.TempPathFactory
+    perfect_chains: dict[str, xr.Dataset],
+    write_run: Callable[[Path, dict[str, xr.Dataset]], Path],
+    tmp_path_factory: pytest.TempPathFactory,
 ) -> Path:
     """The folder of a run over perfect moorings; not to be changed."""
-    chains = {site.id: chain_of(ocean, site) for site in PERFECT}
-    return write_run(tmp_path_factory.mktemp("perfect") / "out", chains)
+    return write_run(tmp_path_factory.mktemp("perfect") / "out", perfect_chains)
 
 
 @pytest.fixture(scope="session")

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from pathlib import Path
 
 import numpy as np
@@ -45,6 +46,26 @@ def test_the_split_adds_up(zero: xr.Dataset) -> None:
 def test_the_error_as_seen_is_smaller_than_that_of_the_whole(zero: xr.Dataset) -> None:
     for name in ("thermocline_slope", "warm_water_volume"):
         assert (zero[f"{name}_seen_difference_error"] < zero[f"{name}_difference_error"]).all(), name
+
+
+def test_the_error_at_an_outcrop_is_not_known(
+    truth: xr.Dataset,
+    perfect_chains: dict[str, xr.Dataset],
+    write_run: Callable[[Path, dict[str, xr.Dataset]], Path],
+    tmp_path: Path,
+) -> None:
+    """One mooring's water is colder than 20 °C all June: the depth is 0, and how well that is known nobody can say."""
+    cold, warmer = next(iter(perfect_chains.items()))
+    june = warmer["time"].dt.month == 6
+    chilled = warmer.assign(temperature=warmer["temperature"].where(~june, warmer["temperature"] - 15.0))
+    chains = perfect_chains | {cold: chilled}
+    found = compare_model(truth, write_run(tmp_path / "out", chains))
+    depth, error = found["array_isotherm_depth"], found["isotherm_depth_difference_error"]
+    at = {"mooring": cold, "time": slice("2031-06", "2031-06")}
+    assert depth.sel(at).item() == 0.0
+    assert np.isnan(error.sel(at).item())
+    assert error.notnull().sum() == depth.notnull().sum() - 1
+    assert (error.where(error.notnull(), 1.0) > 0.0).all()
 
 
 def test_a_deepening_is_found_at_every_mooring(truth: xr.Dataset, perfect: Path) -> None:
