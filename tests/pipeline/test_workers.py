@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 import operator
 import os
+import signal
 import time
 from collections.abc import Callable
 from pathlib import Path
@@ -25,6 +26,25 @@ def task(name: str, work: Callable[..., Any], *arguments: Any) -> Task:
 
 def raise_fault() -> None:
     raise ThermotiltError("rows were lost")
+
+
+def lose_an_interrupt() -> str:
+    """Interrupt this process, and lose what is raised, as a destructor does."""
+    try:
+        os.kill(os.getpid(), signal.SIGINT)
+        time.sleep(60.0)
+    except KeyboardInterrupt:
+        return "lost"
+    return "none came"
+
+
+def test_an_interrupt_that_a_task_lost_ends_the_run_after_it() -> None:
+    with Workers(1) as pool:
+        results = pool.run([task("first", lose_an_interrupt), task("second", math.sqrt, 4.0)])
+        assert next(results)[1] == "lost"
+        with pytest.raises(KeyboardInterrupt, match=r"^$"):
+            next(results)
+    assert signal.getsignal(signal.SIGINT) is signal.default_int_handler
 
 
 def test_worker_that_dies_is_the_machines_failure() -> None:
