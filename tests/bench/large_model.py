@@ -4,7 +4,7 @@
 
 The model is daily potential temperature at 0.25 degrees and 33 levels, float32, of as many days as the size needs: six
 years at 8 GB, the length of the array's record. Each comparison is a fresh process whose workers are spawned; its
-memory is the sum of the resident memory of all of them, sampled ten times a second.
+memory is that of all of them together, pages that they share counted once (PSS), sampled ten times a second.
 """
 
 from __future__ import annotations
@@ -88,20 +88,20 @@ def compare(model: Path, out: Path, workers: int) -> tuple[float, float]:
     process = subprocess.Popen([sys.executable, "-c", COMPARE, str(model), str(out), str(workers)])
     peak = 0
     while process.poll() is None:
-        peak = max(peak, resident(process.pid))
+        peak = max(peak, memory_of(process.pid))
         time.sleep(0.1)
     if process.returncode:
         raise SystemExit(f"the comparison of {model} ended with {process.returncode}")
     return time.perf_counter() - started, peak / 1e6
 
 
-def resident(pid: int) -> int:
-    """Return the resident memory of a process and of what it started, bytes."""
+def memory_of(pid: int) -> int:
+    """Return the memory of a process and of what it started, bytes; each page is shared out among who holds it."""
     total = 0
     try:
         process = psutil.Process(pid)
         for one in [process, *process.children(recursive=True)]:
-            total += one.memory_info().rss
+            total += one.memory_full_info().pss
     except psutil.NoSuchProcess:
         return total
     return total
