@@ -123,6 +123,19 @@ class FlatLineSettings(Settings):
         return self
 
 
+class InversionSettings(Settings):
+    """Temperature inversion: a sensor that for a while is warmer than one above it, never worse than questionable."""
+
+    tolerance: Positive = Field(
+        0.5,
+        description="°C; the lower sensor is warmer by more than this (ours: inversions under rain-freshened water of "
+        "the western Pacific are smaller as a rule, from memory)",
+    )
+    reach: Count = Field(
+        2, description="so it is in more than this many of the samples from as many before to as many after (ours)"
+    )
+
+
 class QualityControlSettings(Settings):
     """[qc]: thresholds of the tests. Formulas: QARTOD temperature and salinity manual v2.1 (2020)."""
 
@@ -132,6 +145,7 @@ class QualityControlSettings(Settings):
     spike: SpikeSettings = SpikeSettings()
     rate_of_change: RateOfChangeSettings = RateOfChangeSettings()
     flat_line: FlatLineSettings = FlatLineSettings()
+    inversion: InversionSettings = InversionSettings()
 
 
 # --------------------------------------------------------------------------------------------------------------

@@ -62,6 +62,7 @@ TEST_BITS: Mapping[str, int] = {
     "flat_line": 5,
     "delivered_flag": 6,
     "water": 7,
+    "inversion": 8,
 }
 
 

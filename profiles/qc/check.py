@@ -51,8 +51,11 @@ class Segment:
         """Return the segment without the values that were not measured in the water."""
         if self.water is None or (self.water == Water.IN_WATER).all():
             return self
-        wet = (self.water == Water.IN_WATER)[:, None]
-        return replace(self, temperature=np.where(wet, self.temperature, np.nan))
+        return self.without((self.water != Water.IN_WATER)[:, None])
+
+    def without(self, unseen: Mask) -> Segment:
+        """Return the segment without some of its values; ``unseen`` broadcasts to (time, depth)."""
+        return replace(self, temperature=np.where(unseen, np.nan, self.temperature))
 
 
 @dataclass(frozen=True)

@@ -1,8 +1,9 @@
-"""The sample before and the sample after, where they are near enough in time to compare with."""
+"""The samples before and after, where they are near enough in time to compare with."""
 
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 
 from profiles.qc.check import Floats, Mask, Times
 
@@ -45,3 +46,16 @@ def after(values: Floats, linked: Mask) -> Floats:
     later = np.full_like(values, np.nan)
     later[:-1] = np.where(linked[1:, None], values[1:], np.nan)
     return later
+
+
+def count_around(found: Mask, linked: Mask, reach: int) -> NDArray[np.int16]:
+    """Count where something was found, in each sample and up to ``reach`` before and after it, as far as no gap lies
+    between; shape as ``found``, (time, ...)."""
+    count = found.astype(np.int16)
+    unbroken = np.ones(linked.size, dtype=np.bool_)
+    for step in range(1, min(reach, linked.size - 1) + 1):
+        unbroken[step:] &= linked[1 : linked.size - step + 1]
+        joined = unbroken[step:, None]
+        count[step:] += found[:-step] & joined
+        count[:-step] += found[step:] & joined
+    return count

@@ -12,7 +12,17 @@ from numpy.typing import NDArray
 
 from profiles.config import QualityControlSettings
 from profiles.errors import DataError, RequestError
-from profiles.qc import climatology, delivered_flag, flat_line, gap, gross_range, rate_of_change, spike, water
+from profiles.qc import (
+    climatology,
+    delivered_flag,
+    flat_line,
+    gap,
+    gross_range,
+    inversion,
+    rate_of_change,
+    spike,
+    water,
+)
 from profiles.qc.check import Check, Outcomes, Segment, Survey, Times
 from profiles.qc.neighbours import step_seconds
 from profiles.qc.roll_up import roll_up
@@ -30,11 +40,14 @@ CHECKS: tuple[Check, ...] = (
     flat_line.CHECK,
     delivered_flag.CHECK,
     water.CHECK,
+    inversion.CHECK,
 )
 
 _INPUTS = ("temperature", "sensor_depth", "temperature_delivered_qc", "water_status")
 #: Tests that judge a value whether or not it was measured in the water; the others see the water only.
 _OF_ANY_VALUE = {delivered_flag.CHECK, water.CHECK}
+#: Tests that compare sensors: one that another test doubts would cast doubt on those beside it.
+_OF_TRUSTED_VALUES = {inversion.CHECK}
 
 
 def quality_control(chain: xr.Dataset, settings: QualityControlSettings | None = None) -> xr.Dataset:
@@ -236,27 +249,37 @@ def _flagged_pieces(
     chain: xr.Dataset, settings: QualityControlSettings, block_length: int
 ) -> Iterator[tuple[xr.Dataset, dict[str, NDArray[Any]]]]:
     survey = survey_record(chain[[name for name in _INPUTS if name in chain]], settings, block_length=block_length)
-    halo = max(check.halo(settings) for check in CHECKS)
+    halo = _halo(settings)
     blocks = list(padded_blocks(chain.sizes["time"], block_length, halo))
     previous = _no_value_yet(chain)
     for block, following in zip_longest(blocks, blocks[1:]):
         piece = chain.isel(time=block.padded).compute()
         segment = segment_of(piece, previous)
-        found = {check.name: _outcome(check, segment, survey, settings)[block.inner] for check in CHECKS}
+        found = {name: flags[block.inner] for name, flags in _outcomes(segment, survey, settings).items()}
         yield piece.isel(time=block.inner), roll_up(found)
         if following is not None:
             present = ~np.isnan(segment.in_water().temperature)
             previous = gap.last_value_times(segment.time, present, previous)[following.first - block.first]
 
 
-def _outcome(check: Check, segment: Segment, survey: Survey, settings: QualityControlSettings) -> Outcomes:
-    """Return what a test says; one that sees only the water has nothing to say of other values."""
-    if check in _OF_ANY_VALUE:
-        return check.outcome(segment, survey, settings)
-    wet = segment.in_water()
-    found = check.outcome(wet, survey, settings)
-    unseen = np.isnan(wet.temperature) & ~np.isnan(segment.temperature)
-    return np.where(unseen, np.int8(Flag.NOT_EVALUATED), found)
+def _halo(settings: QualityControlSettings) -> int:
+    """Return on how many samples on either side the flags of one depend."""
+    own = {check: check.halo(settings) for check in CHECKS}
+    last = max(own[check] for check in _OF_TRUSTED_VALUES)
+    return last + max(halo for check, halo in own.items() if check not in _OF_TRUSTED_VALUES)
+
+
+def _outcomes(segment: Segment, survey: Survey, settings: QualityControlSettings) -> dict[str, Outcomes]:
+    """Return what every test says."""
+    wet, found = segment.in_water(), dict[str, Outcomes]()
+    for check in sorted(CHECKS, key=_OF_TRUSTED_VALUES.__contains__):
+        seen = segment if check in _OF_ANY_VALUE else wet
+        if check in _OF_TRUSTED_VALUES:
+            seen = wet.without(np.logical_or.reduce([flags >= Flag.QUESTIONABLE for flags in found.values()]))
+        flags = check.outcome(seen, survey, settings)
+        unseen = np.isnan(seen.temperature) & ~np.isnan(segment.temperature)
+        found[check.name] = np.where(unseen, np.int8(Flag.NOT_EVALUATED), flags)
+    return found
 
 
 def _no_value_yet(chain: xr.Dataset) -> Times:

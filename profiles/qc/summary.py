@@ -26,6 +26,7 @@ KINDS = {
     "spike": "spike",
     "rate_of_change": "jump",
     "climatology": "unlike the season",
+    "inversion": "inversion",
     "delivered_flag": "flagged by the sender",
     "gap": "first after a gap",
 }

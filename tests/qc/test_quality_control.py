@@ -100,12 +100,15 @@ def test_flags_do_not_depend_on_the_blocks(length, repeats_bad, seed):
     record=st.lists(st.sampled_from([np.nan, 20.0, 20.0, 20.0, 20.2, 26.0, 31.0]), min_size=1, max_size=40),
     skipped=st.sets(st.integers(0, 39), max_size=15),
     length=st.integers(1, 41),
+    later=st.integers(0, 10),
 )
-def test_flags_of_any_record_do_not_depend_on_the_blocks(record, skipped, length):
+def test_flags_of_any_record_do_not_depend_on_the_blocks(record, skipped, length, later):
+    """Two sensors, of which the lower reads the same some samples later: they are often out of order."""
     kept = [place for place in range(len(record)) if place not in skipped] or [0]
     time = np.datetime64("2031-01-01", "ns") + np.array(kept) * np.timedelta64(10, "m")
-    values = np.array(record, dtype=np.float32)[kept][:, None]
-    coords = {"time": time, "depth": DEPTHS[2:3], "latitude": 0.0, "longitude": 180.0}
+    upper = np.array(record, dtype=np.float32)[kept]
+    values = np.stack([upper, np.roll(upper, later)], axis=-1)
+    coords = {"time": time, "depth": DEPTHS[1:3], "latitude": 0.0, "longitude": 180.0}
     chain = xr.Dataset({"temperature": (("time", "depth"), values)}, coords=coords)
     whole = quality_control(chain, STRICT)
     blocks = joined(flag_blocks(chain, STRICT, block_length=length))
@@ -127,7 +130,24 @@ def test_nominal_interval_is_the_median_step():
     assert np.isnan(nominal_interval(time[:1]))
 
 
-def test_a_sensors_flags_do_not_depend_on_the_others():
+def test_the_last_tests_see_what_the_others_say_near_the_ends_of_a_block():
+    """The upper sensor is colder than the lower in samples 2 and 3, too short to count, then sticks until sample 9. What
+    is stuck casts no doubt on the lower. Sample 2 looks as far as sample 4, which sticks by what sample 9 says."""
+    longer = QualityControlSettings.model_validate({"flat_line": {"repeats_questionable": 5, "repeats_bad": 6}})
+    upper = np.array([27.0, 26.9, 25.2, 25.1, *[25.0] * 6, 26.8, 26.7, 26.8, 26.9, 27.0, 26.9])
+    lower = 26.0 - 0.01 * np.arange(16)
+    place = {"depth": DEPTHS[1:3], "latitude": 0.0, "longitude": 180.0}
+    time = np.datetime64("2031-01-01", "ns") + np.arange(16) * np.timedelta64(10, "m")
+    values = np.stack([upper, lower], axis=-1).astype(np.float32)
+    chain = xr.Dataset({"temperature": (("time", "depth"), values)}, coords={"time": time} | place)
+    whole = quality_control(chain, longer)["temperature_qc_questionable"].values
+    inversion = np.uint32(1 << TEST_BITS["inversion"])
+    assert not (whole & inversion).any()
+    for length in range(1, 17):
+        np.testing.assert_array_equal(joined(flag_blocks(chain, longer, block_length=length))[FLAGS[2]], whole)
+
+
+def test_a_sensors_flags_do_not_depend_on_others_in_order():
     chain = busy_chain()
     whole = quality_control(chain)
     for sensor in range(4):
