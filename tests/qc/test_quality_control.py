@@ -131,10 +131,11 @@ def test_nominal_interval_is_the_median_step():
 
 
 def test_the_last_tests_see_what_the_others_say_near_the_ends_of_a_block():
-    """The upper sensor is colder than the lower in samples 2 and 3, too short to count, then sticks until sample 9. What
-    is stuck casts no doubt on the lower. Sample 2 looks as far as sample 4, which sticks by what sample 9 says."""
-    longer = QualityControlSettings.model_validate({"flat_line": {"repeats_questionable": 5, "repeats_bad": 6}})
-    upper = np.array([27.0, 26.9, 25.2, 25.1, *[25.0] * 6, 26.8, 26.7, 26.8, 26.9, 27.0, 26.9])
+    """The upper sensor is colder than the lower in samples 1 to 3, too short to count, and sticks until sample 6. What
+    is stuck casts no doubt on the lower. Sample 1 looks as far as sample 4, which sticks by what sample 6 says."""
+    given = {"flat_line": {"repeats_questionable": 3, "repeats_bad": 4}, "inversion": {"reach": 3}}
+    longer = QualityControlSettings.model_validate(given)
+    upper = np.array([26.9, 25.2, 25.1, *[25.0] * 4, 26.8, 26.7, 26.8, 26.9, 27.0, 26.9, 26.8, 26.7, 26.8])
     lower = 26.0 - 0.01 * np.arange(16)
     place = {"depth": DEPTHS[1:3], "latitude": 0.0, "longitude": 180.0}
     time = np.datetime64("2031-01-01", "ns") + np.arange(16) * np.timedelta64(10, "m")
