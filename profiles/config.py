@@ -136,6 +136,17 @@ class InversionSettings(Settings):
     )
 
 
+class RepeatedSettings(Settings):
+    """Repeated profiles: a stretch of the record that stands in it once more; the later one is bad."""
+
+    samples: Annotated[int, Field(strict=True, ge=2)] = Field(
+        3, description="as many samples in a row, or more, are those of an earlier stretch (ours)"
+    )
+    sensors: Annotated[int, Field(strict=True, ge=2)] = Field(
+        2, description="profiles of fewer sensors are not compared (ours)"
+    )
+
+
 class QualityControlSettings(Settings):
     """[qc]: thresholds of the tests. Formulas: QARTOD temperature and salinity manual v2.1 (2020)."""
 
@@ -146,6 +157,7 @@ class QualityControlSettings(Settings):
     rate_of_change: RateOfChangeSettings = RateOfChangeSettings()
     flat_line: FlatLineSettings = FlatLineSettings()
     inversion: InversionSettings = InversionSettings()
+    repeated: RepeatedSettings = RepeatedSettings()
 
 
 # --------------------------------------------------------------------------------------------------------------

@@ -63,6 +63,7 @@ TEST_BITS: Mapping[str, int] = {
     "delivered_flag": 6,
     "water": 7,
     "inversion": 8,
+    "repeated": 9,
 }
 
 

@@ -69,10 +69,13 @@ class Survey:
     spread : mapping of str to ndarray, shape (depth,)
         For each test that surveys, the robust standard deviation of what it surveys; NaN where there was
         nothing.
+    repeated : ndarray of datetime64[ns]
+        Times of the profiles that are copies of earlier ones.
     """
 
     nominal_interval: float
     spread: Mapping[str, Floats] = field(default_factory=dict)
+    repeated: Times = field(default_factory=lambda: np.empty(0, dtype="datetime64[ns]"))
 
 
 def no_halo(settings: QualityControlSettings) -> int:

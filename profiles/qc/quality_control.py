@@ -20,6 +20,7 @@ from profiles.qc import (
     gross_range,
     inversion,
     rate_of_change,
+    repeated,
     spike,
     water,
 )
@@ -41,6 +42,7 @@ CHECKS: tuple[Check, ...] = (
     delivered_flag.CHECK,
     water.CHECK,
     inversion.CHECK,
+    repeated.CHECK,
 )
 
 _INPUTS = ("temperature", "sensor_depth", "temperature_delivered_qc", "water_status")
@@ -129,12 +131,21 @@ def survey_record(chain: xr.Dataset, settings: QualityControlSettings, *, block_
     interval = nominal_interval(chain["time"].values)
     surveys = {check: SpreadSurvey(chain.sizes["depth"]) for check in CHECKS if check.survey is not None}
     unknown = _no_value_yet(chain)
+    profiles, comparable = [], []
     for block in padded_blocks(chain.sizes["time"], block_length, halo=1):
-        segment = segment_of(chain.isel(time=block.padded).compute(), unknown)
+        wet = segment_of(chain.isel(time=block.padded).compute(), unknown).in_water()
         for check, spread in surveys.items():
             if check.survey is not None:
-                spread.add(check.survey(segment.in_water(), interval, settings)[block.inner])
-    return Survey(interval, {check.name: spread.sd() for check, spread in surveys.items()})
+                spread.add(check.survey(wet, interval, settings)[block.inner])
+        inner = wet.temperature[block.inner]
+        profiles.append(repeated.signatures(inner))
+        comparable.append(repeated.is_comparable(inner, settings.repeated.sensors))
+    copies = repeated.repeats(np.concatenate(profiles), np.concatenate(comparable), settings.repeated.samples)
+    return Survey(
+        interval,
+        {check.name: spread.sd() for check, spread in surveys.items()},
+        chain["time"].values[copies].astype("datetime64[ns]"),
+    )
 
 
 def nominal_interval(time: Times) -> float:

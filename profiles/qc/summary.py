@@ -22,6 +22,7 @@ from profiles.vocabulary import TEST_BITS, Flag
 KINDS = {
     "water": "in air",
     "flat_line": "stuck",
+    "repeated": "repeated",
     "gross_range": "out of range",
     "spike": "spike",
     "rate_of_change": "jump",

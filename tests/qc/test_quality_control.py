@@ -166,7 +166,7 @@ def test_a_single_sample_is_judged_by_what_needs_no_neighbour(make_chain):
     flagged = quality_control(make_chain([[28.5, np.nan, 99.0]]))
     np.testing.assert_array_equal(flagged["temperature_qc"].values, [[1, 9, 4]])
     ran = {name for name, bit in TEST_BITS.items() if int(flagged["temperature_qc_ran"].values[0, 0]) >> bit & 1}
-    assert ran == {"gap", "gross_range", "climatology"}
+    assert ran == {"gap", "gross_range", "climatology", "repeated"}
 
 
 def test_the_chain_that_came_in_is_left_alone():
