@@ -230,12 +230,13 @@ class ClimatologyPriorSettings(Settings):
     )
     annual_sd: Positive = Field(5.0, description="m; each annual coefficient about the atlas (ours)")
     semiannual_sd: Positive = Field(3.0, description="m; each semi-annual coefficient about the atlas (ours)")
-    length_longitude: Positive = Field(
-        10.0, description="degrees; scale of the correction to the atlas (from the difference of two published atlases)"
+    broad_share: Share = Field(
+        0.57, description="broad part of the correction's variance, the rest is narrow (difference of two atlases)"
     )
-    length_latitude: Positive = Field(
-        7.0, description="degrees; scale of the correction to the atlas (from the difference of two published atlases)"
-    )
+    broad_longitude: Positive = Field(34.0, description="degrees; broad scale (difference of two published atlases)")
+    broad_latitude: Positive = Field(14.0, description="degrees; broad scale (difference of two published atlases)")
+    narrow_longitude: Positive = Field(6.0, description="degrees; narrow scale (difference of two published atlases)")
+    narrow_latitude: Positive = Field(2.5, description="degrees; narrow scale (difference of two published atlases)")
     decorrelation_months: Positive = Field(
         4.0, description="months; e-folding time of interannual anomalies (Meyers et al. 1991: 2, without an event)"
     )

@@ -149,12 +149,7 @@ def _with_climatology(
         climatology_prior_sd=("harmonic", climatology.prior_sd),
         climatology_information=(("parameter", "parameter_"), climatology.information),
     )
-    lengths = settings.climatology
-    carried.attrs |= {
-        "quantity": quantity,
-        "climatology_length_longitude": lengths.length_longitude,
-        "climatology_length_latitude": lengths.length_latitude,
-    }
+    carried.attrs |= {"quantity": quantity, "climatology_prior": settings.climatology.model_dump_json()}
     return describe(carried)
 
 

@@ -18,7 +18,7 @@ from scipy.linalg import cho_factor, cho_solve
 from profiles.atlas import seasonal_profile
 from profiles.column import isotherm_depth
 from profiles.config import ClimatologyPriorSettings, SectionSettings
-from profiles.section.covariance import Gaussian
+from profiles.section.covariance import Gaussian, TwoScales
 from profiles.statistics import HARMONICS, harmonic_design, year_fraction
 
 Array = NDArray[np.float64]
@@ -81,6 +81,15 @@ def atlas_isotherm(latitude: Array, longitude: Array, isotherm: float) -> Array:
     return np.asarray(depth.transpose("position", "step").values @ np.linalg.pinv(design).T)
 
 
+def correction_scales(prior: ClimatologyPriorSettings) -> TwoScales:
+    """Return the correlation in space of the correction to the atlas."""
+    return TwoScales(
+        prior.broad_share,
+        Gaussian(prior.broad_longitude, prior.broad_latitude),
+        Gaussian(prior.narrow_longitude, prior.narrow_latitude),
+    )
+
+
 def estimate_climatology(
     records: Records, rows: Array, columns: Array, isotherm: float, settings: SectionSettings
 ) -> Climatology:
@@ -99,7 +108,7 @@ def estimate_climatology(
     """
     prior = settings.climatology
     prior_sd = np.array([prior.mean_sd, *[prior.annual_sd] * 2, *[prior.semiannual_sd] * 2])
-    correlation = Gaussian(prior.length_longitude, prior.length_latitude)
+    correlation = correction_scales(prior)
     sites = records.latitude, records.longitude
     atlas_sites = atlas_isotherm(*sites, isotherm)
     known = np.flatnonzero(np.isfinite(records.values).sum(axis=0) >= MINIMUM_MONTHS)

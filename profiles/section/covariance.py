@@ -51,6 +51,34 @@ class Gaussian:
 
 
 @dataclass(frozen=True)
+class TwoScales:
+    """A correlation of which ``broad_share`` is that of ``broad`` and the rest that of ``narrow``; methods as
+    :class:`Gaussian` has."""
+
+    broad_share: float
+    broad: Gaussian
+    narrow: Gaussian
+
+    @property
+    def _parts(self) -> tuple[tuple[float, Gaussian], ...]:
+        return (self.broad_share, self.broad), (1.0 - self.broad_share, self.narrow)
+
+    def between(self, latitude: Array, longitude: Array, latitude_: Array, longitude_: Array) -> Array:
+        """Return the correlation of every position with every other, (positions, positions_)."""
+        places = latitude, longitude, latitude_, longitude_
+        return np.asarray(sum(share * part.between(*places) for share, part in self._parts))
+
+    def with_functionals(self, latitude: Array, longitude: Array, weights: Array, rows: Array, columns: Array) -> Array:
+        """Return the correlation of positions with weighted sums over a grid, (positions, functional)."""
+        arguments = latitude, longitude, weights, rows, columns
+        return np.asarray(sum(share * part.with_functionals(*arguments) for share, part in self._parts))
+
+    def of_functionals(self, weights: Array, rows: Array, columns: Array) -> Array:
+        """Return the variance of weighted sums over a grid whose cells have variance 1, (functional,)."""
+        return np.asarray(sum(share * part.of_functionals(weights, rows, columns) for share, part in self._parts))
+
+
+@dataclass(frozen=True)
 class Observed:
     """Times at which the same sites reported with the same noise."""
 

@@ -13,6 +13,8 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
+from profiles.config import ClimatologyPriorSettings
+from profiles.section.climatology import correction_scales
 from profiles.section.covariance import Gaussian, Solver, same_networks
 from profiles.statistics import harmonic_design, year_fraction
 
@@ -80,7 +82,8 @@ class _ClimatologyError:
         self.information = field["climatology_information"].values
         self.prior = field["climatology_prior_sd"].values ** 2
         self.design = harmonic_design(year_fraction(field["time"].values))
-        correlation = Gaussian(field.attrs["climatology_length_longitude"], field.attrs["climatology_length_latitude"])
+        prior = ClimatologyPriorSettings.model_validate_json(field.attrs["climatology_prior"])
+        correlation = correction_scales(prior)
         cells: Any = (at_cells * weights, field["latitude"].values, field["longitude"].values)
         sites = field["site_latitude"].values, field["site_longitude"].values
         known = field["parameter_latitude"].values, field["parameter_longitude"].values

@@ -20,7 +20,7 @@ from scipy.sparse import csr_array
 
 from profiles.config import SectionSettings
 from profiles.section.array import map_records
-from profiles.section.climatology import Climatology, Records, memory
+from profiles.section.climatology import Climatology, Records, correction_scales, memory
 from profiles.section.covariance import Gaussian, Solver, same_networks
 from profiles.statistics import harmonic_design, year_fraction
 
@@ -105,7 +105,7 @@ class Response:
 
     def _unseen_climatology(self, kernel: Array) -> Array:
         design = harmonic_design(year_fraction(self.records.time))
-        scales = self._scales()
+        scales = correction_scales(self.settings.climatology)
         sites = self.records.latitude, self.records.longitude
         between = scales.between(*sites, *sites)
         with_cells = scales.with_functionals(*sites, self.weights, *self._axes())
@@ -121,20 +121,16 @@ class Response:
     def _axes(self) -> tuple[Array, Array]:
         return self.field["latitude"].values, self.field["longitude"].values
 
-    def _scales(self) -> Gaussian:
-        prior = self.settings.climatology
-        return Gaussian(prior.length_longitude, prior.length_latitude)
-
     def _correlation(self, weights: Array) -> Array:
         """Return the correlation of the climatology at known sites with the functionals, (known site, functional)."""
         known = self.climatology.known
         places = self.records.latitude[known], self.records.longitude[known]
-        return self._scales().with_functionals(*places, weights, *self._axes())
+        return correction_scales(self.settings.climatology).with_functionals(*places, weights, *self._axes())
 
     def _known_to_sites(self) -> Array:
         known = self.climatology.known
         sites = self.records.latitude, self.records.longitude
-        return self._scales().between(sites[0][known], sites[1][known], *sites)
+        return correction_scales(self.settings.climatology).between(sites[0][known], sites[1][known], *sites)
 
     def _gains(self) -> Array:
         """Return the weights of the anomalies at the sites in the functionals, (month, site, functional)."""

@@ -63,8 +63,10 @@ class Oceans:
         self.time = (starts[:-1] + (starts[1:] - starts[:-1]) / 2).to_numpy().astype("datetime64[ns]")
         self.atlas = atlas_isotherm(*places, 20.0)
         prior = SETTINGS.climatology
-        self.signal_root = _root(places, SETTINGS.length_longitude, SETTINGS.length_latitude)
-        self.correction_root = _root(places, prior.length_longitude, prior.length_latitude)
+        self.signal_root = _root(_correlation(places, SETTINGS.length_longitude, SETTINGS.length_latitude))
+        broad = _correlation(places, prior.broad_longitude, prior.broad_latitude)
+        narrow = _correlation(places, prior.narrow_longitude, prior.narrow_latitude)
+        self.correction_root = _root(prior.broad_share * broad + (1.0 - prior.broad_share) * narrow)
         self.prior_sd = np.array([prior.mean_sd, *[prior.annual_sd] * 2, *[prior.semiannual_sd] * 2])
 
     def draw(self, random: np.random.Generator) -> tuple[np.ndarray, np.ndarray]:
@@ -121,12 +123,17 @@ class Oceans:
         }
 
 
-def _root(places: tuple[np.ndarray, ...], length_longitude: float, length_latitude: float) -> np.ndarray:
-    """Return a root of the Gaussian correlation of all places; the jitter is 1e-4 of a standard deviation."""
+def _correlation(places: tuple[np.ndarray, ...], length_longitude: float, length_latitude: float) -> np.ndarray:
+    """Return the Gaussian correlation of all places."""
     latitude, longitude = places
     north = np.subtract.outer(latitude, latitude) / length_latitude
     east = np.subtract.outer(longitude, longitude) / length_longitude
-    return np.linalg.cholesky(np.exp(-(north**2) - east**2) + 1e-8 * np.eye(latitude.size))
+    return np.exp(-(north**2) - east**2)
+
+
+def _root(correlation: np.ndarray) -> np.ndarray:
+    """Return a root of a correlation; the jitter is 1e-4 of a standard deviation."""
+    return np.linalg.cholesky(correlation + 1e-8 * np.eye(len(correlation)))
 
 
 def draws(oceans: Oceans, count: int, *, seed: int) -> Iterator[Draw]:

@@ -168,4 +168,4 @@ def test_the_tilt_is_that_of_the_whole_field(full_field, built):
     slope, error = (built.section[name].values for name in ("thermocline_slope", "thermocline_slope_error"))
     assert slope.mean() == pytest.approx(expected, rel=0.03)
     assert (np.abs(slope - expected) < 1.96 * error).all()
-    assert (1.96 * error < 0.05 * np.abs(slope)).all()
+    assert (1.96 * error < 0.06 * np.abs(slope)).all()

@@ -9,12 +9,13 @@ import numpy as np
 import pytest
 
 from profiles import objective_map
+from profiles.config import ClimatologyPriorSettings
 from profiles.section.functional import functional_error
 
 ROWS, COLUMNS = np.array([-1.5, -0.5, 0.5, 1.5]), np.array([170.5, 175.5, 180.5, 185.5, 190.5])
 LATITUDE, LONGITUDE = np.array([0.0, 2.0, -2.0, 0.0]), np.array([168.0, 181.0, 181.0, 195.0])
 SIGNAL = {"signal_sd": 12.0, "length_longitude": 15.0, "length_latitude": 3.0}
-CLIMATOLOGY_LENGTHS = (10.0, 7.0)
+SCALES = ((0.7, 10.0, 7.0), (0.3, 4.0, 2.0))  # of the correction: share, degrees of longitude, of latitude
 PRIOR_SD = np.array([7.5, 5.0, 5.0, 3.0, 3.0])
 NOISE = np.array([[4.0, 5.0, 6.0, 4.0], [4.0, np.nan, 6.0, 4.0], [np.nan] * 4, [1.0, 1.0, np.nan, np.nan]])
 TIME = np.array(["2031-01-16", "2031-05-16", "2031-08-16", "2031-11-16"], dtype="datetime64[ns]")
@@ -122,7 +123,7 @@ OBSERVED = np.array([2.0, 1.0, 0.8, 0.7, 0.9] * 3)  # m, error of each known sit
 
 def joint_correction():
     """Condition the correction of the atlas at all positions, (position, harmonic), on being seen at known sites."""
-    spatial = correlation(*ALL, *ALL, *CLIMATOLOGY_LENGTHS)
+    spatial = sum(share * correlation(*ALL, *ALL, *lengths) for share, *lengths in SCALES)
     prior = np.kron(spatial, np.diag(PRIOR_SD**2))
     seen = (SIZE + KNOWN)[:, None] * 5 + np.arange(5)
     seen = seen.ravel()
@@ -138,11 +139,15 @@ def with_climatology(quantity):
         climatology_prior_sd=("harmonic", PRIOR_SD),
         climatology_information=(("parameter", "parameter_"), information),
     )
-    field.attrs |= {
-        "quantity": quantity,
-        "climatology_length_longitude": CLIMATOLOGY_LENGTHS[0],
-        "climatology_length_latitude": CLIMATOLOGY_LENGTHS[1],
-    }
+    (share, *broad), (_, *narrow) = SCALES
+    prior = ClimatologyPriorSettings(
+        broad_share=share,
+        broad_longitude=broad[0],
+        broad_latitude=broad[1],
+        narrow_longitude=narrow[0],
+        narrow_latitude=narrow[1],
+    )
+    field.attrs |= {"quantity": quantity, "climatology_prior": prior.model_dump_json()}
     return field
 
 

@@ -53,6 +53,11 @@ def correlation(one, other, length_longitude, length_latitude):
     return np.exp(-(north**2) - east**2)
 
 
+def correction(one, other):
+    """The correlation of the correction that the defaults state."""
+    return 0.57 * correlation(one, other, 34.0, 14.0) + 0.43 * correlation(one, other, 6.0, 2.5)
+
+
 def test_the_estimate_is_the_conditional_mean_of_a_gaussian():
     """Brute force: the joint Gaussian of every value of two records and the coefficients at sites and cells.
 
@@ -76,7 +81,7 @@ def test_the_estimate_is_the_conditional_mean_of_a_gaussian():
     noise = 144.0 * np.exp(-apart / 4.0) * near + 4.0 * same_deployment + 16.0 * np.eye(month.size)
 
     everywhere = tuple(np.concatenate(axis) for axis in zip(places, CELLS, strict=True))
-    prior = np.kron(correlation(everywhere, everywhere, 10.0, 7.0), np.diag(PRIOR_SD**2))
+    prior = np.kron(correction(everywhere, everywhere), np.diag(PRIOR_SD**2))
     seen = np.zeros((month.size, prior.shape[0]))
     for row, (m, s) in enumerate(zip(month, site, strict=True)):
         seen[row, 5 * s : 5 * s + 5] = terms[m]
@@ -144,9 +149,9 @@ def test_a_site_without_a_record_takes_what_its_neighbours_give():
     values = seasonal_terms(middles(72)) @ atlas.T + 8.0
     values[:, 1] = np.nan
     shift = (estimate(records(values, *places)).at_sites - atlas)[:, 0]
-    # Its neighbour lies 2 degrees off: the correction falls off as exp(-(2 / 10)^2).
+    # Its neighbour lies 2 degrees off: the correction falls off as 0.57 exp(-(2 / 34)^2) + 0.43 exp(-(2 / 6)^2).
     assert 3.0 < shift[0] < 8.0
-    assert shift[1] == pytest.approx(shift[0] * np.exp(-0.04))
+    assert shift[1] == pytest.approx(shift[0] * (0.57 * np.exp(-((2 / 34) ** 2)) + 0.43 * np.exp(-1 / 9)))
 
 
 def test_the_error_is_nowhere_above_the_prior_and_less_with_a_longer_record():
