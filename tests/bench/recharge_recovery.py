@@ -1,6 +1,6 @@
 """How often the stated intervals of period and damping hold those of a linear recharge oscillator that is known.
 
-``python tests/bench/recharge_recovery.py [--trials 500] [--years 40] [--seed 1] [--step 3]``
+``python tests/bench/recharge_recovery.py [--trials 500] [--years 40] [--seed 1] [--step 6]``
 
 Each trial is a record of dz/dt = A z + noise, integrated exactly in steps of a tenth of a month, seen once a month or
 as monthly means, with a season that is taken off as in any record. Printed for each oscillator: the share of 95 %
@@ -19,7 +19,7 @@ from measure import show
 from scipy.integrate import quad_vec
 from scipy.linalg import expm
 
-from profiles.precursor.recharge import recharge_oscillator, simulate
+from profiles.precursor.recharge import STEP, recharge_oscillator, simulate
 
 PARTS = 10  # steps of the integration in a month
 START = np.datetime64("2031-01", "M")
@@ -100,7 +100,7 @@ def row(case: Case, options: argparse.Namespace) -> list[object]:
 
 def main() -> None:
     parser = argparse.ArgumentParser(description=__doc__, formatter_class=argparse.RawDescriptionHelpFormatter)
-    for name, default in (("trials", 500), ("years", 40), ("seed", 1), ("step", 3)):
+    for name, default in (("trials", 500), ("years", 40), ("seed", 1), ("step", STEP)):
         parser.add_argument(f"--{name}", type=int, default=default)
     options = parser.parse_args()
     show(
