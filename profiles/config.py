@@ -305,7 +305,7 @@ class ValidationSettings(Settings):
         "common, for a line only leans one way; it does not average out over the array (ours, from simulated arrays)",
     )
     undetected_faults: NotNegative = Field(
-        2.0,
+        1.0,
         description="m; standard deviation of a mooring's depths from faults that the quality control does not find: "
         "rare and large, so that it counts in the error of sums over moorings, not in that of one (ours, from "
         "simulated arrays)",
