@@ -66,7 +66,7 @@ def _check_reader() -> None:
             "what reads models is not installed",
             where=_NEEDED,
             expected="the extra 'model'",
-            advice="pip install 'thermotilt[model]'",
+            advice="in the folder of its source: pip install '.[model]'",
         )
 
 
